@@ -1,0 +1,59 @@
+"""Choose an emitter and an optical resonator for a single-photon source.
+
+One noun, the point (input name -> SI value), and one verb, `evaluate(point, wanted)`.
+Importing this package loads no widget library and no pandas.
+"""
+
+from __future__ import annotations
+
+from . import physics as _physics
+from .budget import budget
+from .design import Decision, Design, Origin, Requirement, Spread, Unknown
+from .evaluate import InputError, evaluate
+from .exact import RecordError
+from .inputs import INPUTS
+from .maps import Axis, Map, make_map, mesh
+from .record import design_text, load_design, save_design
+from .registry import REGISTRY as _REGISTRY
+from .registry import check as _check
+from .whole import Lines, Pattern, Samples, WholeError
+
+_check()
+
+#: Every quantity by name.
+QUANTITIES = _REGISTRY.quantities
+
+#: Every caution by name.
+CAUTIONS = _REGISTRY.cautions
+
+__version__ = "0.1.0"
+
+__all__ = [
+    "CAUTIONS",
+    "INPUTS",
+    "QUANTITIES",
+    "Axis",
+    "Decision",
+    "Design",
+    "InputError",
+    "Lines",
+    "Map",
+    "Origin",
+    "Pattern",
+    "RecordError",
+    "Requirement",
+    "Samples",
+    "Spread",
+    "Unknown",
+    "WholeError",
+    "__version__",
+    "budget",
+    "design_text",
+    "evaluate",
+    "load_design",
+    "make_map",
+    "mesh",
+    "save_design",
+]
+
+del _physics

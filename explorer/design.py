@@ -1,0 +1,262 @@
+"""A design: a point with what is wanted of it, what scatters, what is not known, and who decided.
+
+Frozen and hashable, so links, undo, replay and shortlists are made of designs. SI units throughout.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field, fields, replace
+from typing import Any
+
+from .evaluate import Evaluation, InputError, evaluate, shown
+from .inputs import INPUTS
+from .registry import REGISTRY
+
+#: Longest text that a name, a note or a line of the decision may be.
+LONGEST_TEXT = 4000
+
+#: Kinds of scatter, and what their width means.
+SPREADS = {
+    "normal": "standard deviation",
+    "lognormal": "standard deviation of the logarithm",
+    "uniform": "half-width",
+    "radial": "standard deviation per axis of a displacement in the plane",
+    "direction": "static random directions of the dipole; the width is not used",
+}
+
+#: Where the value of an input comes from.
+ORIGINS = ("seen", "from memory", "measured", "typed", "default")
+
+
+class Frozen(Mapping[str, Any]):
+    """A read-only mapping with a hash, in the order it was given."""
+
+    __slots__ = ("_entries", "_hash")
+
+    def __init__(self, entries: Mapping[str, Any] | None = None) -> None:
+        self._entries = dict(entries or {})
+        self._hash = hash(frozenset(self._entries.items()))
+
+    def __getitem__(self, key: str) -> Any:
+        return self._entries[key]
+
+    def __iter__(self) -> Iterator[str]:
+        return iter(self._entries)
+
+    def __len__(self) -> int:
+        return len(self._entries)
+
+    def __hash__(self) -> int:
+        return self._hash
+
+    def __eq__(self, other: object) -> bool:
+        return isinstance(other, Mapping) and self._entries == dict(other)
+
+    def __repr__(self) -> str:
+        return repr(self._entries)
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        return Frozen, (self._entries,)
+
+    def __or__(self, other: Mapping[str, Any]) -> Frozen:
+        return Frozen({**self._entries, **other})
+
+
+def _finite(value: Any, what: str) -> float:
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise InputError(f"{what} = {value!r:.60} is not a number")
+    if not math.isfinite(value):
+        raise InputError(f"{what} = {value} is not a finite number")
+    return float(value)
+
+
+@dataclass(frozen=True)
+class Requirement:
+    """What is wanted of a quantity: at least or at most a value, in SI; exactly one of the two.
+
+    Raises InputError for an unknown quantity or a value that is no finite number.
+    """
+
+    quantity: str
+    at_least: float | None = None
+    at_most: float | None = None
+
+    def __post_init__(self) -> None:
+        known = REGISTRY.quantities.get(self.quantity)
+        if known is None or known.kind != "number":
+            raise InputError(f"{self.quantity!r:.60} is no quantity that can be required")
+        if (self.at_least is None) == (self.at_most is None):
+            raise InputError(f"a requirement on {self.quantity} takes at_least or at_most, one of them")
+        name = "at_most" if self.at_least is None else "at_least"
+        object.__setattr__(self, name, _finite(self.limit, f"{name} of {self.quantity}"))
+
+    @property
+    def limit(self) -> float:
+        """The value required."""
+        return self.at_most if self.at_least is None else self.at_least  # type: ignore[return-value]  # one of the two is a number
+
+    @property
+    def sense(self) -> str:
+        """'≥' or '≤'."""
+        return "≤" if self.at_least is None else "≥"
+
+    def met(self, value: Any) -> Any:
+        """Whether a value (or each of an array) meets the requirement; not-a-number does not."""
+        return value <= self.limit if self.at_least is None else value >= self.limit
+
+
+@dataclass(frozen=True)
+class Spread:
+    """Scatter of an input from device to device: kind (see SPREADS) and width, SI, >= 0."""
+
+    kind: str
+    width: float = 0.0
+
+    def __post_init__(self) -> None:
+        if self.kind not in SPREADS:
+            raise InputError(f"{self.kind!r:.60} is no kind of scatter; known: {', '.join(SPREADS)}")
+        width = _finite(self.width, "the width of a scatter")
+        if width < 0:
+            raise InputError(f"the width of a scatter must not be negative; got {width}")
+        object.__setattr__(self, "width", width)
+
+
+@dataclass(frozen=True)
+class Unknown:
+    """The range, SI, within which an input that is not known lies; it is not scatter."""
+
+    low: float
+    high: float
+
+    def __post_init__(self) -> None:
+        low = _finite(self.low, "the low end of a range")
+        high = _finite(self.high, "the high end of a range")
+        if low > high:
+            raise InputError(f"a range must not run backwards; got {low} to {high}")
+        object.__setattr__(self, "low", low)
+        object.__setattr__(self, "high", high)
+
+
+@dataclass(frozen=True)
+class Origin:
+    """Where the value of an input comes from: kind (see ORIGINS), key of the source, place."""
+
+    kind: str
+    source: str = ""
+    where: str = ""
+
+    def __post_init__(self) -> None:
+        if self.kind not in ORIGINS:
+            raise InputError(f"{self.kind!r:.60} is no origin; known: {', '.join(ORIGINS)}")
+
+
+@dataclass(frozen=True)
+class Decision:
+    """Who decided, why, and what doubts were left open."""
+
+    who: str = ""
+    why: str = ""
+    doubts: str = ""
+
+
+@dataclass(frozen=True)
+class Design:
+    """A point and everything a meeting says about it.
+
+    point: input name -> SI number or whole value, one design (no arrays). requirements: a sequence
+    of `Requirement`. scatter, unknowns, origins: input name -> `Spread`, `Unknown`, `Origin`.
+    correlation: pairs of scattering inputs -> coefficient, keys 'one|other'. emitter, resonator,
+    optic: keys of the catalogue records that the values came from. data: names of measured files ->
+    hash. Raises InputError for anything that cannot be one.
+    """
+
+    point: Mapping[str, Any] = field(default_factory=Frozen)
+    requirements: tuple[Requirement, ...] = ()
+    scatter: Mapping[str, Spread] = field(default_factory=Frozen)
+    unknowns: Mapping[str, Unknown] = field(default_factory=Frozen)
+    origins: Mapping[str, Origin] = field(default_factory=Frozen)
+    correlation: Mapping[str, float] = field(default_factory=Frozen)
+    name: str = ""
+    note: str = ""
+    decision: Decision = field(default_factory=Decision)
+    emitter: str = ""
+    resonator: str = ""
+    optic: str = ""
+    data: Mapping[str, str] = field(default_factory=Frozen)
+
+    def __post_init__(self) -> None:
+        work = Evaluation(self.point)
+        if work.shape:
+            raise InputError("a design is one point; give single numbers, no arrays")
+        point = {
+            name: value if INPUTS[name].whole else float(value)
+            for name, value in self.point.items()
+        }
+        object.__setattr__(self, "point", Frozen(point))
+        object.__setattr__(self, "requirements", tuple(self.requirements))
+        for name in ("scatter", "unknowns", "origins", "correlation", "data"):
+            object.__setattr__(self, name, Frozen(getattr(self, name)))
+        self._check_companions()
+        self._check_texts()
+
+    def _check_companions(self) -> None:
+        kinds = {"scatter": Spread, "unknowns": Unknown, "origins": Origin}
+        for attribute, kind in kinds.items():
+            for name, value in getattr(self, attribute).items():
+                if name not in INPUTS:
+                    raise InputError(f"{attribute} names {name!r:.60}, which is no input")
+                if not isinstance(value, kind):
+                    raise InputError(f"{attribute} of {name} is no {kind.__name__}", name)
+                if attribute != "origins" and INPUTS[name].whole:
+                    raise InputError(f"{name} is no number, so it has no {attribute}", name)
+        for name, unknown in self.unknowns.items():
+            for end in (unknown.low, unknown.high):
+                Evaluation({**self._without(name), name: end})
+        for requirement in self.requirements:
+            if not isinstance(requirement, Requirement):
+                raise InputError(f"{requirement!r:.60} is no Requirement")
+
+    def _without(self, name: str) -> dict[str, Any]:
+        return {key: value for key, value in self.point.items() if key != name}
+
+    def _check_texts(self) -> None:
+        texts = [self.name, self.note, *(getattr(self.decision, f.name) for f in fields(Decision))]
+        for text in texts:
+            if not isinstance(text, str) or len(text) > LONGEST_TEXT:
+                raise InputError(f"a name, note or decision is a text of at most {LONGEST_TEXT} signs")
+            if any(ord(sign) < 32 and sign not in "\n\t" for sign in text):
+                raise InputError("a name, note or decision holds a control character")
+
+    def with_values(self, **values: Any) -> Design:
+        """The same design with some inputs given, as typed by a person."""
+        origins = {name: Origin("typed") for name in values}
+        return replace(self, point=self.point | values, origins=self.origins | origins)  # type: ignore[operator]  # Frozen after __post_init__
+
+    def without_values(self, *names: str) -> Design:
+        """The same design with some inputs back at their defaults."""
+        keep = {key: value for key, value in self.point.items() if key not in names}
+        origins = {key: value for key, value in self.origins.items() if key not in names}
+        return replace(self, point=keep, origins=origins)
+
+    def outcome(self, wanted: Any = None) -> dict[str, Any]:
+        """Quantities of the design by name; all of them unless `wanted` names some."""
+        return evaluate(self.point, REGISTRY.quantities if wanted is None else wanted)
+
+    def origin(self, name: str) -> Origin:
+        """Where an input's value comes from; 'default' where it is not given."""
+        return self.origins.get(name, Origin("typed" if name in self.point else "default"))
+
+    def cautions(self) -> tuple[str, ...]:
+        """Names of the cautions that are true at this point, the order of their definition."""
+        marks = evaluate(self.point, REGISTRY.cautions)
+        return tuple(name for name, holds in marks.items() if holds)
+
+
+def written(name: str, value: Any) -> str:
+    """An input's value as the page writes it: '650 nm', '∞', 'standing wave'."""
+    entry = INPUTS[name]
+    if entry.choices:
+        return str(value).replace("_", " ")
+    return repr(value) if entry.whole else shown(float(value), entry)

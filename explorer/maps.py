@@ -1,0 +1,170 @@
+"""Maps: quantities over any two inputs, outlines and frontiers as iso-lines of quantities."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .design import Requirement
+from .evaluate import Evaluation, InputError
+from .inputs import INPUTS
+from .registry import REGISTRY
+
+Array = NDArray[np.float64]
+
+#: Iso-lines on which the regime changes: quantity, level, name.
+FRONTIERS = (
+    ("strong_ratio", 1.0, "strong coupling"),
+    ("funnelling_ratio", 1.0, "Γ = κ"),
+    ("splitting_ratio", 1.0, "visible doublet"),
+)
+
+
+@dataclass(frozen=True)
+class Axis:
+    """One axis of a map: input, lowest and highest value in SI, logarithmic or not, cells."""
+
+    name: str
+    low: float
+    high: float
+    log: bool = True
+    count: int = 256
+
+    def __post_init__(self) -> None:
+        if self.name not in INPUTS or INPUTS[self.name].whole:
+            raise InputError(f"{self.name!r:.60} is no input that can be an axis")
+        if not (np.isfinite(self.low) and np.isfinite(self.high)) or self.low >= self.high:
+            raise InputError(f"the axis {self.name} must rise from a low to a high number", self.name)
+        if self.log and self.low <= 0:
+            raise InputError(f"the axis {self.name} is logarithmic and must start above 0", self.name)
+        if not 2 <= self.count <= 2048:
+            raise InputError(f"the axis {self.name} takes 2 to 2048 cells, not {self.count}", self.name)
+
+    @cached_property
+    def values(self) -> Array:
+        """Values at the centres of the cells, SI, ascending."""
+        fractions = (np.arange(self.count) + 0.5) / self.count
+        return np.asarray(self.at(fractions))
+
+    def at(self, fraction: Any) -> Any:
+        """Value at a fraction 0..1 of the axis."""
+        if self.log:
+            return self.low * (self.high / self.low) ** np.asarray(fraction)
+        return self.low + (self.high - self.low) * np.asarray(fraction)
+
+    def fraction(self, value: Any) -> Any:
+        """Fraction 0..1 of the axis at a value; outside the axis beyond 0 or 1."""
+        if self.log:
+            with np.errstate(divide="ignore", invalid="ignore"):
+                return np.log(np.asarray(value) / self.low) / np.log(self.high / self.low)
+        return (np.asarray(value) - self.low) / (self.high - self.low)
+
+
+def mesh(x: Axis, y: Axis) -> dict[str, Array]:
+    """The two axes as point entries, shapes (1, nx) and (ny, 1): point | mesh(x, y) is a map."""
+    if x.name == y.name:
+        raise InputError(f"a map needs two different inputs; both axes are {x.name}", x.name)
+    return {x.name: x.values[None, :], y.name: y.values[:, None]}
+
+
+@dataclass(frozen=True)
+class Map:
+    """Quantities over two inputs. `values`: name -> array (ny, nx), row 0 lowest, NaN: no number."""
+
+    x: Axis
+    y: Axis
+    values: Mapping[str, NDArray[Any]]
+    margin: Array | None
+    binding: NDArray[np.int64] | None
+    caution: NDArray[np.bool_]
+
+    def lines(self, name: str, levels: Sequence[float]) -> list[list[Array]]:
+        """Iso-lines of a quantity: for each level the polylines, (n, 2) in fractions of the axes."""
+        return isolines(self.values[name], levels, log=REGISTRY.quantities[name].log)
+
+    def outline(self) -> list[Array]:
+        """Border of the region that meets every requirement, in fractions of the axes."""
+        if self.margin is None:
+            return []
+        framed = np.pad(self.margin, 1, constant_values=-1e-9)
+        ny, nx = self.margin.shape
+        found = _polylines(framed, [0.0])[0]
+        scale = np.array([nx, ny], dtype=float)
+        return [np.clip((line - 0.5) / scale, 0.0, 1.0) for line in found]
+
+
+def _polylines(field: Array, levels: Sequence[float]) -> list[list[Array]]:
+    """Polylines of each level in units of cells: the centre of cell (0, 0) is (0, 0)."""
+    import contourpy
+
+    generator = contourpy.contour_generator(z=np.ma.masked_invalid(field))
+    return [[np.asarray(line) for line in generator.lines(level)] for level in levels]
+
+
+def isolines(field: NDArray[Any], levels: Sequence[float], log: bool = False) -> list[list[Array]]:
+    """Iso-lines of an array (ny, nx) in fractions of its axes, one list of polylines a level."""
+    values = np.asarray(field, dtype=float)
+    wanted = [float(level) for level in levels]
+    if log:
+        with np.errstate(divide="ignore", invalid="ignore"):
+            values = np.log(values)
+        wanted = [float(np.log(level)) if level > 0 else float("nan") for level in wanted]
+    scale = np.array([values.shape[1], values.shape[0]], dtype=float)
+    return [[(line + 0.5) / scale for line in lines] for lines in _polylines(values, wanted)]
+
+
+def margins(work: Evaluation, requirements: Sequence[Requirement]) -> list[Any]:
+    """How far each requirement is met: above 0 met, below 0 missed, NaN no number.
+
+    The natural logarithm of the ratio of value and limit where both are positive, else their
+    difference; in the own shape of each quantity.
+    """
+    found = []
+    for requirement in requirements:
+        value = np.asarray(work.result(requirement.quantity), dtype=float)
+        sign = 1.0 if requirement.at_least is not None else -1.0
+        limit = requirement.limit
+        with np.errstate(divide="ignore", invalid="ignore"):
+            if limit > 0:
+                ratio = np.log(np.maximum(value, 1e-300) / limit)
+                found.append(sign * np.where(np.isnan(value), np.nan, ratio))
+            else:
+                found.append(sign * (value - limit))
+    return found
+
+
+def make_map(
+    point: Mapping[str, Any],
+    x: Axis,
+    y: Axis,
+    wanted: Iterable[str],
+    requirements: Sequence[Requirement] = (),
+    cautions: Iterable[str] = (),
+) -> Map:
+    """Quantities of a point over two inputs, with the margin of the requirements.
+
+    point: input name -> SI value, no arrays (entries for the two axes are replaced). wanted:
+    quantities. Requirements give `margin` (the smallest, see `margins`) and `binding` (whose it is);
+    `caution` is true where any of `cautions` holds. Raises InputError.
+    """
+    work = Evaluation({**point, **mesh(x, y)})
+    shape = (y.count, x.count)
+    values = {name: np.broadcast_to(work.result(name), shape) for name in wanted}
+    margin = binding = None
+    if requirements:
+        found = margins(work, requirements)
+        margin = np.broadcast_to(found[0], shape)
+        binding = np.zeros(shape, dtype=np.int64)
+        for index, other in enumerate(found[1:], start=1):
+            worse = ~(other >= margin)
+            binding = np.where(worse, index, binding)
+            margin = np.where(worse, other, margin)
+    caution = np.zeros(shape, dtype=bool)
+    for name in cautions:
+        caution |= work.value(name)
+    return Map(x, y, values, margin, binding, caution)

@@ -1,0 +1,27 @@
+"""The formulas, one topic a module. Importing this package registers all of them."""
+
+from . import (
+    cautions,
+    coherence,
+    coupling,
+    farfield,
+    interface,
+    mixtures,
+    outcome,
+    photons,
+    purity,
+    spectra,
+)
+
+__all__ = [
+    "cautions",
+    "coherence",
+    "coupling",
+    "farfield",
+    "interface",
+    "mixtures",
+    "outcome",
+    "photons",
+    "purity",
+    "spectra",
+]

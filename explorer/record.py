@@ -1,0 +1,324 @@
+"""A design as JSON and back, exactly; the published schema; atomic writing.
+
+Numbers are written in the unit that the page shows, as the exact decimal of the SI value shifted by
+the unit's power of ten, and read back the same way, so every input returns bit for bit.
+"""
+
+from __future__ import annotations
+
+import os
+import tempfile
+from collections.abc import Mapping
+from datetime import UTC, datetime
+from pathlib import Path
+from typing import Any
+
+from .budget import budget_rows
+from .design import Decision, Design, Origin, Requirement, Spread, Unknown
+from .evaluate import Evaluation, InputError
+from .exact import RecordError, number_in, parse, serialise, value_of
+from .inputs import INPUTS
+from .registry import REGISTRY
+from .schema import FORMAT, VERSION, problems
+from .units import text
+from .whole import Lines, Pattern, Samples, WholeError
+
+#: Largest record that is read [bytes].
+LARGEST = 20_000_000
+
+Json = dict[str, Any]
+
+
+def _number(value: float, unit: str) -> Json:
+    return {"value": number_in(value, unit), "unit": unit}
+
+
+def _whole(value: Any) -> Any:
+    """A whole value in JSON: a word, or a table with its units."""
+    if isinstance(value, Lines):
+        rows = [
+            [number_in(share, "1"), number_in(offset, "nm"), number_in(width, "nm")]
+            for share, offset, width in value.lines
+        ]
+        return {"kind": "lines", "units": ["1", "nm", "nm"], "rows": rows}
+    if isinstance(value, Samples):
+        rows = [
+            [number_in(offset, "nm"), number_in(count, "1")]
+            for offset, count in zip(value.offsets.tolist(), value.counts.tolist(), strict=True)
+        ]
+        return {"kind": "samples", "units": ["nm", "1/nm"], "rows": rows}
+    if isinstance(value, Pattern):
+        rows = [
+            [number_in(angle, "rad"), number_in(power, "1")]
+            for angle, power in zip(value.angles.tolist(), value.powers.tolist(), strict=True)
+        ]
+        return {"kind": "pattern", "units": ["rad", "1/sr"], "rows": rows}
+    return value
+
+
+def _input(name: str, value: Any) -> Json:
+    entry = INPUTS[name]
+    if entry.whole:
+        return {"value": _whole(value)}
+    return _number(float(value), entry.shown)
+
+
+def _inputs(design: Design) -> Json:
+    """Given inputs apart from the defaults filled in for the others."""
+    work = Evaluation(design.point)
+    given = {name: _input(name, design.point[name]) for name in INPUTS if name in design.point}
+    defaults = {}
+    for name, entry in INPUTS.items():
+        if name not in design.point:
+            value = work.value(name)
+            if value is not None or not entry.whole:
+                defaults[name] = _input(name, value)
+    return {"given": given, "defaults": defaults}
+
+
+def _outcome(design: Design) -> Json:
+    found: Json = {}
+    for name, value in design.outcome().items():
+        quantity = REGISTRY.quantities[name]
+        if quantity.kind == "number":
+            found[name] = {**_number(value, quantity.unit), "shown": text(value, quantity.unit)}
+        else:
+            found[name] = {"value": value}
+    return found
+
+
+def _requirement(requirement: Requirement) -> Json:
+    unit = REGISTRY.quantities[requirement.quantity].unit
+    side = "at_most" if requirement.at_least is None else "at_least"
+    return {"quantity": requirement.quantity, side: _number(requirement.limit, unit)}
+
+
+def _budget(design: Design) -> list[Json]:
+    rows = []
+    for row in budget_rows(Evaluation(design.point)):
+        streams = {name: number_in(value, "1/s") for name, value in row.streams.items()}
+        factor = None if row.factor is None else number_in(row.factor, "1")
+        rows.append(
+            {"step": row.step, "total": _number(row.total, "1/s"), "factor": factor, "streams": streams}
+        )
+    return rows
+
+
+def _sources(design: Design) -> Json:
+    """The references behind the inputs and the quantities, by key."""
+    from .catalogue import references
+
+    keys = {origin.source for origin in design.origins.values()}
+    keys |= {quantity.source for quantity in REGISTRY.quantities.values()}
+    known = references()
+    return {key: known[key].text for key in sorted(keys) if key in known}
+
+
+def record_of(design: Design) -> Json:
+    """The record of a design as a JSON object; numbers are exact decimals (see `exact`)."""
+    from . import __version__
+
+    return {
+        "format": FORMAT,
+        "version": VERSION,
+        "tool": {"name": "explorer", "version": __version__},
+        "saved": datetime.now(UTC).isoformat(timespec="seconds"),
+        "name": design.name,
+        "note": design.note,
+        "decision": {
+            "who": design.decision.who,
+            "why": design.decision.why,
+            "doubts": design.decision.doubts,
+        },
+        "records": {
+            "emitter": design.emitter,
+            "resonator": design.resonator,
+            "optic": design.optic,
+        },
+        "inputs": _inputs(design),
+        "requirements": [_requirement(entry) for entry in design.requirements],
+        "scatter": {name: _spread(name, spread) for name, spread in design.scatter.items()},
+        "correlation": {
+            pair: number_in(value, "1") for pair, value in design.correlation.items()
+        },
+        "unknowns": {
+            name: {
+                "low": _number(unknown.low, INPUTS[name].shown),
+                "high": _number(unknown.high, INPUTS[name].shown),
+            }
+            for name, unknown in design.unknowns.items()
+        },
+        "origins": {
+            name: {"kind": origin.kind, "source": origin.source, "where": origin.where}
+            for name, origin in design.origins.items()
+        },
+        "data": dict(design.data),
+        "outcome": _outcome(design),
+        "budget": _budget(design),
+        "cautions": [
+            {"name": name, "sentence": REGISTRY.cautions[name].sentence}
+            for name in design.cautions()
+        ],
+        "sources": _sources(design),
+    }
+
+
+def _spread(name: str, spread: Spread) -> Json:
+    unit = "1" if spread.kind in ("lognormal", "direction") else INPUTS[name].shown
+    return {"kind": spread.kind, "width": _number(spread.width, unit)}
+
+
+def design_text(design: Design | Mapping[str, Any]) -> str:
+    """The record of a design or of a bare point as JSON text. Raises InputError."""
+    if not isinstance(design, Design):
+        design = Design(point=design)
+    return serialise(record_of(design)) + "\n"
+
+
+def save_design(design: Design | Mapping[str, Any], path: str | os.PathLike[str]) -> None:
+    """Write the record of a design or of a bare point as JSON, whole or not at all.
+
+    The text is written beside the target and moved into place, so an interruption leaves the file
+    that was there. Raises InputError for a bad point, RecordError if it cannot be written.
+    """
+    text = design_text(design)
+    target = Path(path)
+    unfinished = ""
+    try:
+        handle, unfinished = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
+        with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as stream:
+            stream.write(text)
+            stream.flush()
+            os.fsync(stream.fileno())
+        os.chmod(unfinished, target.stat().st_mode & 0o777 if target.exists() else 0o644)
+        os.replace(unfinished, target)
+    except OSError as error:
+        raise RecordError(f"the design was not saved to {target.name}: {error.strerror}") from error
+    finally:
+        if unfinished and os.path.exists(unfinished):
+            os.unlink(unfinished)
+
+
+def load_design(path: str | os.PathLike[str]) -> Design:
+    """Read a design from its JSON record.
+
+    Inputs come back bit for bit; the outcome is worked out afresh. Raises RecordError, in one
+    sentence, for what is no readable record.
+    """
+    target = Path(path)
+    try:
+        size = target.stat().st_size
+        if size > LARGEST:
+            raise RecordError(
+                f"{target.name} has {size / 1e6:.0f} MB; a design record has at most "
+                f"{LARGEST / 1e6:.0f} MB"
+            )
+        content = target.read_bytes()
+    except OSError as error:
+        raise RecordError(f"{target.name} cannot be read: {error.strerror}") from error
+    return design_from(content, target.name)
+
+
+def design_from(content: bytes, name: str = "the record") -> Design:
+    """The same from the bytes of a record; `name` stands in the messages."""
+    if len(content) > LARGEST:
+        raise RecordError(f"{name} is larger than the {LARGEST / 1e6:.0f} MB of a design record")
+    record = migrated(parse(content, name), name)
+    found = problems(record)
+    if found:
+        raise RecordError(f"{name} is no design record: {found}")
+    try:
+        return _design(record)
+    except (InputError, WholeError) as error:
+        raise RecordError(f"{name} holds what cannot be: {error}") from error
+
+
+def migrated(record: Any, name: str) -> Json:
+    """A record of this version, from one of an older version; refuses others in words."""
+    if not isinstance(record, dict) or record.get("format") != FORMAT:
+        raise RecordError(f"{name} is no design record: it does not name the format {FORMAT!r}")
+    version = record.get("version")
+    if version != VERSION:
+        raise RecordError(
+            f"{name} has version {str(version)[:20]!r} of the record, and this tool reads version "
+            f"{VERSION}; save it again with the tool that wrote it, or update this one"
+        )
+    return record
+
+
+def _read_whole(entry: Any) -> Any:
+    if isinstance(entry, str):
+        return entry
+    rows = entry["rows"]
+    first, second = entry["units"][0], entry["units"][1]
+    if entry["kind"] == "lines":
+        return Lines([(value_of(a, "1"), value_of(b, "nm"), value_of(c, "nm")) for a, b, c in rows])
+    kind = Samples if entry["kind"] == "samples" else Pattern
+    unit = first if entry["kind"] == "pattern" else "nm"
+    del second
+    return kind([value_of(row[0], unit) for row in rows], [value_of(row[1], "1") for row in rows])
+
+
+def _si(entry: Any, what: str, unit: str) -> float:
+    """SI value of a {value, unit}; the unit must be one of the same kind."""
+    from .units import si_unit
+
+    try:
+        family = si_unit(entry["unit"])
+    except ValueError as error:
+        raise RecordError(f"{what}: {error}") from error
+    if family != si_unit(unit):
+        raise RecordError(f"{what} is given in {entry['unit']!r}; it takes {unit}")
+    return value_of(entry["value"], entry["unit"])
+
+
+def _read_point(given: Json) -> dict[str, Any]:
+    point: dict[str, Any] = {}
+    for name, entry in given.items():
+        row = INPUTS.get(name)
+        if row is None:
+            raise InputError(f"{name!r:.80} is no input")
+        point[name] = _read_whole(entry["value"]) if row.whole else _si(entry, name, row.shown)
+    return point
+
+
+def _read_requirement(entry: Json) -> Requirement:
+    quantity = REGISTRY.quantities.get(entry["quantity"])
+    if quantity is None:
+        raise InputError(f"{entry['quantity']!r:.60} is no quantity that can be required")
+    limits = {
+        side: _si(entry[side], f"the requirement on {quantity.name}", quantity.unit)
+        for side in ("at_least", "at_most")
+        if side in entry
+    }
+    return Requirement(quantity.name, **limits)
+
+
+def _read_spread(name: str, entry: Json) -> Spread:
+    shown = INPUTS[name].shown if name in INPUTS else "1"
+    unit = "1" if entry["kind"] in ("lognormal", "direction") else shown
+    return Spread(entry["kind"], _si(entry["width"], f"the scatter of {name}", unit))
+
+
+def _read_unknown(name: str, entry: Json) -> Unknown:
+    unit = INPUTS[name].shown if name in INPUTS else "1"
+    ends = (_si(entry[end], f"the range of {name}", unit) for end in ("low", "high"))
+    return Unknown(*ends)
+
+
+def _design(record: Json) -> Design:
+    return Design(
+        point=_read_point(record["inputs"]["given"]),
+        requirements=tuple(_read_requirement(entry) for entry in record["requirements"]),
+        scatter={name: _read_spread(name, entry) for name, entry in record["scatter"].items()},
+        correlation={
+            pair: value_of(value, "1") for pair, value in record["correlation"].items()
+        },
+        unknowns={name: _read_unknown(name, entry) for name, entry in record["unknowns"].items()},
+        origins={name: Origin(**entry) for name, entry in record["origins"].items()},
+        name=record["name"],
+        note=record["note"],
+        decision=Decision(**record["decision"]),
+        data=record["data"],
+        **record["records"],
+    )

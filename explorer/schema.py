@@ -1,0 +1,230 @@
+"""The published schema of a design record (JSON Schema 2020-12), made from the names.
+
+`data/design.schema.json` is this schema written out; a test keeps the two equal.
+"""
+
+from __future__ import annotations
+
+import json
+from functools import cache
+from importlib.resources import files
+from typing import Any
+
+from .design import LONGEST_TEXT, ORIGINS, SPREADS
+from .inputs import INPUTS
+from .registry import REGISTRY, Input
+from .units import EXPONENTS, si_unit
+from .whole import MOST_SAMPLES, Lines, Pattern
+
+FORMAT = "emitter and resonator design"
+VERSION = 1
+
+Json = dict[str, Any]
+
+_TEXT: Json = {"type": "string", "maxLength": LONGEST_TEXT}
+_NUMBER: Json = {"$ref": "#/$defs/number"}
+_ANY_NUMBER: Json = {
+    "oneOf": [{"type": "number"}, {"enum": ["infinite", "minus infinite", "none"]}]
+}
+
+
+_FAMILY_NAMES = {"1": "plain", "1/s": "per_second", "(λ/n)³": "cubic_wavelengths", "λ/n": "wavelengths"}
+
+
+def _object(properties: Json, required: list[str] | None = None, **more: Any) -> Json:
+    return {
+        "type": "object",
+        "properties": properties,
+        "required": list(properties) if required is None else required,
+        "additionalProperties": False,
+        **more,
+    }
+
+
+def _units_like(unit: str) -> list[str]:
+    """Units that a value of this kind may be written in."""
+    return [name for name in EXPONENTS if si_unit(name) == si_unit(unit) and name not in ("%", "°")]
+
+
+def _with_unit(unit: str) -> Json:
+    return {"$ref": f"#/$defs/{_family(unit)}"}
+
+
+def _family(unit: str) -> str:
+    """Name of the definition of a number with a unit of this kind."""
+    name = si_unit(unit)
+    return "number_in_" + _FAMILY_NAMES.get(name, name.replace("/", "_per_"))
+
+
+def _families() -> Json:
+    found: Json = {"number": _ANY_NUMBER}
+    for unit in EXPONENTS:
+        fields = {"value": _NUMBER, "unit": {"enum": _units_like(unit)}, "shown": _TEXT}
+        found[_family(unit)] = _object(fields, ["value", "unit"])
+    return found
+
+
+def _rows(kind: str, units: list[str], most: int) -> Json:
+    row = {"type": "array", "items": _NUMBER, "minItems": len(units), "maxItems": len(units)}
+    return _object(
+        {
+            "kind": {"const": kind},
+            "units": {"const": units},
+            "rows": {"type": "array", "items": row, "minItems": 1, "maxItems": most},
+        }
+    )
+
+
+def _input_value(entry: Input) -> Json:
+    if entry.choices:
+        return _object({"value": {"enum": list(entry.choices)}}, description=entry.meaning)
+    if Pattern in entry.types:
+        value = _rows("pattern", ["rad", "1/sr"], MOST_SAMPLES)
+        return _object({"value": value}, description=entry.meaning)
+    if Lines in entry.types:
+        lines = _rows("lines", ["1", "nm", "nm"], 50)
+        samples = _rows("samples", ["nm", "1/nm"], MOST_SAMPLES)
+        return _object({"value": {"oneOf": [lines, samples]}}, description=entry.meaning)
+    return {**_with_unit(entry.shown), "description": entry.meaning}
+
+
+def _by_input(value: Any, numbers_only: bool = True) -> Json:
+    """An object with an entry for any input; `value` makes the entry from the input."""
+    rows = [row for row in INPUTS.values() if not (numbers_only and row.whole)]
+    return _object({row.name: value(row) for row in rows}, [])
+
+
+def _outcome() -> Json:
+    found: Json = {}
+    for quantity in REGISTRY.quantities.values():
+        if quantity.kind == "number":
+            entry = _with_unit(quantity.unit)
+        elif quantity.kind == "choice":
+            entry = _object({"value": {"enum": [*quantity.choices, ""]}})
+        else:
+            entry = _object({"value": {"type": "boolean"}})
+        found[quantity.name] = {**entry, "description": quantity.label}
+    return found
+
+
+def _requirement() -> Json:
+    numbers = [entry for entry in REGISTRY.quantities.values() if entry.kind == "number"]
+    limit = _object({"value": {"type": "number"}, "unit": {"type": "string", "maxLength": 20}})
+    return _object(
+        {
+            "quantity": {"enum": [entry.name for entry in numbers]},
+            "at_least": limit,
+            "at_most": limit,
+        },
+        ["quantity"],
+        oneOf=[{"required": ["at_least"]}, {"required": ["at_most"]}],
+    )
+
+
+def _step() -> Json:
+    streams = {"type": "object", "additionalProperties": _NUMBER}
+    factor = {"oneOf": [{"type": "null"}, _NUMBER]}
+    return _object({"step": _TEXT, "total": _with_unit("1/s"), "factor": factor, "streams": streams})
+
+
+def _open_slots() -> Json:
+    """Slots that a record may carry and this version does not fill itself."""
+    interval = _object({"value": _NUMBER, "low": _NUMBER, "high": _NUMBER, "unit": _TEXT}, ["value"])
+    by_name: Json = {"type": "object", "additionalProperties": interval}
+    table: Json = {"type": "array", "items": {"type": "object"}}
+    return {
+        "ranges": {**by_name, "description": "range of each quantity from what is not known"},
+        "yield": {
+            **_object(
+                {"share": interval, "count": {"type": "number"}, "by_requirement": by_name},
+                ["share"],
+            ),
+            "description": "share of fabricated devices that pass",
+        },
+        "headroom": {**table, "description": "what each step alone could give back"},
+        "measured": {**table, "description": "fits of measured data with their intervals"},
+        "bounds": {
+            **_by_input(lambda row: _object({"low": _with_unit(row.shown), "high": _with_unit(row.shown)})),
+            "description": "bounds of a search",
+        },
+        "shown": {"type": "object", "description": "what the page showed"},
+    }
+
+
+@cache
+def schema() -> Json:
+    """The schema as a JSON object."""
+    spread = {"kind": {"enum": list(SPREADS)}}
+    properties: Json = {
+        "format": {"const": FORMAT},
+        "version": {"const": VERSION},
+        "tool": _object({"name": _TEXT, "version": _TEXT}),
+        "saved": {"type": "string", "format": "date-time", "maxLength": 40},
+        "name": _TEXT,
+        "note": _TEXT,
+        "decision": _object({"who": _TEXT, "why": _TEXT, "doubts": _TEXT}),
+        "records": _object({"emitter": _TEXT, "resonator": _TEXT, "optic": _TEXT}),
+        "inputs": _object(
+            {
+                "given": _by_input(_input_value, numbers_only=False),
+                "defaults": _by_input(_input_value, numbers_only=False),
+            }
+        ),
+        "requirements": {"type": "array", "items": _requirement(), "maxItems": 50},
+        "scatter": _by_input(
+            lambda row: _object(
+                {**spread, "width": {"anyOf": [_with_unit(row.shown), _with_unit("1")]}}
+            )
+        ),
+        "correlation": {"type": "object", "additionalProperties": {"type": "number"}},
+        "unknowns": _by_input(
+            lambda row: _object({"low": _with_unit(row.shown), "high": _with_unit(row.shown)})
+        ),
+        "origins": _by_input(
+            lambda row: _object({"kind": {"enum": list(ORIGINS)}, "source": _TEXT, "where": _TEXT}),
+            numbers_only=False,
+        ),
+        "data": {"type": "object", "additionalProperties": _TEXT},
+        "outcome": _object(_outcome(), []),
+        "budget": {"type": "array", "items": _step()},
+        "cautions": {"type": "array", "items": _object({"name": _TEXT, "sentence": _TEXT})},
+        "sources": {"type": "object", "additionalProperties": _TEXT},
+    }
+    return {
+        "$schema": "https://json-schema.org/draft/2020-12/schema",
+        "title": "Design of a single-photon source: emitter, resonator, optic, and what came of it",
+        **_object({**properties, **_open_slots()}, list(properties)),
+        "$defs": _families(),
+    }
+
+
+def shipped() -> Json:
+    """The schema as shipped beside the data."""
+    text = files("explorer").joinpath("data/design.schema.json").read_text(encoding="utf-8")
+    loaded: Json = json.loads(text)
+    return loaded
+
+
+def problems(record: Any) -> str:
+    """The most telling problem of a record against the schema in one sentence; '' if none."""
+    from jsonschema import Draft202012Validator
+    from jsonschema.exceptions import best_match
+
+    worst = best_match(_validator(Draft202012Validator).iter_errors(record))
+    if worst is None:
+        return ""
+    place = " → ".join(str(part) for part in worst.absolute_path) or "the record"
+    message = worst.message if len(worst.message) < 160 else f"fails {worst.validator!r}"
+    return f"at {place:.120}: {message}"
+
+
+@cache
+def _validator(kind: Any) -> Any:
+    from decimal import Decimal
+
+    checker = kind.TYPE_CHECKER.redefine(
+        "number", lambda _, value: isinstance(value, int | float | Decimal) and not isinstance(value, bool)
+    )
+    from jsonschema.validators import extend
+
+    return extend(kind, type_checker=checker)(schema())
