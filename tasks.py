@@ -1,4 +1,4 @@
-"""Everything a fresh clone needs, with nothing but Python: makes `.venv` here, installs the project and runs a task.
+"""All a fresh clone needs besides Python: makes `.venv`, installs the project, runs a task.
 
     python3 tasks.py                opens the page (takes --port N and --no-browser)
     python3 tasks.py test           runs the tests; more words go to pytest
@@ -34,13 +34,17 @@ TASKS = {
 def main(words: list[str]) -> int:
     """Run the task named first (`open` if none is); every other word is passed on to it."""
     if sys.version_info < OLDEST:
-        return fail(f"Python {OLDEST[0]}.{OLDEST[1]} or newer is needed; this is {sys.version.split()[0]}.")
+        return fail(
+            f"Python {OLDEST[0]}.{OLDEST[1]} or newer is needed; this is {sys.version.split()[0]}."
+        )
     if words and words[0] in ("-h", "--help"):
         print(__doc__)
         return 0
     if words and words[0] == "check-notebooks":
         return check_notebooks(words[1:])
-    task, rest = (words[0], words[1:]) if words and not words[0].startswith("-") else ("open", words)
+    task, rest = (
+        (words[0], words[1:]) if words and not words[0].startswith("-") else ("open", words)
+    )
     if task not in TASKS:
         return fail(f"There is no task {task!r}; the tasks are {', '.join(TASKS)}.")
     extra, commands = TASKS[task]
@@ -56,15 +60,27 @@ def main(words: list[str]) -> int:
 
 
 def set_up(extra: str) -> str | None:
-    """Make the environment and install the project, unless it is done already; returns what went wrong."""
-    done = ENVIRONMENT / f"installed{extra.strip('[]') and '-' + extra.strip('[]')}"
+    """Make the environment and install the project, unless done already; returns any problem."""
+    done = ENVIRONMENT / f"installed{extra}"
     wanted = fingerprint()
-    if done.is_file() and done.read_text(encoding="utf-8") == wanted:
-        return None
+    for mark in (done, ENVIRONMENT / "installed[test]"):  # the tests' environment has it all
+        if mark.is_file() and mark.read_text(encoding="utf-8") == wanted:
+            return None
     print("Setting up in .venv (a few minutes, once) …", flush=True)
     if not python().exists() and subprocess.call([sys.executable, "-m", "venv", str(ENVIRONMENT)]):
-        return "This Python cannot make environments; on Debian and Ubuntu `apt install python3-venv` helps."
-    install = ["-m", "pip", "install", "--quiet", "--disable-pip-version-check", "-e", f"{HERE}{extra}"]
+        return (
+            "This Python cannot make environments; "
+            "on Debian and Ubuntu `apt install python3-venv` helps."
+        )
+    install = [
+        "-m",
+        "pip",
+        "install",
+        "--quiet",
+        "--disable-pip-version-check",
+        "-e",
+        f"{HERE}{extra}",
+    ]
     if subprocess.call([str(python()), *install]):
         return "Installing the project failed; what pip said stands above."
     done.write_text(wanted, encoding="utf-8")
@@ -82,7 +98,7 @@ def python() -> Path:
 
 
 def hand_over(command: list[str]) -> int:
-    """Become the command, so that Ctrl-C and signals reach it alone; where that cannot be, wait for it."""
+    """Become the command, so that signals reach it alone; where that cannot be, wait for it."""
     if os.name != "nt":
         sys.stdout.flush()
         os.execv(command[0], command)

@@ -1,4 +1,4 @@
-"""`python -m explorer` opens the page; a further command is one more function with a parser of its own."""
+"""`python -m explorer` opens the page; a further command is one more parser and its function."""
 
 import argparse
 import sys
@@ -15,10 +15,18 @@ def main(arguments: Sequence[str] | None = None) -> int:
 def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="python -m explorer",
-        description="Open the explorer's page in the browser, served by this machine for this machine only.",
+        description="Open the explorer's page in the browser, served to this machine only.",
     )
-    parser.add_argument("--port", type=_port, default=0, metavar="N", help="port to serve on (a free one if left out)")
-    parser.add_argument("--no-browser", action="store_true", help="print the address and open no browser")
+    parser.add_argument(
+        "--port",
+        type=_port,
+        default=0,
+        metavar="N",
+        help="port to serve on (a free one if left out)",
+    )
+    parser.add_argument(
+        "--no-browser", action="store_true", help="print the address and open no browser"
+    )
     parser.set_defaults(run=open_page)
     return parser
 

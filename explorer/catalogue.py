@@ -107,6 +107,8 @@ def parse_record(kind: str, file: Traversable) -> Record:
 def _record(kind: str, key: str, table: Mapping[str, Any]) -> Record:
     values = _values(table["values"])
     boost = table.get("enhancement")
+    if boost and "meaning" not in boost:
+        raise ValueError("enhancement has no meaning: of what is it the ratio?")
     return Record(
         key=key,
         kind=kind,
@@ -146,6 +148,9 @@ def _values(tables: Mapping[str, Any]) -> dict[str, Value]:
 
 
 def _line(entry: Mapping[str, Any], values: Mapping[str, Value]) -> Line:
+    missing = [part for part in ("role", "share") if part not in entry]
+    if missing or "emission_wavelength" not in values:
+        raise ValueError(f"a line needs {missing[0] if missing else 'an emission_wavelength'}")
     centre = _value("emission_wavelength", entry["centre"]) if "centre" in entry else None
     at = centre or values["emission_wavelength"]
     width = _value("width", entry["width"], wavelength=at.value_si) if "width" in entry else None

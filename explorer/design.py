@@ -254,9 +254,9 @@ class Design:
         return tuple(name for name, holds in marks.items() if holds)
 
 
-def written(name: str, value: Any) -> str:
+def written(name: str, value: Any, digits: int = 12) -> str:
     """An input's value as the page writes it: '650 nm', '∞', 'standing wave'."""
     entry = INPUTS[name]
     if entry.choices:
         return str(value).replace("_", " ")
-    return repr(value) if entry.whole else shown(float(value), entry)
+    return repr(value) if entry.whole else shown(float(value), entry, digits)

@@ -7,6 +7,7 @@ one axis of a map stays one-dimensional until it meets the other.
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
+from dataclasses import replace
 from functools import cache
 from typing import Any
 
@@ -14,8 +15,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from . import units
-from .inputs import INPUTS
+from .inputs import BROADEST, INPUTS
 from .registry import REGISTRY, Input, dependencies, parameters, split_view
+from .whole import Samples
+
+#: Where a domain has no end of its own, SI: beyond it a formula could overflow, and no device is.
+FARTHEST = 1e20
+
+#: A line or a sample of a spectrum lies within these multiples of `emission_wavelength`.
+SPECTRUM_REACH = (0.1, 10.0)
 
 
 class InputError(ValueError):
@@ -29,27 +37,21 @@ class InputError(ValueError):
         self.name = name
 
 
-def shown(value: float, entry: Input) -> str:
+def shown(value: float, entry: Input, digits: int = 12) -> str:
     """An SI value of an input as the page and the messages write it: '650 nm'."""
     if np.isnan(value):
         return "not-a-number"
     if np.isinf(value):
         return "∞" if value > 0 else "−∞"
-    number = f"{units.from_si(value, entry.shown):.12g}"
+    number = f"{units.from_si(value, entry.shown):.{digits}g}"
     return number if entry.shown == "1" else f"{number} {entry.shown}"
 
 
 def _allowed(entry: Input, low: float, high: float, reason: str = "") -> str:
     left = "above" if entry.low_open else "from"
     right = "below" if entry.high_open else "to"
-    text = []
-    if np.isfinite(low):
-        text.append(f"{left} {shown(low, entry)}")
-    if np.isfinite(high):
-        text.append(f"{right} {shown(high, entry)}")
-    if entry.infinite:
-        text.append("or ∞")
-    return (" ".join(text) or "any finite number") + reason
+    text = f"{left} {shown(low, entry)} {right} {shown(high, entry)}"
+    return text + (" or ∞" if entry.infinite else "") + reason
 
 
 def _number(entry: Input, given: Any) -> NDArray[np.float64]:
@@ -57,28 +59,59 @@ def _number(entry: Input, given: Any) -> NDArray[np.float64]:
     if isinstance(given, np.ma.MaskedArray):
         raise InputError(f"{entry.name} is a masked array; give plain numbers", entry.name)
     if isinstance(given, str | bytes | bool | np.bool_ | Mapping) or given is None:
-        raise InputError(f"{entry.name} = {given!r:.80} is not a number", entry.name)
+        raise InputError(f"{entry.name} = {_quoted(given)} is not a number", entry.name)
     try:
-        array = np.asarray(given)
+        # A whole number beyond 64 bits is a number too.
+        array = np.asarray(float(given) if type(given) is int else given)
+    except OverflowError as error:
+        raise InputError(f"{entry.name} is a whole number too large to use", entry.name) from error
     except (ValueError, TypeError) as error:
         raise InputError(f"{entry.name} is not a regular array of numbers", entry.name) from error
     if array.dtype.kind == "c":
         raise InputError(f"{entry.name} is complex; give real numbers", entry.name)
     if array.dtype.kind not in "iuf":
-        raise InputError(f"{entry.name} = {given!r:.80} is not a number", entry.name)
+        raise InputError(f"{entry.name} = {_quoted(given)} is not a number", entry.name)
     return array.astype(np.float64, copy=False)
 
 
-def _refuse_first(entry: Input, value: NDArray[np.float64], bad: Any, allowed: str) -> None:
-    bad = np.broadcast_to(bad, np.broadcast_shapes(np.shape(bad), value.shape))
+def _quoted(given: Any) -> str:
+    """Something that a person gave, on one line, cut where it is long."""
+    text = " ".join(repr(given).split())
+    return text if len(text) <= 80 else f"{text[:79]}…"
+
+
+def _refuse_first(
+    entry: Input, value: NDArray[np.float64], bad: Any, low: Any, high: Any, why: str
+) -> None:
+    """InputError for the first element that is `bad`, with the ends of its own range."""
+    shape = np.broadcast_shapes(np.shape(bad), value.shape)
+    bad = np.broadcast_to(bad, shape)
     if not bad.any():
         return
-    index = tuple(int(i) for i in np.unravel_index(int(np.argmax(bad)), bad.shape))
-    number = float(np.broadcast_to(value, bad.shape)[index])
-    place = f"[{', '.join(map(str, index))}]" if index else ""
+    index = np.unravel_index(int(np.argmax(bad)), shape)
+    number, first, last = (float(np.broadcast_to(one, shape)[index]) for one in (value, low, high))
+    # The place in the array as it was given, which may be smaller than the shape of the point.
+    own = index[len(shape) - value.ndim :]
+    steps = [str(int(at) if size > 1 else 0) for at, size in zip(own, value.shape, strict=True)]
+    place = f"[{', '.join(steps)}]" if steps else ""
+    text = shown(number, entry)
+    if text in (shown(first, entry), shown(last, entry)):
+        text = shown(number, entry, digits=17)
     raise InputError(
-        f"{entry.name}{place} = {shown(number, entry)} is outside its range: {allowed}", entry.name
+        f"{entry.name}{place} = {text} is outside its range: {_allowed(entry, first, last, why)}",
+        entry.name,
     )
+
+
+def _refuse_part(what: str, value: float, fits: bool, low: float, high: float) -> None:
+    """InputError for an offset or a width of a spectrum that does not fit; lengths in m."""
+    if not fits:
+        number, first, last = (f"{length * 1e9:.6g} nm" for length in (value, low, high))
+        raise InputError(
+            f"spectrum has {what} of {number}, outside its range: from {first} to {last} (the limit "
+            "comes from emission_wavelength)",
+            "spectrum",
+        )
 
 
 def _whole(entry: Input, given: Any) -> Any:
@@ -86,11 +119,11 @@ def _whole(entry: Input, given: Any) -> Any:
         if isinstance(given, str) and given in entry.choices:
             return str(given)
         words = " or ".join(repr(word) for word in entry.choices)
-        raise InputError(f"{entry.name} = {given!r:.80} is not one of {words}", entry.name)
+        raise InputError(f"{entry.name} = {_quoted(given)} is not one of {words}", entry.name)
     if type(given) in entry.types:
         return given
     names = " or ".join(kind.__name__ for kind in entry.types)
-    raise InputError(f"{entry.name} = {given!r:.80} is no {names}", entry.name)
+    raise InputError(f"{entry.name} = {_quoted(given)} is no {names}", entry.name)
 
 
 class Evaluation:
@@ -114,6 +147,7 @@ class Evaluation:
             for name in point:
                 self._check_domain(INPUTS[name])
             self._check_side()
+            self._check_spectrum()
 
     @staticmethod
     def _names(point: Mapping[str, Any]) -> None:
@@ -122,7 +156,7 @@ class Evaluation:
         for name in point:
             if name not in INPUTS:
                 raise InputError(
-                    f"{name!r:.80} is no input; the inputs are: {', '.join(sorted(INPUTS))}"
+                    f"{_quoted(name)} is no input; the inputs are: {', '.join(sorted(INPUTS))}"
                 )
 
     def _common_shape(self) -> tuple[int, ...]:
@@ -142,10 +176,10 @@ class Evaluation:
                 origin = f"{origin}, {name}" if origin else name
         return shape
 
-    def _end(self, end: Any) -> tuple[Any, str]:
-        """An end of a domain, and the inputs it comes from in words."""
+    def _end(self, end: Any, without: float) -> tuple[Any, str]:
+        """An end of a domain, and the inputs it comes from in words; `without`: where it has none."""
         if not callable(end):
-            return end, ""
+            return end if np.isfinite(end) else without, ""
         names = parameters(end)
         reason = f" (the limit comes from {' and '.join(names)})"
         return end(**{name: self.value(name) for name in names}), reason
@@ -154,24 +188,45 @@ class Evaluation:
         if entry.whole:
             return
         value = self._values[entry.name]
-        low, why_low = self._end(entry.low)
-        high, why_high = self._end(entry.high)
-        ends = (float(np.max(low)), float(np.min(high))) if np.size(low) and np.size(high) else (0.0, 0.0)
-        allowed = _allowed(entry, *ends, why_low + why_high)
-        finite = np.isfinite(value) | (entry.infinite & (value == np.inf))
-        _refuse_first(entry, value, ~finite, allowed)
-        _refuse_first(entry, value, value <= low if entry.low_open else value < low, allowed)
+        low, why_low = self._end(entry.low, -FARTHEST)
+        high, why_high = self._end(entry.high, FARTHEST)
+        under = value <= low if entry.low_open else value < low
         over = (value >= high if entry.high_open else value > high) & np.isfinite(value)
-        _refuse_first(entry, value, over, allowed)
+        finite = np.isfinite(value) | (entry.infinite & (value == np.inf))
+        for bad in (~finite, under, over):
+            _refuse_first(entry, value, bad, low, high, why_low + why_high)
+        if entry.low_open:
+            least = f", at least {shown(1 / FARTHEST, entry)}"
+            _refuse_first(entry, value, value < 1 / FARTHEST, low, high, least)
 
     def _check_side(self) -> None:
         """The bare reference: air cannot be watched beyond NA 1, nor glass beyond its index."""
-        aperture = self.value("numerical_aperture")
+        aperture = np.asarray(self.value("numerical_aperture"))
         side = self.value("reference_side")
         limit = 1.0 if side == "air" else 1.52
-        entry = INPUTS["numerical_aperture"]
-        allowed = f"at most {limit:g} where reference_side is {side!r}"
-        _refuse_first(entry, np.asarray(aperture), aperture > limit, allowed)
+        entry = replace(INPUTS["numerical_aperture"], high_open=False)
+        why = f" where reference_side is {side!r}"
+        _refuse_first(entry, aperture, aperture > limit, 0.0, limit, why)
+
+    def _check_spectrum(self) -> None:
+        """Lines and samples lie at wavelengths near the emission, and no line is too broad."""
+        spectrum = self.value("spectrum")
+        wavelength = self.value("emission_wavelength")
+        if spectrum is None or not np.size(wavelength):
+            return
+        centre = float(np.min(wavelength))
+        rows = (
+            [(1.0, spectrum.offsets[end], 0.0) for end in (0, -1)]
+            if isinstance(spectrum, Samples)
+            else spectrum.lines
+        )
+        nearest, farthest = (factor * centre for factor in SPECTRUM_REACH)
+        for _, offset, width in rows:
+            own = centre + offset
+            _refuse_part(
+                "an offset", offset, nearest <= own <= farthest, nearest - centre, farthest - centre
+            )
+            _refuse_part("a width", width, width < BROADEST * own, 0.0, BROADEST * own)
 
     def value(self, name: str) -> Any:
         """An input (given or filled in) or a formula, in its own shape; KeyError if unknown."""
@@ -216,7 +271,9 @@ class Evaluation:
         for mask in voiding(name):
             empty = self.value(mask)
             if np.any(empty):
-                value = np.where(empty, "" if np.asarray(value).dtype.kind == "U" else np.nan, value)
+                value = np.where(
+                    empty, "" if np.asarray(value).dtype.kind == "U" else np.nan, value
+                )
         return value
 
 
@@ -264,8 +321,10 @@ def evaluate(point: Mapping[str, Any], wanted: Iterable[str]) -> dict[str, Any]:
     names = [wanted] if isinstance(wanted, str) else list(wanted)
     public = REGISTRY.quantities.keys() | REGISTRY.cautions.keys()
     for name in names:
-        if name not in public and name not in INPUTS:
-            raise KeyError(f"{name!r} is no quantity; the quantities are: {', '.join(sorted(public))}")
+        if not isinstance(name, str) or (name not in public and name not in INPUTS):
+            raise KeyError(
+                f"{_quoted(name)} is no quantity; the quantities are: {', '.join(sorted(public))}"
+            )
     work = Evaluation(point)
     found = {}
     for name in names:

@@ -134,7 +134,7 @@ EMITTER = (
 
 RESONATOR = (
     Input(
-        "resonance_wavelength", "Resonance wavelength", "λc", "resonator",
+        "resonance_wavelength", "Resonance", "λc", "resonator",
         "Vacuum wavelength of the resonance; follows the emission unless given.",
         unit="m", shown="nm", default=_emission, low=200e-9, high=10e-6,
         slider=(300e-9, 2000e-9), typical="at the emission",

@@ -72,7 +72,7 @@ def mesh(x: Axis, y: Axis) -> dict[str, Array]:
     return {x.name: x.values[None, :], y.name: y.values[:, None]}
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Map:
     """Quantities over two inputs. `values`: name -> array (ny, nx), row 0 lowest, NaN: no number."""
 

@@ -1,4 +1,4 @@
-"""Starts the page on this machine, for this machine only, and stops it without leaving anything behind."""
+"""Starts the page on this machine, for this machine only, and stops it leaving nothing behind."""
 
 import errno
 import json
@@ -31,7 +31,10 @@ def serve(*, port: int = 0, open_browser: bool = True, code: str = PAGE_CODE) ->
     signal.signal(signal.SIGTERM, _interrupt)
     listener = bound_socket(port)
     try:
-        with listener, tempfile.TemporaryDirectory(prefix="explorer_", ignore_cleanup_errors=True) as name:
+        with (
+            listener,
+            tempfile.TemporaryDirectory(prefix="explorer_", ignore_cleanup_errors=True) as name,
+        ):
             folder = Path(name)
             notebook = write_private_files(folder, code)
             use_private_files(folder)
@@ -50,7 +53,10 @@ def bound_socket(port: int) -> socket:
         return create_server((ADDRESS, port))
     except OSError as error:
         if error.errno == errno.EADDRINUSE:
-            reason = f"Port {port} is taken: choose another with --port, or leave --port out to get a free one."
+            reason = (
+                f"Port {port} is taken: choose another with --port, "
+                "or leave --port out to get a free one."
+            )
         elif error.errno == errno.EACCES:
             reason = f"Port {port} needs rights you do not have: choose one above 1023 with --port."
         else:
@@ -59,10 +65,10 @@ def bound_socket(port: int) -> socket:
 
 
 def write_private_files(folder: Path, code: str) -> Path:
-    """The notebook to serve, in a folder of its own, and the kernel that runs it; returns the notebook's path.
+    """Write the notebook to serve and the kernel that runs it; returns the notebook's path.
 
-    The kernel is this very interpreter, whatever others are registered on the machine, and keeps clear of the
-    user's own start-up files.
+    The notebook has a folder to itself. The kernel is this very interpreter, whatever others are
+    registered on the machine, and keeps clear of the user's own start-up files.
     """
     kernel = folder / "kernels" / "explorer" / "kernel.json"
     kernel.parent.mkdir(parents=True)
@@ -84,7 +90,7 @@ def _kernel(folder: Path) -> dict[str, object]:
 
 
 def _notebook(code: str) -> dict[str, object]:
-    cell = {
+    cell: dict[str, object] = {
         "cell_type": "code",
         "id": "page",
         "execution_count": None,

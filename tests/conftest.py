@@ -57,14 +57,18 @@ def free_port() -> int:
 
 
 def start(
-    *, code: str | None = None, port: int | None = None, python_path: str = "", folder: Path | None = None
+    *,
+    code: str | None = None,
+    port: int | None = None,
+    python_path: str = "",
+    folder: Path | None = None,
 ) -> Served:
     """Start the page, or a page that runs `code`, and wait until it says where it is."""
     port = port or free_port()
     command = [sys.executable, "-m", "explorer", "--no-browser", "--port", str(port)]
     if code is not None:
-        call = f"from explorer.serve import serve; serve(port={port}, open_browser=False, code={code!r})"
-        command = [sys.executable, "-c", call]
+        call = f"serve(port={port}, open_browser=False, code={code!r})"
+        command = [sys.executable, "-c", f"from explorer.serve import serve; {call}"]
     environment = os.environ | {"PYTHONPATH": python_path or str(REPOSITORY)}
     process = subprocess.Popen(
         command,
@@ -98,7 +102,9 @@ def _wait_for_address(served: Served) -> None:
 
     threading.Thread(target=listen, daemon=True).start()
     deadline = time.monotonic() + START_SECONDS
-    while served.url not in (line := heard.get(timeout=max(deadline - time.monotonic(), 0.1)) or ""):
+    while served.url not in (
+        line := heard.get(timeout=max(deadline - time.monotonic(), 0.1)) or ""
+    ):
         assert line, f"the server ended before it answered: {''.join(served.lines)}"
 
 
@@ -120,5 +126,5 @@ def start_server() -> Iterator[Callable[..., Served]]:
 
 @pytest.fixture(scope="session")
 def served(start_server: Callable[..., Served]) -> Served:
-    """The page as `python -m explorer --no-browser --port N` serves it, one server for the whole run."""
+    """The page as `python -m explorer --no-browser --port N` serves it, once for the whole run."""
     return start_server()

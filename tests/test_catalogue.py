@@ -41,7 +41,9 @@ def test_no_record_has_a_fault() -> None:
 @pytest.mark.parametrize("record", ALL, ids=each)
 def test_every_number_has_unit_source_and_place(record: published.Record) -> None:
     for value in record.every_value():
-        assert value.unit and value.where and value.shown
+        assert value.unit
+        assert value.where
+        assert value.shown
         assert value.checked in ("seen", "from memory")
         assert (
             value.source == published.COMMON
@@ -55,7 +57,8 @@ def test_every_input_of_a_record_is_an_input_with_an_origin(record: published.Re
     assert set(point) <= set(INPUTS)
     assert set(record.origins()) == set(point)
     for checked, text in record.origins().values():
-        assert checked in ("seen", "from memory") and text
+        assert checked in ("seen", "from memory")
+        assert text
 
 
 @pytest.mark.parametrize("record", ALL, ids=each)
@@ -66,7 +69,9 @@ def test_what_is_from_memory_is_called_doubtful(record: published.Record) -> Non
 
 def test_references_are_complete_and_never_seen_without_an_address() -> None:
     for key, reference in catalogue.references().items():
-        assert key == key.lower() and reference.authors and reference.journal
+        assert key == key.lower()
+        assert reference.authors
+        assert reference.journal
         if reference.seen != "nothing":
             assert reference.doi or reference.url or reference.read_at or reference.volume, key
 
@@ -174,7 +179,8 @@ HEAD = 'name = "x"\nclass = "y"\nsummary = "z"\n'
         (HEAD + "[values.lifetime]\n" + VALUE.replace('where = "abstract"\n', ""), "no where"),
         (HEAD + "[values.fast_linewidth]\n" + VALUE.replace('"ns"', '"meV"'), "needs a wavelength"),
         (HEAD + "values = 3\n", "x.toml"),
-        (HEAD + "[values.lifetime]\n" + VALUE + "[[line]]\nrole = 'a'\n", "share"),
+        (HEAD + "[values.lifetime]\n" + VALUE + "[[line]]\nrole = 'a'\n", "needs share"),
+        (HEAD + "[values.lifetime]\n" + VALUE + "[enhancement]\nvalue = 5\n", "no meaning"),
     ],
 )
 def test_a_malformed_record_is_refused_in_words(tmp_path: Path, text: str, complaint: str) -> None:
@@ -182,4 +188,5 @@ def test_a_malformed_record_is_refused_in_words(tmp_path: Path, text: str, compl
     file.write_text(text, encoding="utf-8")
     with pytest.raises(CatalogueError, match=complaint) as caught:
         catalogue.parse_record("emitters", file)
-    assert "x.toml" in str(caught.value) and "\n" not in str(caught.value)
+    assert "x.toml" in str(caught.value)
+    assert "\n" not in str(caught.value)

@@ -1,5 +1,6 @@
 """Starting and stopping the page's server, without a browser."""
 
+import http.client
 import json
 import os
 import signal
@@ -42,7 +43,9 @@ def test_taken_port_is_one_sentence_and_exit_code_2() -> None:
     with socket.create_server(("127.0.0.1", 0)) as taken:
         port = taken.getsockname()[1]
         command = [sys.executable, "-m", "explorer", "--no-browser", "--port", str(port)]
-        ended = subprocess.run(command, capture_output=True, text=True, timeout=60, cwd=REPOSITORY, check=False)
+        ended = subprocess.run(
+            command, capture_output=True, text=True, timeout=60, cwd=REPOSITORY, check=False
+        )
     assert ended.returncode == 2
     assert ended.stdout == ""
     assert ended.stderr.splitlines() == [
@@ -66,7 +69,9 @@ def wait_for_kernels(served, number: int, seconds: float = 30) -> list[psutil.Pr
     return found
 
 
-@pytest.mark.skipif(os.name == "nt", reason="these signals cannot be sent to one process on Windows")
+@pytest.mark.skipif(
+    os.name == "nt", reason="these signals cannot be sent to one process on Windows"
+)
 @pytest.mark.parametrize("number", [signal.SIGINT, signal.SIGTERM])
 def test_stops_without_a_word_and_without_kernels(start_server, number: int) -> None:
     served = start_server(code=SMALL_PAGE)
@@ -82,7 +87,9 @@ def test_stops_without_a_word_and_without_kernels(start_server, number: int) -> 
     assert not [path for path in opened if path.exists()], "private files are left behind"
 
 
-@pytest.mark.skipif(os.name == "nt", reason="these signals cannot be sent to one process on Windows")
+@pytest.mark.skipif(
+    os.name == "nt", reason="these signals cannot be sent to one process on Windows"
+)
 @pytest.mark.parametrize("wait", [0.0, 0.3, 1.0])
 def test_stops_cleanly_while_the_first_kernel_starts(start_server, wait: float) -> None:
     served = start_server(code=SMALL_PAGE)
@@ -111,7 +118,9 @@ def test_answers_no_foreign_name(small, host: str) -> None:
 
 def test_foreign_page_cannot_reach_a_kernel(small) -> None:
     _, _, text = answer(small.url)
-    config = text.split('id="jupyter-config-data" type="application/json">')[1].split("</script>")[0]
+    config = text.split('id="jupyter-config-data" type="application/json">')[1].split("</script>")[
+        0
+    ]
     kernel = json.loads(config)["kernelId"]
     socket_headers = {
         "Connection": "Upgrade",
@@ -120,28 +129,45 @@ def test_foreign_page_cannot_reach_a_kernel(small) -> None:
         "Sec-WebSocket-Key": "aGFyYm91ciBvZmZpY2UhIQ==",
         "Origin": "http://explorer.example",
     }
-    assert answer(f"{small.url}api/kernels/{kernel}/channels?session_id=x", **socket_headers)[0] == 403
-    assert answer(f"{small.url}api/kernels/{kernel}", Origin="http://explorer.example")[0] in (403, 404)
+    connection = http.client.HTTPConnection("127.0.0.1", small.port, timeout=30)
+    connection.request(
+        "GET", f"/api/kernels/{kernel}/channels?session_id=x", headers=socket_headers
+    )
+    assert connection.getresponse().status == 403
+    connection.close()
+    assert answer(f"{small.url}api/kernels/{kernel}", Origin="http://explorer.example")[0] in (
+        403,
+        404,
+    )
 
 
 def test_source_is_hidden_and_no_file_is_shared(small) -> None:
     status, _, text = answer(small.url)
     assert status == 200
     assert "import ipywidgets" not in text
-    for name in ("explorer.ipynb", "kernels/explorer/kernel.json", "../kernels/explorer/kernel.json", "x.png"):
+    for name in (
+        "explorer.ipynb",
+        "kernels/explorer/kernel.json",
+        "../kernels/explorer/kernel.json",
+        "x.png",
+    ):
         assert answer(f"{small.url}voila/files/{name}")[0] in (403, 404)
 
 
 def test_headers_allow_no_other_host(small) -> None:
     status, headers, text = answer(small.url)
     assert status == 200
-    policy = dict(part.strip().split(" ", 1) for part in headers["Content-Security-Policy"].split(";"))
+    policy = dict(
+        part.strip().split(" ", 1) for part in headers["Content-Security-Policy"].split(";")
+    )
     assert policy["default-src"] == "'self'"
     assert "unsafe" not in policy["script-src"]
     assert policy["frame-ancestors"] == "'none'"
     assert not [value for value in policy.values() if "http" in value or "*" in value]
     markup = text.split('<script id="jupyter-config-data"')[0]
-    assert not [part for part in ("src=\"http", "href=\"http", "url(http", "src=\"//") if part in markup]
+    assert not [
+        part for part in ('src="http', 'href="http', "url(http", 'src="//') if part in markup
+    ]
     assert headers["X-Content-Type-Options"] == "nosniff"
     assert headers["Referrer-Policy"] == "no-referrer"
 
@@ -156,10 +182,14 @@ def test_first_bytes_are_the_waiting_line(small) -> None:
 @pytest.mark.slow
 def test_works_from_an_installed_wheel_outside_a_clone(start_server, tmp_path: Path) -> None:
     pip = [sys.executable, "-m", "pip", "--disable-pip-version-check", "--quiet"]
-    subprocess.run([*pip, "wheel", "--no-deps", "-w", tmp_path, REPOSITORY], check=True, timeout=300)
+    subprocess.run(
+        [*pip, "wheel", "--no-deps", "-w", tmp_path, REPOSITORY], check=True, timeout=300
+    )
     (wheel,) = tmp_path.glob("*.whl")
     installed = tmp_path / "installed"
-    subprocess.run([*pip, "install", "--no-deps", "--target", installed, wheel], check=True, timeout=300)
+    subprocess.run(
+        [*pip, "install", "--no-deps", "--target", installed, wheel], check=True, timeout=300
+    )
     elsewhere = tmp_path / "elsewhere"
     elsewhere.mkdir()
     code = "import explorer, ipywidgets\n\nipywidgets.Label('from ' + explorer.__file__)"

@@ -139,7 +139,7 @@ def pack(picture: Picture) -> bytes:
             raise ValueError(f"{name} has the shape {np.shape(mask)}, values {values.shape}")
         if mask is not None and np.any(mask):
             arrays[name] = _planes(np.asarray(mask).astype("u1"))
-    return _message(header, arrays | {"values": values.astype("<f4")})
+    return _message(header, arrays | {"values": np.ascontiguousarray(values, "<f4")})
 
 
 def unpack(message: bytes) -> tuple[dict[str, Any], dict[str, np.ndarray]]:
@@ -190,15 +190,16 @@ def _joined(lines: tuple[Line, ...]) -> tuple[list[dict[str, Any]], np.ndarray, 
 
 
 def _message(header: dict[str, Any], arrays: dict[str, np.ndarray]) -> bytes:
-    parts, places, offset = [], {}, 0
+    parts: list[Any] = []  # arrays are joined as they are: a copy less of the values
+    places, offset = {}, 0
     for name, array in arrays.items():
-        data = array.tobytes()
         places[name] = [array.dtype.name, offset, array.size]
-        padding = -len(data) % 4
-        parts += [data, bytes(padding)]
-        offset += len(data) + padding
+        padding = -array.nbytes % 4
+        parts += [array, bytes(padding)]
+        offset += array.nbytes + padding
     # allow_nan: a NaN limit would only show as a parse error in the browser
-    words = json.dumps(header | {"arrays": places}, allow_nan=False).encode()
+    header["arrays"] = places
+    words = json.dumps(header, allow_nan=False, default=np.generic.item).encode()
     words += b" " * (-len(words) % 4)
     return b"".join([np.uint32(len(words)).astype("<u4").tobytes(), words, *parts])
 

@@ -2,7 +2,7 @@
 // canvas.py describes the message. Three layers lie on each other, so that a moved point redraws
 // the ring alone: the cells (stretched by the browser), the ink over them, and the point.
 
-const FONT = '"Noto Sans", "DejaVu Sans", "Segoe UI", system-ui, sans-serif';
+const FONT = '"Noto Sans", "Liberation Sans", Arial, "DejaVu Sans", sans-serif';
 const KINDS = { float32: Float32Array, uint32: Uint32Array, uint8: Uint8Array };
 const COLOURS = 1024;
 const MARK_REACH = 12; // px around a mark that count as the mark
@@ -10,6 +10,8 @@ const HIDDEN = "position:absolute;width:1px;height:1px;overflow:hidden;clip-path
 
 // Any of these can be set on the page as a CSS variable, --explorer-<name>; --explorer-scheme: dark
 // chooses the second set. `scale` is a list of colours from "less" to "more".
+// Where none is set, the page's own colours are taken.
+const PAGE_NAMES = { paper: "paper", ink: "ink", muted: "quiet", rule: "rule", red: "red", "amber-ink": "amber" };
 const THEMES = {
   light: {
     paper: "#fbfaf6", ink: "#12222b", muted: "#55626a", rule: "#d9d5c9", amber: "#c8842a",
@@ -204,13 +206,11 @@ function colourTable(anchors) {
 
 function readTheme(element) {
   const style = getComputedStyle(element);
-  const given = (name) => style.getPropertyValue(`--explorer-${name}`).trim();
-  const defaults = THEMES[given("scheme") === "dark" ? "dark" : "light"];
-  const theme = Object.fromEntries(Object.entries(defaults).map(([name, value]) => [name, given(name) || value]));
-  theme.key = Object.values(theme).join();
-  theme.table = colourTable(theme.scale.split(","));
-  theme.categories = theme.categories.split(",").map((colour) => colour.trim());
-  return theme;
+  const given = (name) => style.getPropertyValue(`--${name}`).trim();
+  const defaults = THEMES[given("explorer-scheme") === "dark" ? "dark" : "light"];
+  const hex = (text) => (/^#[0-9a-f]{3,8}\b/i.test(text) ? text : "");
+  return Object.fromEntries(Object.entries(defaults).map(([name, value]) =>
+    [name, hex(given(`explorer-${name}`)) || hex(given(PAGE_NAMES[name] ?? "")) || value]));
 }
 
 const css = (word) => `rgb(${word & 255},${word >> 8 & 255},${word >> 16 & 255})`;
@@ -293,8 +293,9 @@ class Places {
     return box.x >= b.x && box.y >= b.y && box.x + box.w <= b.x + b.w && box.y + box.h <= b.y + b.h;
   }
   free(box) {
+    const air = 3;
     return this.inside(box) && !this.taken.some((t) =>
-      box.x < t.x + t.w && t.x < box.x + box.w && box.y < t.y + t.h && t.y < box.y + box.h);
+      box.x < t.x + t.w + air && t.x < box.x + box.w + air && box.y < t.y + t.h + air && t.y < box.y + box.h + air);
   }
   // the first free candidate; `always` takes the first one inside if none is free
   choose(candidates, always = false) {
@@ -380,7 +381,7 @@ class MapView {
     for (const name of ["pointerup", "pointercancel", "lostpointercapture"]) this.on(surface, name, () => this.release());
     this.on(surface, "pointerleave", () => this.hideReadout());
     this.on(surface, "keydown", (event) => this.key(event));
-    this.on(surface, "focus", () => { if (surface.matches(":focus-visible")) this.showFocus(); });
+    this.on(surface, "focus", () => { if (!this.pressing && surface.matches(":focus-visible")) this.showFocus(); });
     this.on(surface, "blur", () => { surface.style.outline = "none"; this.hideReadout(); });
     this.observe();
   }
@@ -391,10 +392,19 @@ class MapView {
     const theme = new MutationObserver(() => this.changeTheme());
     const options = { attributes: true, attributeFilter: ["class", "style", "data-theme", "data-jp-theme-light"] };
     for (const element of [document.documentElement, document.body]) theme.observe(element, options);
+    theme.observe(document.head, { childList: true }); // style sheets that come late
     const dark = matchMedia("(prefers-color-scheme: dark)");
     this.on(dark, "change", () => this.changeTheme());
-    this.on(window, "resize", () => { if (this.ratio !== devicePixelRatio) this.redraw(); }); // zoom
-    this.undo.push(() => { size.disconnect(); theme.disconnect(); });
+    this.undo.push(() => { size.disconnect(); theme.disconnect(); this.unwatchRatio(); });
+    this.watchRatio();
+  }
+
+  // A query of the present pixel ratio tells of its end (zoom, another screen) once
+  watchRatio() {
+    const query = matchMedia(`(resolution: ${devicePixelRatio}dppx)`);
+    const changed = () => { this.watchRatio(); this.redraw(); };
+    query.addEventListener("change", changed, { once: true });
+    this.unwatchRatio = () => query.removeEventListener("change", changed);
   }
 
   destroy() {
@@ -404,20 +414,22 @@ class MapView {
     this.host.remove();
   }
 
+  // True where the colours are new
   readTheme() {
-    this.theme = readTheme(this.host);
+    const theme = readTheme(this.host);
+    const key = Object.values(theme).join();
+    if (key === this.theme?.key) return false;
+    const categories = theme.categories.split(",").map((colour) => colour.trim());
+    this.theme = { ...theme, key, categories, table: colourTable(theme.scale.split(",")) };
     const { style } = this.readout;
-    style.background = this.theme.paper;
-    style.color = this.theme.ink;
-    style.border = `1px solid ${this.theme.ink}`;
-    this.clip.style.background = this.theme.paper; // seen where there is no number
+    style.background = theme.paper;
+    style.color = theme.ink;
+    style.border = `1px solid ${theme.ink}`;
+    this.clip.style.background = theme.paper; // seen where there is no number
+    return true;
   }
 
-  changeTheme() {
-    const before = this.theme.key;
-    this.readTheme();
-    if (this.theme.key !== before) this.redraw();
-  }
+  changeTheme() { if (this.readTheme()) this.redraw(); }
 
   describe() { this.image.setAttribute("aria-label", this.model.get("description")); }
 
@@ -440,7 +452,8 @@ class MapView {
 
   resize() {
     const { clientWidth, clientHeight } = this.host;
-    if (clientWidth !== this.width || clientHeight !== this.height) this.redraw();
+    const recoloured = this.readTheme(); // the page's style may arrive after the canvas
+    if (recoloured || clientWidth !== this.width || clientHeight !== this.height) this.redraw();
   }
 
   redraw() {
@@ -912,7 +925,7 @@ class MapView {
     for (const [x, y] of marks.map((mark) => [this.toX(mark.x), this.toY(mark.y)])) places.take({ x: x - 8, y: y - 8, w: 16, h: 16 });
     if (this.shows("outline")) {
       for (const label of picture.labels) {
-        const candidates = this.boxesAround(label.text, this.toX(label.x), this.toY(label.y), 10, 600);
+        const candidates = this.boxesAround(label.text, this.toX(label.x), this.toY(label.y), 12, 600);
         this.tag(pen, label.text, places.choose(candidates, true), { colour: theme.red, weight: 600 });
       }
     }
@@ -950,7 +963,7 @@ class MapView {
       const [mx, my] = [this.toX(x), this.toY(y)];
       return Math.hypot(Math.max(box.x - mx, 0, mx - box.x - box.w), Math.max(box.y - my, 0, my - box.y - box.h));
     };
-    return this.boxesAround(mark.text, this.toX(mark.x), this.toY(mark.y), 10)
+    return this.boxesAround(mark.text, this.toX(mark.x), this.toY(mark.y), 12)
       .filter((box) => marks.every((other) => other === mark || distance(box, other) > distance(box, mark)));
   }
 
@@ -981,7 +994,7 @@ class MapView {
   // Text on a small piece of paper, legible on every colour
   tag(pen, text, box, options = {}) {
     if (!box || !text) return;
-    pen.fillStyle = faded(this.theme.paper, 0.86);
+    pen.fillStyle = faded(this.theme.paper, 0.93);
     pen.beginPath();
     pen.roundRect(box.x, box.y, box.w, box.h, 4);
     pen.fill();
@@ -1094,7 +1107,9 @@ class MapView {
   press(event) {
     if (event.button !== 0 || !this.plot) return;
     event.preventDefault();
+    this.pressing = true; // the focus ring is for the keyboard
     this.surface.focus({ preventScroll: true });
+    this.pressing = false;
     this.surface.setPointerCapture(event.pointerId);
     const [x, y] = this.placeOf(event);
     const [px, py] = this.ringPlace();
@@ -1175,7 +1190,7 @@ class MapView {
     if (mark) lines.unshift(mark.tooltip || mark.text);
     readout.replaceChildren();
     lines.forEach((text, number) => {
-      make("div", `font-size:${size}px;font-weight:${number === 0 ? 600 : 400};white-space:normal;max-width:26em`, readout).textContent = text;
+      make("div", `font-size:${size}px;font-weight:${number === 0 ? 600 : 400};white-space:normal;max-width:20em`, readout).textContent = text;
     });
     const [w, h] = [readout.offsetWidth, readout.offsetHeight];
     const gap = ofPoint ? 22 : 16;

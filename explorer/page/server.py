@@ -23,11 +23,18 @@ from voila.tornado.handler import TornadoVoilaHandler
 
 ADDRESS = "127.0.0.1"
 TEMPLATE = "explorer"
-LARGEST_MESSAGE = 32 * 2**20  # bytes; a longer web-socket message would close the page's connection without a word
-IDLE_SECONDS = 600  # an unconnected kernel lives this long: long enough for a network that comes and goes
+LARGEST_MESSAGE = (
+    32 * 2**20
+)  # bytes; a longer web-socket message would close the page's connection without a word
+IDLE_SECONDS = (
+    600  # an unconnected kernel lives this long: long enough for a network that comes and goes
+)
 CULL_SECONDS = 60
-REFILL_SECONDS = 3  # the next kernel is warmed only when the page that took the last one has been drawn
-WIDGETS = [  # the only front-end extensions the page needs; others that happen to be installed stay out
+REFILL_SECONDS = (
+    3  # the next kernel is warmed only when the page that took the last one has been drawn
+)
+# The only front-end extensions the page needs; others that happen to be installed stay out.
+WIDGETS = [
     "@jupyter-widgets/jupyterlab-manager",
     "@voila-dashboards/widgets-manager8",
     "anywidget",
@@ -76,9 +83,9 @@ class PageServer(Voila):
     def stop(self):
         """End every kernel at once.
 
-        None of them holds anything worth a slow goodbye, and one that is just starting would answer a polite request
-        with a traceback. They are known by the private folder in their command line: a browser that was opened from
-        here is a child of this process too.
+        None of them holds anything worth a slow goodbye, and one that is just starting would
+        answer a polite request with a traceback. They are known by the private folder in their
+        command line: a browser that was opened from here is a child of this process too.
         """
         loop = self.ioloop.asyncio_loop
         tasks = asyncio.all_tasks(loop)
@@ -86,7 +93,9 @@ class PageServer(Voila):
             task.cancel()
         loop.run_until_complete(asyncio.gather(*tasks, return_exceptions=True))
         kernels = [child for child in psutil.Process().children() if self._is_kernel(child)]
-        ended = [process for kernel in kernels for process in (*kernel.children(recursive=True), kernel)]
+        ended = [
+            process for kernel in kernels for process in (*kernel.children(recursive=True), kernel)
+        ]
         for process in ended:
             with contextlib.suppress(psutil.NoSuchProcess):
                 process.kill()
@@ -113,16 +122,19 @@ def _with_cookie(entry: tuple) -> tuple:
 
 
 def _for_this_machine_only(application) -> RuleRouter:
-    """Answer only requests that name this machine, so that no foreign name can be pointed at the page."""
+    """Answer only requests that name this machine: no foreign name can be pointed at the page."""
     return RuleRouter([Rule(HostMatches(r"(127\.0\.0\.1|localhost)"), application)])
 
 
-def run(
-    *, listener: socket, folder: Path, notebook: Path, announce: Callable[[], None]
-) -> None:
-    """Serve `notebook` on the bound `listener`; keep private files in `folder`; call `announce` once it answers."""
+def run(*, listener: socket, folder: Path, notebook: Path, announce: Callable[[], None]) -> None:
+    """Serve `notebook` on the bound `listener` until asked to stop.
+
+    Private files go into `folder`; `announce` is called once the page answers.
+    """
     for name in ("tornado.access", "tornado.general"):
-        logging.getLogger(name).setLevel(logging.ERROR)  # a refused request is no news in the terminal
+        logging.getLogger(name).setLevel(
+            logging.ERROR
+        )  # a refused request is no news in the terminal
     port = listener.getsockname()[1]
     config = page_config(port=port, folder=folder, notebook=notebook)
     server = PageServer(listener=listener, announce=announce, config=config)
@@ -170,13 +182,15 @@ def page_config(*, port: int, folder: Path, notebook: Path) -> Config:
                 "cull_interval": CULL_SECONDS,
                 "cull_connected": False,
             },
-            "VoilaExecutor": {"cell_error_instruction": "The terminal that started the page says why."},
+            "VoilaExecutor": {
+                "cell_error_instruction": "The terminal that started the page says why."
+            },
         }
     )
 
 
 def _headers(nonce: str) -> dict[str, str]:
-    """Headers of the page: scripts, data and pictures come from this server or from the page itself."""
+    """Headers of the page: everything comes from this server or from the page itself."""
     policy = {
         "default-src": "'self'",
         # anywidget imports its modules from blobs; inline handlers in user text never run.

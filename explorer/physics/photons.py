@@ -239,19 +239,19 @@ def photons_after(*, decay_rates: Any, transmitted: Any, pair_transmitted: Any) 
     return after
 
 
-@quantity("1/s", label="Photons per second at the lens", symbol="N0", group="photons", log=True)
+@quantity("1/s", label="Photons/s at the lens", symbol="N0", group="photons", log=True)
 def rate_at_lens(*, photons_after: Any) -> Any:
     """Photons per second inside the numerical aperture, before filter and optics [1/s]."""
     return photons_after(3)
 
 
-@quantity("1/s", label="Photons per second in the fibre", symbol="NF", group="photons", log=True)
+@quantity("1/s", label="Photons/s in the fibre", symbol="NF", group="photons", log=True)
 def rate_in_fibre(*, photons_after: Any) -> Any:
     """Photons per second in the fibre [1/s]; in free space, behind the optics."""
     return photons_after(6)
 
 
-@quantity("1/s", label="Photons per second detected", symbol="N", group="photons", log=True)
+@quantity("1/s", label="Photons/s detected", symbol="N", group="photons", log=True)
 def rate_detected(*, photons_after: Any) -> Any:
     """Photons per second counted by the detector [1/s], without background."""
     return photons_after(7)

@@ -53,18 +53,21 @@ def g2_zero(
     photons = in_x * gone * detected_per_decay + in_b * (
         gone_b * detected_per_pair + both * detected_per_decay
     )
-    pairs = 2 * in_b * both * detected_per_decay * detected_per_pair
-    return blinking(pairs, photons, background_per_pulse, bright_share)
+    some = np.where(photons > 0, photons, 1.0)
+    pure = 2 * in_b * both * (detected_per_decay / some) * (detected_per_pair / some)
+    return blinking(pure, photons, background_per_pulse, bright_share)
 
 
-def blinking(pairs: Any, signal: Any, background: Any, on: Any) -> Any:
+def blinking(pure: Any, signal: Any, background: Any, on: Any) -> Any:
     """g2 of a source that is on for a share of the time, slowly against the delays compared.
 
-    pairs: coincidences of the signal alone; signal, background: photons per pulse or per second.
+    pure: g2 of the signal alone; signal, background: photons per pulse or per second. Only their
+    shares of the whole are squared: the square of a faint signal would be lost as zero.
     """
-    dark = (1 - on) * background**2
-    same = on * (pairs + background * (2 * signal + background)) + dark
-    return same / (on * (signal + background) ** 2 + dark)
+    whole = np.where(signal + background > 0, signal + background, 1.0)
+    clean, stray = signal / whole, background / whole
+    dark = (1 - on) * stray**2
+    return (on * (pure * clean**2 + stray * (2 * clean + stray)) + dark) / (on + dark)
 
 
 @variant("g2_zero", pumping="continuous")
@@ -86,7 +89,7 @@ def continuous_g2(
     With a share of the time off, over delays short against the blinking.
     """
     both = detected_per_decay + saturation * detected_per_pair
-    pure = steady_weight * detected_per_decay * detected_per_pair / both**2
+    some = np.where(both > 0, both, 1.0)
+    pure = steady_weight * (detected_per_decay / some) * (detected_per_pair / some)
     signal = decay_rates[0] / bright_share * both
-    pure = np.where(both > 0, pure, 0.0)
-    return blinking(pure * signal**2, signal, background_rate, bright_share)
+    return blinking(pure, signal, background_rate, bright_share)

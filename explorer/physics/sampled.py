@@ -78,7 +78,8 @@ def sampled_window(
     def total(rows: Floats) -> Floats:
         centre, kappa, lower, upper = rows.T[:, :, np.newaxis]
         nodes = (omega[:-1], omega[1:], density[:-1], density[1:])
-        return _piece_overlaps(*_clip(*nodes, lower, upper), centre, kappa / 2).sum(axis=1)
+        exact = _piece_overlaps(*_clip(*nodes, lower, upper), centre, kappa / 2)
+        return np.asarray(exact.sum(axis=1))
 
     rows = max(1, PIECES_IN_MEMORY // omega.size)
     return _each_distinct(total, (centre, kappa, lower, upper), rows)
@@ -129,7 +130,8 @@ class SampledLine:
     The pieces are halved into blocks again and again. A block at a distance |ω−ωc−iκ/2| of three
     radii or more acts through 16 Chebyshev nodes with weights made once from the exact density: the
     Lorentzian is analytic there and the error falls as (3+√8)^-n. Near pieces are exact. So the
-    error is below 1e-11 relative for every κ and centre, and nothing is tabulated over them.
+    error is below 1e-10 relative for every κ and centre (1e-15 usual, 2e-11 the worst seen, for a
+    single spike), and nothing is tabulated over them.
     """
 
     omega: Floats
@@ -150,13 +152,13 @@ class SampledLine:
         return hash(self._key)
 
     def overlap(self, centre: ArrayLike, kappa: ArrayLike) -> Floats:
-        """As `sampled_overlap`, within 1e-11 relative."""
+        """As `sampled_overlap`, within 1e-10 relative."""
         return self.window(centre, kappa, -np.inf, np.inf)
 
     def window(
         self, centre: ArrayLike, kappa: ArrayLike, lower: ArrayLike, upper: ArrayLike
     ) -> Floats:
-        """As `sampled_window`, within 1e-11 relative."""
+        """As `sampled_window`, within 1e-10 relative."""
         return _each_distinct(self._descend, (centre, kappa, lower, upper), TARGETS)
 
     def share(self, lower: ArrayLike, upper: ArrayLike) -> Floats:
@@ -235,15 +237,14 @@ class SampledLine:
         for part in _parts(target.size, PIECES_IN_MEMORY // LEAF):
             pieces = leaf[part, np.newaxis] * LEAF + np.arange(LEAF)
             centre, kappa, lower, upper = rows[target[part]].T[:, :, np.newaxis]
-            nodes = (values[pieces] for values in self._pieces)
+            start, stop, below, above = (values[pieces] for values in self._pieces)
+            nodes = (start, stop, below, above)
             exact = _piece_overlaps(*_clip(*nodes, lower, upper), centre, kappa / 2).sum(axis=1)
             total += np.bincount(target[part], exact, len(rows))
         return total
 
 
-def _condense(
-    start: Floats, stop: Floats, where: Floats, mass: Floats, blocks: int
-) -> _Blocks:
+def _condense(start: Floats, stop: Floats, where: Floats, mass: Floats, blocks: int) -> _Blocks:
     """Weights at the Chebyshev nodes of each block that integrate polynomials like the density."""
     left, right = start.reshape(blocks, -1)[:, 0], stop.reshape(blocks, -1)[:, -1]
     middle, radius = (left + right) / 2, (right - left) / 2

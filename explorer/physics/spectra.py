@@ -134,18 +134,24 @@ def overlap_of_samples(*, measured: Any, detuning: Any, resonator_linewidth: Any
 
 @part
 def filter_edges(*, filter_width: Any, filter_centre: Any, resonance_wavelength: Any) -> Any:
-    """Lower and upper edge of the filter minus the resonance [rad/s]."""
-    longest = filter_centre + filter_width / 2
-    shortest = filter_centre - filter_width / 2
-    lower = CIRCLE * (resonance_wavelength / longest - 1) / resonance_wavelength
+    """Lower and upper edge of the filter minus the resonance [rad/s].
+
+    From the distances in wavelength, which keep their digits where the filter is far narrower than
+    the rounding of a wavelength.
+    """
+    offset, half = resonance_wavelength - filter_centre, filter_width / 2
+    longest, shortest = filter_centre + half, filter_centre - half
+    closed = np.isfinite(longest)
+    safe = np.where(closed, longest, 1.0)
+    lower = CIRCLE * np.where(closed, (offset - half) / safe, -1.0) / resonance_wavelength
     open_above = shortest <= 0
     safe = np.where(open_above, 1.0, shortest)
-    upper = CIRCLE * (resonance_wavelength - safe) / (resonance_wavelength * safe)
+    upper = CIRCLE * (offset + half) / (resonance_wavelength * safe)
     return lower, np.where(open_above, np.inf, upper)
 
 
 @quantity("1", label="Filter share", symbol="ηf", group="collection")
-def filter_share(*, mode_light_window: Any) -> Any:
+def filter_share(*, mode_light_window: Any, filter_width: Any) -> Any:
     r"""Share of the mode's light that passes the filter.
 
     .. math:: \eta_f = \int_{\rm filter} S\,d\omega, \quad
@@ -154,7 +160,7 @@ def filter_share(*, mode_light_window: Any) -> Any:
     One line: the exact outgoing spectrum, averaged with the share of the mode over slow wandering.
     Several lines and measured spectra: the product of line and resonance, right for R << γ.
     """
-    return mode_light_window
+    return np.where(np.isinf(filter_width), 1.0, mode_light_window)
 
 
 @variant("filter_share", filter_width=np.inf)
@@ -208,13 +214,13 @@ def still_light_window(
 
 
 @quantity("1", label="Filter share of other light", symbol="ηfo", group="collection")
-def other_filter_share(*, own_light_window: Any) -> Any:
+def other_filter_share(*, own_light_window: Any, filter_width: Any) -> Any:
     r"""Share of the light past the mode that passes the filter: the emitter's own spectrum.
 
     A Lorentzian of width :math:`\gamma^*+1/\tau` broadened by the slow wandering, or the lines or
     the measured spectrum as they are. [1]
     """
-    return own_light_window
+    return np.where(np.isinf(filter_width), 1.0, own_light_window)
 
 
 @variant("other_filter_share", filter_width=np.inf)

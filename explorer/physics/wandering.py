@@ -62,9 +62,7 @@ def voigt_deficit(*, detuning: ArrayLike, sigma: ArrayLike, width: ArrayLike) ->
     if wide.all():
         return smooth
     spread = np.where(wide, 0.0, sigma)  # no special function where its value is not used
-    return np.where(
-        wide, smooth, 1 - voigt_mean(detuning=detuning, sigma=spread, width=width)
-    )
+    return np.where(wide, smooth, 1 - voigt_mean(detuning=detuning, sigma=spread, width=width))
 
 
 def _negligible(detuning: Floats, sigma: Floats, width: Floats) -> NDArray[np.bool_]:
@@ -165,8 +163,12 @@ def average_over_shifts(
     """
     sigma = np.asarray(sigma, np.float64)
     spread = np.where(sigma > 0, sigma, 1.0)
+    pairs = zip(centres, widths, strict=True)
     clustering = _Clustering(
-        tuple((c / spread, w / spread) for c, w in zip(centres, widths, strict=True))
+        tuple(
+            (np.asarray(c, np.float64) / spread, np.asarray(w, np.float64) / spread)
+            for c, w in pairs
+        )
     )
     ends = clustering.position(np.asarray(REACH)) - clustering.position(np.asarray(-REACH))
     count = int(np.ceil(np.max(ends / clustering.spacing()))) + 1
@@ -184,9 +186,12 @@ def average_over_samples(
     """Mean of outcome(shift) over shifts ~ N(0, sigma²) for outcomes with a kink at every sample.
 
     As `average_over_shifts`. step: the scale of the kinks, the larger of the sample spacing and half
-    the resonator's width; centre, feature: the shift at which the spectrum's main peak meets the
-    resonance, and its half width, needed where that is below about sigma/8 [rad/s]. 64 to 768 nodes.
-    ERRORS
+    the resonator's width (0: the most nodes); centre, feature: the shift at which the main peak
+    meets the resonance, and its half width, needed where that is below about sigma/8 [rad/s].
+    64 to 768 nodes, three a step where that suffices. The nodes do not follow the kinks, whose
+    errors average out. Seen: 1e-9 for a resonator wider than two steps (1e-6 at sigma = 300 steps);
+    for a narrower one 1e-5 on a smooth spectrum, 4e-5 with 1 % of noise up to sigma = 10 steps and
+    3e-3 at 300, where each node meets another sample: about a third of the noise itself.
     """
     sigma = np.asarray(sigma, np.float64)
     spread = np.where(sigma > 0, sigma, 1.0)
@@ -212,8 +217,8 @@ def _mean(outcome: Outcome, sigma: Floats, clustering: _Clustering, count: int) 
         shifts = np.stack([np.broadcast_to(shift, padded) for shift, _ in block])
         weights = np.stack([np.broadcast_to(weight, padded) for _, weight in block])
         weight_total += weights.sum(axis=0)
-        for total, value in zip(totals, _as_tuple(outcome(sigma * shifts))[0], strict=True):
-            total += (weights * value).sum(axis=0)
+        values, _ = _as_tuple(outcome(sigma * shifts))
+        totals = [t + (weights * v).sum(axis=0) for t, v in zip(totals, values, strict=True)]
     means = tuple(
         np.where(sigma > 0, total / weight_total, value)
         for total, value in zip(totals, at_rest, strict=True)

@@ -1,12 +1,13 @@
 r"""Shares of light inside a frequency window under slow wandering of the line.
 
-Outgoing light: with p1, p2 the poles of the spectrum in the upper half plane and e = kappa detuning/(kappa + Gamma), the share in
-a window is the real part of
+Outgoing light: with p1, p2 the poles of the spectrum in the upper half plane and e = kappa
+detuning/(kappa + Gamma), the share in a window is the real part of
 
-.. math:: G(\delta)=\frac{i}{\pi}\,\frac{(p_2-e)\,\ell_1-(p_1-e)\,\ell_2}{p_1-p_2},\qquad \ell_j=\ln\frac{u-p_j}{l-p_j},
+.. math:: G(\delta)=\frac{i}{\pi}\,\frac{(p_2-e)\,\ell_1-(p_1-e)\,\ell_2}{p_1-p_2},
+          \qquad \ell_j=\ln\frac{u-p_j}{l-p_j},
 
-analytic for Im delta > 0 (partial fractions; the norm cancels every other denominator). Its branch points are
-delta = w - i Gamma/2 - i g^2/(kappa/2 + iw) with w an edge.
+analytic for Im delta > 0 (partial fractions; the norm cancels every other denominator). Its
+branch points are delta = w - i Gamma/2 - i g^2/(kappa/2 + iw) with w an edge.
 """
 
 from dataclasses import dataclass
@@ -14,18 +15,20 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
-from explorer.physics.window_outgoing import Line, finite_edges, outgoing_density, outgoing_window
-from explorer.physics.window_quadrature import (
+from .window_outgoing import finite_edges, outgoing_density, outgoing_window
+from .window_poles import Line
+from .window_profile import (
     Cells,
     Complexes,
     Floats,
     Gaussian,
     flattened,
     log_ratio,
-    wandering_mean,
 )
+from .window_quadrature import wandering_mean
 
-_NOWHERE = 1e40  # rad/s
+#: A depth below the real axis that no cell feels [rad/s].
+_NOWHERE = 1e40
 
 
 def wandering_window(
@@ -41,9 +44,10 @@ def wandering_window(
 ) -> Floats:
     """Share of the light through the resonator inside [lower, upper], averaged over slow wandering.
 
-    <beta S_window>/<beta> over detunings of mean `detuning` and standard deviation `sigma` >= 0 [rad/s]; beta is the share of
-    decays through the resonator against a rate `gamma` <= coherence of every other decay [rad/s]. The rest and the shapes as
-    for `outgoing_window`, which sigma = 0 gives. Right to 1e-9 while an edge, or the mean, is not over 1e6 sigma away.
+    <beta S_window>/<beta> over detunings of mean `detuning` and standard deviation `sigma` >= 0
+    [rad/s]; beta is the share of decays through the resonator against a rate `gamma` <= coherence
+    of every other decay [rad/s]. The rest and the shapes as for `outgoing_window`, which sigma =
+    0 gives. Right to 1e-9 while an edge, or the mean, is not over 1e6 sigma away.
     """
     arrays, shape = flattened(lower, upper, kappa, gamma, coherence, g_squared, detuning, sigma)
     low, high, *_ = arrays
@@ -69,7 +73,10 @@ def wandering_density(
     detuning: ArrayLike,
     sigma: ArrayLike,
 ) -> Floats:
-    """Outgoing spectrum averaged over slow wandering [s/rad], its integral 1; arguments as for `wandering_window`."""
+    """Outgoing spectrum averaged over slow wandering [s/rad], its integral 1.
+
+    frequency [rad/s] from the resonance; the rest as for `wandering_window`.
+    """
     arrays, shape = flattened(frequency, kappa, gamma, coherence, g_squared, detuning, sigma)
     line, gaussian = _line_and_weight(*arrays[1:])
     density = outgoing_density(frequency=arrays[0], **line._asdict())
@@ -88,7 +95,10 @@ def _line_and_weight(
     detuning: Floats,
     sigma: Floats,
 ) -> tuple[Line, Gaussian]:
-    """The line, and beta(delta) as a Lorentzian: 1/W^2 = gamma kappa/[(R0 kappa + gamma R0 + gamma kappa)(kappa + Gamma)^2]."""
+    """The line, and beta(delta) as a Lorentzian in the detuning.
+
+    Its width is (kappa + Gamma) sqrt((R0 kappa + gamma R0 + gamma kappa)/(gamma kappa)).
+    """
     total = kappa + coherence
     exchange = 4 * g_squared / total
     slow = exchange * (kappa + gamma) + gamma * kappa
@@ -109,6 +119,32 @@ def _meeting(frequency: Floats, line: Line) -> Complexes:
     )
 
 
+def _complex_poles(line: Line, detuning: Complexes) -> tuple[Complexes, Complexes, Complexes]:
+    """Poles that start from mode and emitter, and half their distance; NaN where they coincide."""
+    distance = detuning + 0.5j * (line.coherence - line.kappa)
+    gap = np.sqrt((distance / 2) ** 2 + line.g_squared)
+    gap = np.where((np.conj(distance) * gap).real < 0, -gap, gap)
+    gap[gap == 0] = np.nan  # such a cell goes to the real axis
+    push = line.g_squared / (distance / 2 + gap)
+    mode, emitter = 0.5j * line.kappa - push, detuning + 0.5j * line.coherence + push
+    return np.asarray(mode), np.asarray(emitter), np.asarray(gap)
+
+
+def _less_the_mean(
+    line: Line, detuning: Complexes, mode: Complexes, emitter: Complexes
+) -> tuple[Complexes, Complexes]:
+    """Both poles minus e: the product is known as a sum, so the smaller one keeps its digits."""
+    total, loss = line.kappa + line.coherence, line.kappa * line.coherence
+    of_mode, of_emitter = (
+        mode - line.kappa / total * detuning,
+        emitter - line.kappa / total * detuning,
+    )
+    product = -(loss / 4 + line.g_squared + loss * (detuning / total) ** 2)
+    emitter_larger = np.abs(of_emitter) >= np.abs(of_mode)
+    smaller = product / np.where(emitter_larger, of_emitter, of_mode)
+    return np.where(emitter_larger, smaller, of_mode), np.where(emitter_larger, of_emitter, smaller)
+
+
 @dataclass(frozen=True)
 class _OutgoingWindow:
     low: Floats
@@ -127,38 +163,18 @@ class _OutgoingWindow:
         )
 
     def upper(self, cells: Cells, detuning: Complexes) -> tuple[Complexes, Floats]:
-        kappa, coherence, g_squared, _ = (x[cells, None] for x in self.line)
+        line = Line(*(x[cells, None] for x in self.line))
         low, high = self.low[cells, None], self.high[cells, None]
-        total = kappa + coherence
-        distance = detuning + 0.5j * (coherence - kappa)  # bare emitter minus bare mode
-        gap = np.sqrt((distance / 2) ** 2 + g_squared)
-        gap = np.where((np.conj(distance) * gap).real < 0, -gap, gap)
-        push = g_squared / (distance / 2 + gap)
-        mode, emitter = 0.5j * kappa - push, detuning + 0.5j * coherence + push
-        logarithms = (
-            log_ratio(high - low, low - mode, high - mode),
-            log_ratio(high - low, low - emitter, high - emitter),
-        )
-        shifted = kappa * detuning / total
-        direct = emitter - shifted
-        # their product is known without a difference, so the smaller one keeps its digits
-        product = -(kappa * coherence / 4 + g_squared + kappa * coherence * (detuning / total) ** 2)
-        other = mode - shifted
-        emitter_larger = np.abs(direct) >= np.abs(other)
-        larger = np.where(emitter_larger, direct, other)
-        smaller = product / larger
-        direct, other = (
-            np.where(emitter_larger, larger, smaller),
-            np.where(emitter_larger, smaller, larger),
-        )
-        terms = direct * logarithms[0], -other * logarithms[1]
+        mode, emitter, gap = _complex_poles(line, detuning)
+        of_mode, of_emitter = _less_the_mean(line, detuning, mode, emitter)
+        first = of_emitter * log_ratio(high - low, low - mode, high - mode)
+        second = of_mode * log_ratio(high - low, low - emitter, high - emitter)
         factor = -0.5j / np.pi / gap
-        return factor * (terms[0] + terms[1]), np.abs(factor) * (
-            np.abs(terms[0]) + np.abs(terms[1])
-        )
+        size = np.abs(factor) * (np.abs(first) + np.abs(second))
+        return np.asarray(factor * (first - second)), np.asarray(size)
 
     def singularities(self) -> Complexes:
-        # where the two poles coincide below the axis, the window may hold one of them and not the other
+        # where the poles coincide below the axis, the window may hold one and not the other
         kappa, coherence, g_squared, _ = self.line
         coupling = np.sqrt(g_squared)
         depth = np.where(4 * coupling > kappa, 2 * coupling + (coherence - kappa) / 2, _NOWHERE)
@@ -187,7 +203,7 @@ class _OutgoingDensity:
         total = kappa + coherence
         poles = (frequency - 0.5j * kappa) * (frequency - detuning - 0.5j * coherence) - g_squared
         value = 1j / np.pi * (coherence * detuning / total + 0.5j * total - frequency) / poles
-        return value, np.abs(value)
+        return np.asarray(value), np.asarray(np.abs(value))
 
     def singularities(self) -> Complexes:
         return _meeting(self.frequency, self.line)[None]

@@ -1,6 +1,7 @@
-r"""Share of a line inside a frequency window: a Lorentzian, a Gaussian, or the one convolved with the other.
+r"""Share of a line inside a frequency window: Lorentzian, Gaussian, or their convolution.
 
-The Lorentzian's share is the real part of G = -i ln((u-p)/(l-p))/pi, p = delta + i width/2, analytic for Im delta > 0.
+The Lorentzian's share is the real part of G = -i ln((u-p)/(l-p))/pi, p = delta + i width/2,
+analytic for Im delta > 0.
 """
 
 from dataclasses import dataclass
@@ -9,15 +10,15 @@ import numpy as np
 from numpy.typing import ArrayLike
 from scipy.special import erfc, voigt_profile
 
-from explorer.physics.window_quadrature import (
+from .window_profile import (
     Cells,
     Complexes,
     Floats,
     Gaussian,
     flattened,
     log_ratio,
-    wandering_mean,
 )
+from .window_quadrature import wandering_mean
 
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(12)
 
@@ -25,10 +26,12 @@ _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(12)
 def line_window(
     *, lower: ArrayLike, upper: ArrayLike, centre: ArrayLike, width: ArrayLike, sigma: ArrayLike
 ) -> Floats:
-    """Share inside [lower, upper] of a Lorentzian of FWHM `width` convolved with a Gaussian of standard deviation `sigma`.
+    """Share of a Lorentzian convolved with a Gaussian inside [lower, upper].
 
-    All [rad/s], broadcastable; edges may be infinite, width and sigma 0. Both 0: 1 inside, 1/2 on an edge, 0 outside.
-    Right to 1e-9 relative, taking edge minus centre as exact.
+    width: full width at half maximum of the Lorentzian; sigma: standard deviation of the Gaussian.
+
+    All [rad/s], broadcastable; edges may be infinite, width and sigma 0. Both 0: 1 inside, 1/2 on
+    an edge, 0 outside. Right to 1e-9 relative, taking edge minus centre as exact.
     """
     (low, high, middle, width, sigma), shape = flattened(lower, upper, centre, width, sigma)
     low, high = _clipped(low, high, np.abs(middle) + width + sigma)
@@ -50,7 +53,7 @@ def line_window(
 def line_density(
     *, frequency: ArrayLike, centre: ArrayLike, width: ArrayLike, sigma: ArrayLike
 ) -> Floats:
-    """The line of `line_window` per angular frequency [s/rad]; a delta line is infinite at its centre."""
+    """The line of `line_window` per angular frequency [s/rad]; a delta line is infinite there."""
     offset = np.asarray(frequency, float) - np.asarray(centre, float)
     return np.asarray(voigt_profile(offset, np.asarray(sigma, float), np.asarray(width, float) / 2))
 
@@ -68,9 +71,9 @@ class _LineWindow:
 
     def upper(self, cells: Cells, detuning: Complexes) -> tuple[Complexes, Floats]:
         low, high, span, half_width = self._at(cells)
-        pole = detuning + 1j * half_width
-        value = -1j / np.pi * log_ratio(span, low - pole, high - pole)
-        return value, np.abs(value)
+        pole: Complexes = np.asarray(detuning + 1j * half_width, complex)
+        logarithm = log_ratio(span, low - pole, high - pole)
+        return np.asarray(-1j / np.pi * logarithm), np.asarray(np.abs(logarithm) / np.pi)
 
     def singularities(self) -> Complexes:
         return np.stack([self.low - 1j * self.half_width, self.high - 1j * self.half_width])
@@ -95,7 +98,10 @@ def _lorentzian_share(low: Floats, high: Floats, span: Floats, half_width: Float
 
 
 def _gaussian_share(low: Floats, high: Floats, width: Floats) -> Floats:
-    """Normal share between two standard scores: a difference of erfc on one side, or one panel where that would cancel."""
+    """Normal share between two standard scores.
+
+    A difference of erfc on one side, or one panel where that would cancel.
+    """
     mirrored = -low > high
     low, high = np.where(mirrored, -high, low), np.where(mirrored, -low, high)
     share = (erfc(low / np.sqrt(2)) - erfc(high / np.sqrt(2))) / 2

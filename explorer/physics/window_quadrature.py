@@ -1,26 +1,23 @@
-r"""Mean of a window share over slow wandering of the line, weighted with a Lorentzian in the detuning.
+r"""Mean of a window share over slow wandering, weighted with a Lorentzian in the detuning.
 
-A share is the real part of a function that is analytic in the upper half of the detuning plane: its branch points (where a pole
-of the spectrum meets an edge) lie below the real axis. So the contour can be moved up by a few sigma, where a trapezium of 42
-nodes converges whatever the widths, and the pole of the weight is taken along exactly. Three ways, each for the cells where it
+A share is the real part of a function that is analytic in the upper half of the detuning plane:
+its branch points (where a pole of the spectrum meets an edge) lie below the real axis. So the
+contour can be moved up by a few sigma, where a trapezium of 42 nodes converges whatever the
+widths, and the pole of the weight is taken along exactly. Three ways, each for the cells where it
 is safe:
 
 - every singularity far from the Gaussian: Gauss-Hermite on the real axis;
 - else the trapezium on the moved contour, which reports how much it cancels;
-- where it cancels (real part far below the modulus): Gauss-Legendre on the real axis, on panels that grow away from each
-  singularity, where every term is positive.
+- where it cancels (real part far below the modulus): Gauss-Legendre on the real axis, on panels
+  that grow away from each singularity, where every term is positive.
 """
 
 from collections.abc import Iterator
-from typing import Protocol
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
-from scipy.special import wofz
+from numpy.typing import NDArray
 
-Floats = NDArray[np.float64]
-Complexes = NDArray[np.complex128]
-Cells = NDArray[np.intp]
+from .window_profile import Cells, Complexes, Floats, Gaussian, Profile
 
 _FAR_ABOVE, _FAR_ASIDE = 4.0, 14.0  # distances in sigma at which a singularity no longer matters
 _STEP, _RISE, _REACH = (
@@ -37,39 +34,6 @@ _GROWTH = 4.0
 _BLOCK = 4096  # cells worked on at a time
 
 
-class Profile(Protocol):
-    """What is averaged, for cells given by index and detunings of shape (cells, nodes) [rad/s]."""
-
-    def real(self, cells: Cells, detuning: Floats) -> Floats:
-        """The share (or density) on the real axis."""
-
-    def upper(self, cells: Cells, detuning: Complexes) -> tuple[Complexes, Floats]:
-        """The function analytic above the real axis whose real part is the share, and the size of its terms."""
-
-    def singularities(self) -> Complexes:
-        """Detunings of its branch points, shape (points, cells); the sign of the imaginary part does not matter."""
-
-
-class Gaussian:
-    """Gaussian in the detuning times the weight 1/(1 + (detuning/half width)^2), one of each a cell [rad/s]."""
-
-    def __init__(self, centre: Floats, sigma: Floats, inverse_half_width: Floats) -> None:
-        self.centre, self.sigma, self.inverse = centre, sigma, inverse_half_width
-
-    def weight(self, cells: Cells, detuning: NDArray[np.generic]) -> NDArray[np.generic]:
-        return np.asarray(1 / (1 + (detuning * self.inverse[cells, None]) ** 2))
-
-    def mean_weight(self) -> Floats:
-        """Gaussian mean of the weight: a Voigt value; 1 where the weight is flat."""
-        flat = self.inverse * (self.sigma + np.abs(self.centre)) < 1e-9
-        half_width = 1 / np.where(flat, 1, self.inverse)
-        scale = np.where(flat, half_width, self.sigma) * np.sqrt(2)
-        value = (
-            np.sqrt(np.pi) * half_width / scale * wofz((self.centre + 1j * half_width) / scale).real
-        )
-        return np.where(flat, 1, value)
-
-
 def wandering_mean(profile: Profile, gaussian: Gaussian) -> Floats:
     """Mean of profile times weight over mean of weight, shape (cells,); sigma > 0 everywhere."""
     mean = np.empty(gaussian.sigma.size)
@@ -79,8 +43,8 @@ def wandering_mean(profile: Profile, gaussian: Gaussian) -> Floats:
         mean[cells] = _hermite(profile, gaussian, cells)
     cancelled = []
     for cells in _blocks(np.flatnonzero(~smooth)):
-        mean[cells], cancellation = _moved_contour(profile, gaussian, cells)
-        cancelled.append(cells[~(cancellation < _MOST_CANCELLATION)])
+        mean[cells], cancels = _moved_contour(profile, gaussian, cells)
+        cancelled.append(cells[cancels])
     for cells in _blocks(np.concatenate([*cancelled, np.empty(0, np.intp)])):
         mean[cells] = _positive_mean(profile, gaussian, cells, height[:, cells], offset[:, cells])
     return mean / gaussian.mean_weight()
@@ -91,7 +55,7 @@ def _blocks(cells: Cells) -> Iterator[Cells]:
 
 
 def _singularities(profile: Profile, gaussian: Gaussian) -> tuple[Floats, Floats]:
-    """Height over the real axis and distance from the centre along it of every singularity, in sigma."""
+    """Height over the real axis and offset from the centre of every singularity, in sigma."""
     points = profile.singularities()
     height = np.abs(points.imag) / gaussian.sigma
     offset = (points.real - gaussian.centre) / gaussian.sigma
@@ -108,30 +72,34 @@ def _hermite(profile: Profile, gaussian: Gaussian, cells: Cells) -> Floats:
     return np.asarray(values @ (_HERMITE_WEIGHTS / np.sqrt(2 * np.pi)))
 
 
-def _moved_contour(profile: Profile, gaussian: Gaussian, cells: Cells) -> tuple[Floats, Floats]:
-    """Trapezium above the real axis, and the sum of its moduli over the modulus of its sum.
+def _moved_contour(
+    profile: Profile, gaussian: Gaussian, cells: Cells
+) -> tuple[Floats, NDArray[np.bool_]]:
+    """Trapezium above the real axis, and whether its terms cancel too much.
 
-    The nodes keep half a step from the pole of the weight at i/inverse, below which half of cot stands for what the
-    trapezium misses of its residue; the pole may lie on either side of the contour.
+    The nodes keep half a step from the pole of the weight at i/inverse, below which half of cot
+    stands for what the trapezium misses of its residue; the pole may lie on either side of the
+    contour.
     """
     centre, sigma = gaussian.centre[cells, None], gaussian.sigma[cells, None]
-    first = np.round(centre / (_STEP * sigma)) + 0.5
-    place = (first + np.arange(-_REACH - 1, _REACH + 1)) * _STEP * sigma
-    shift = (place - centre) / sigma + 1j * _RISE
-    detuning = place + 1j * _RISE * sigma
+    steps = centre / (_STEP * sigma)
+    first = np.round(steps) + 0.5 - steps
+    along = (first + np.arange(-_REACH - 1, _REACH + 1)) * _STEP
+    shift = along + np.complex128(1j * _RISE)
+    detuning: Complexes = np.asarray(centre + sigma * shift, complex)
     value, size = profile.upper(cells, detuning)
-    weight = (
-        gaussian.weight(cells, detuning) * np.exp(-(shift**2) / 2) * (_STEP / np.sqrt(2 * np.pi))
-    )
+    weight = gaussian.complex_weight(cells, detuning) * np.exp(-(shift**2) / 2)
+    weight *= _STEP / np.sqrt(2 * np.pi)
     pole, pole_size = _pole_of_the_weight(profile, gaussian, cells)
     total = (value * weight).real.sum(axis=1) + pole
-    return total, ((size * np.abs(weight)).sum(axis=1) + pole_size) / np.abs(total)
+    size = (size * np.abs(weight)).sum(axis=1) + pole_size
+    return total, ~(size <= _MOST_CANCELLATION * np.abs(total))
 
 
 def _pole_of_the_weight(
     profile: Profile, gaussian: Gaussian, cells: Cells
 ) -> tuple[Floats, Floats]:
-    """What the trapezium misses at the pole of the weight, where that is near: above 8 sigma it is below 1e-13."""
+    """What the trapezium misses at the pole of the weight: above 8 sigma below 1e-13."""
     value, size = np.zeros(cells.size), np.zeros(cells.size)
     height = 1 / np.maximum(gaussian.inverse[cells] * gaussian.sigma[cells], 1e-6)  # sigma
     near = height < 8
@@ -139,7 +107,8 @@ def _pole_of_the_weight(
         return value, size
     height, picked = height[near], cells[near]
     sigma = gaussian.sigma[picked]
-    upper, terms = profile.upper(picked, (1j * height * sigma)[:, None])
+    place: Complexes = np.asarray(1j * height * sigma, complex)
+    upper, terms = profile.upper(picked, place[:, None])
     missed = 2 / (1 + np.exp(2 * np.pi * (height - _RISE) / _STEP))  # 1 - tanh
     exponent = -((1j * height - gaussian.centre[picked] / sigma) ** 2) / 2
     factor = np.sqrt(np.pi / 8) * height * missed * np.exp(exponent)
@@ -150,7 +119,7 @@ def _pole_of_the_weight(
 def _positive_mean(
     profile: Profile, gaussian: Gaussian, cells: Cells, height: Floats, offset: Floats
 ) -> Floats:
-    """Real axis out to 8 sigma, and to 15 where what is left there, at most its Gaussian share, matters."""
+    """Real axis out to 8 sigma, and to 15 where what may be left there matters."""
     mean = _panels(profile, gaussian, cells, height, offset, _INNER)
     small = np.flatnonzero(mean < _OUTER_MATTERS)
     if small.size:
@@ -193,20 +162,3 @@ def _cut(count: int, height: Floats, offset: Floats, base: Floats) -> tuple[Cell
     edges = np.sort(np.clip(edges, base[0], base[-1]), axis=1)
     row, column = np.nonzero(np.diff(edges, axis=1) > 0)
     return row, edges[row, column], edges[row, column + 1]
-
-
-def flattened(*given: ArrayLike) -> tuple[list[Floats], tuple[int, ...]]:
-    arrays = np.broadcast_arrays(*(np.asarray(x, float) for x in given))
-    return [x.ravel() for x in arrays], arrays[0].shape
-
-
-def log_ratio(width: Floats, start: Complexes, end: Complexes) -> Complexes:
-    """Logarithm of end/start, end = start + width, right for narrow windows too."""
-    logarithm: Complexes = np.log(end / start)
-    step = width / start
-    narrow = step.real**2 + step.imag**2 < 0.01
-    if narrow.any():
-        real, imaginary = step.real[narrow], step.imag[narrow]
-        growth = real * (2 + real) + imaginary**2
-        logarithm[narrow] = np.log1p(growth) / 2 + 1j * np.arctan2(imaginary, 1 + real)
-    return logarithm

@@ -69,7 +69,9 @@ class Browser:
     def wait_for(self, selector: str, seconds: float = 30) -> WebElement:
         """The first shown element that the selector matches."""
         shown = WebDriverWait(self.driver, seconds, poll_frequency=0.02).until(
-            lambda _: next((element for element in self.find(selector) if element.is_displayed()), None),
+            lambda _: next(
+                (element for element in self.find(selector) if element.is_displayed()), None
+            ),
             f"nothing matches {selector!r}",
         )
         assert shown is not None
@@ -109,7 +111,11 @@ class Browser:
         """The newest finished download whose name fits the pattern."""
 
         def newest() -> Path | None:
-            files = [file for file in self.downloads.glob(pattern) if file.suffix not in (".crdownload", ".tmp")]
+            files = [
+                file
+                for file in self.downloads.glob(pattern)
+                if file.suffix not in (".crdownload", ".tmp")
+            ]
             return max(files, key=lambda file: file.stat().st_mtime, default=None)
 
         return self.wait_until(newest, seconds)
@@ -120,9 +126,11 @@ class Browser:
 
 def start_browser(folder: Path, width: int = 1280, height: int = 720) -> Browser:
     """A new window with a fresh profile; the caller quits its driver."""
-    program, driver = (next(filter(None, map(shutil.which, names)), None) for names in (BROWSERS, DRIVERS))
+    program, driver = (
+        next(filter(None, map(shutil.which, names)), None) for names in (BROWSERS, DRIVERS)
+    )
     if not (program and driver):
-        reason = "no Chromium with its driver on this machine (Debian: apt install chromium chromium-driver)"
+        reason = "no Chromium with its driver here (Debian: apt install chromium chromium-driver)"
         if os.environ.get("EXPLORER_REQUIRE_BROWSER"):
             pytest.fail(f"EXPLORER_REQUIRE_BROWSER is set, but there is {reason}", pytrace=False)
         pytest.skip(reason)  # the machine has no browser: the reason says so and how to get one
@@ -130,7 +138,11 @@ def start_browser(folder: Path, width: int = 1280, height: int = 720) -> Browser
     downloads.mkdir(parents=True, exist_ok=True)
     options = webdriver.ChromeOptions()
     options.binary_location = program
-    for flag in (*FLAGS, f"--user-data-dir={folder / 'profile'}", f"--window-size={width},{height}"):
+    for flag in (
+        *FLAGS,
+        f"--user-data-dir={folder / 'profile'}",
+        f"--window-size={width},{height}",
+    ):
         options.add_argument(flag)
     options.add_experimental_option("prefs", {"download.default_directory": str(downloads)})
     options.set_capability("goog:loggingPrefs", {"browser": "ALL", "performance": "ALL"})
@@ -141,7 +153,7 @@ def start_browser(folder: Path, width: int = 1280, height: int = 720) -> Browser
 
 @pytest.fixture
 def new_browser(tmp_path: Path) -> Iterator[Callable[..., Browser]]:
-    """A function that opens windows: `new_browser(width=1920, height=1080)`; they close with the test."""
+    """Opens windows, `new_browser(width=1920, height=1080)`, and closes them with the test."""
     opened: list[Browser] = []
 
     def open_window(width: int = 1280, height: int = 720) -> Browser:

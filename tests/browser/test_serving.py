@@ -1,4 +1,4 @@
-"""The served page in a real browser: nothing from elsewhere, nothing on the console, quick when preheated."""
+"""The served page in a real browser: nothing from elsewhere, no error, quick when preheated."""
 
 import statistics
 import time
@@ -91,9 +91,12 @@ def test_large_message_arrives(small, browser) -> None:
 
 
 def test_script_in_a_text_does_not_run(small, browser) -> None:
-    """Inline handlers are refused by the page's policy, should a text ever reach the page unescaped."""
+    """The page's policy refuses inline handlers, should a text ever reach it unescaped."""
     browser.open(small.url, FIGURE)
-    browser.run("document.body.insertAdjacentHTML('beforeend', arguments[0])", "<img src=x onerror=\"document.title='ran'\">")
+    browser.run(
+        "document.body.insertAdjacentHTML('beforeend', arguments[0])",
+        "<img src=x onerror=\"document.title='ran'\">",
+    )
     time.sleep(0.5)
     assert browser.driver.title == "explorer"
     assert any("Content Security Policy" in message for message in browser.console_errors())
@@ -104,7 +107,9 @@ def test_closing_the_tab_ends_its_kernel(small, browser) -> None:
     time.sleep(5)  # until the next kernel is warm
     open_kernels = set(small.kernels())
     browser.driver.get("about:blank")
-    browser.wait_until(lambda: len(open_kernels & set(small.kernels())) == len(open_kernels) - 1, 15)
+    browser.wait_until(
+        lambda: len(open_kernels & set(small.kernels())) == len(open_kernels) - 1, 15
+    )
 
 
 @pytest.mark.slow
@@ -119,5 +124,8 @@ def test_preheated_kernel_opens_the_page_quicker(served, browser, capsys) -> Non
             seconds[kind].append(browser.open(served.url + query))
     preheated, cold = (statistics.median(seconds[kind]) for kind in ("preheated", "cold"))
     with capsys.disabled():
-        print(f"\npage open: preheated {preheated:.2f} s, cold {cold:.2f} s, ratio {preheated / cold:.2f}")
+        print(
+            f"\npage open: preheated {preheated:.2f} s, cold {cold:.2f} s,"
+            f" ratio {preheated / cold:.2f}"
+        )
     assert preheated <= 0.7 * cold

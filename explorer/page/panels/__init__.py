@@ -1,0 +1,1 @@
+"""One panel a file: builds its widgets, binds inputs, draws on answer. Never computes."""

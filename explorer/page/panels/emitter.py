@@ -1,0 +1,71 @@
+"""The emitter: menu of the published ones, with their sources beside it."""
+
+from __future__ import annotations
+
+from html import escape
+from typing import Any
+
+from ipywidgets import HTML, Button, Dropdown, HBox, Label, VBox
+
+from ...catalogue import emitters
+from ...inputs import EMITTER, INPUTS
+from ...question import Answer
+from ..state import State
+
+
+class EmitterPanel(VBox):
+    """Menu of emitters; a press shows where each number comes from."""
+
+    def __init__(self, state: State) -> None:
+        self._state = state
+        self._syncing = False
+        title = Label("Emitter")
+        title.add_class("x-title")
+        self.sources = Button(description="sources", tooltip="Where the emitter's numbers come from")
+        self.sources.add_class("x-link")
+        head = HBox([title, self.sources])
+        head.add_class("x-head")
+        options = [("own values", "")] + [(entry.name, key) for key, entry in emitters().items()]
+        self.menu = Dropdown(options=options, tooltip="Published emitters")
+        self.menu.add_class("x-menu")
+        self.text = HTML()
+        self.text.add_class("x-sources")
+        self.text.layout.display = "none"
+        super().__init__([head, self.menu, self.text])
+        self.add_class("panel-emitter")
+        self.sources.on_click(self._toggle)
+        state.on_answer(self._draw)
+        self.menu.observe(self._chosen, "value")
+
+    def _toggle(self, _: Button) -> None:
+        hidden = self.text.layout.display == "none"
+        self.text.layout.display = "" if hidden else "none"
+        self._write(self._state.answer)
+
+    def _chosen(self, change: dict[str, Any]) -> None:
+        if self._syncing:
+            return
+        self._state.take_record("emitter", change["new"], tuple(row.name for row in EMITTER))
+
+    def _draw(self, answer: Answer) -> None:
+        self._syncing = True
+        self.menu.value = answer.question.design.emitter if answer.question.design.emitter in emitters() else ""
+        self._syncing = False
+        self._write(answer)
+
+    def _write(self, answer: Answer) -> None:
+        if self.text.layout.display == "none":
+            return
+        design = answer.question.design
+        lines = []
+        record = emitters().get(design.emitter)
+        if record is not None:
+            lines += [record.summary, record.doubts, record.caution]
+        body = "".join(f"<p>{escape(line)}</p>" for line in lines if line)
+        rows = "".join(
+            f"<li><b>{escape(INPUTS[row.name].label)}</b>: {escape(design.origin(row.name).kind)}"
+            f"{escape('; ' + design.origin(row.name).where if design.origin(row.name).where else '')}</li>"
+            for row in EMITTER
+        )
+        self.text.value = f"{body}<ul>{rows}</ul>"
+

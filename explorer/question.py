@@ -1,0 +1,267 @@
+"""The question is one frozen value; the answer is derived, each part from the inputs it needs.
+
+`Answers.steps(question)` gives answers that grow: the design first, then the map. A part whose inputs
+did not change is the same object as before, so whoever draws it can tell by identity.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field, replace
+from typing import Any
+
+import numpy as np
+
+from .budget import Step, budget_rows
+from .curves import Angles, Colours, angles, colours
+from .design import Design, Requirement
+from .evaluate import Evaluation, InputError
+from .inputs import INPUTS
+from .maps import FRONTIERS, Axis, Map, make_map
+from .registry import REGISTRY, dependencies
+from .sentence import Sentence, next_step, sentence
+
+#: Longest piece of work between two chances to hear of a newer question [s].
+SLICE = 0.04
+
+#: Quantities that a page always reads out.
+READ_OUT = (
+    "rate_in_fibre",
+    "rate_at_lens",
+    "rate_detected",
+    "g2_zero",
+    "half_angle",
+    "collected_share",
+    "brightness_gain",
+    "rate_enhancement",
+    "effective_purcell",
+    "device_lifetime",
+    "cavity_share",
+    "indistinguishability",
+    "regime",
+)
+
+
+@dataclass(frozen=True)
+class Question:
+    """A design, and what is shown of it: quantity, axes, and layers of the map that are on."""
+
+    design: Design = field(default_factory=Design)
+    shown: str = "rate_in_fibre"
+    x: Axis = field(default_factory=lambda: Axis("mode_volume", 1e-4, 1e3))
+    y: Axis = field(default_factory=lambda: Axis("quality_factor", 3.0, 1e6))
+    layers: frozenset[str] = frozenset({"outline", "bands", "marks"})
+
+    def __post_init__(self) -> None:
+        known = REGISTRY.quantities.get(self.shown)
+        if known is None:
+            raise InputError(f"{self.shown!r:.60} is no quantity")
+        if self.x.name == self.y.name:
+            raise InputError(f"a map needs two different inputs; both are {self.x.name}", self.x.name)
+
+
+@dataclass(frozen=True)
+class Answer:
+    """What the tool says to a question; `map` is None or of an older question until `whole`.
+
+    values: every input of the design, given or filled in. outcome: quantities by name. cautions:
+    names of those that hold. rows: the budget. width: of the emission [m]. half_angles: beam
+    half-angle along the horizontal axis [rad], or None where that is not the mode volume. hint: the
+    next step that the map shows.
+    """
+
+    question: Question
+    values: Mapping[str, Any]
+    outcome: Mapping[str, Any]
+    cautions: tuple[str, ...]
+    rows: tuple[Step, ...]
+    sentence: Sentence
+    angles: Angles
+    colours: Colours
+    width: float
+    half_angles: Any
+    map: Map | None
+    whole: bool
+    hint: str = ""
+
+
+def _key(point: Mapping[str, Any], names: frozenset[str]) -> tuple[Any, ...]:
+    """The entries of a point that a set of inputs and formulas can depend on."""
+    return tuple((name, value) for name, value in point.items() if name in names)
+
+
+def _needs(*names: str) -> frozenset[str]:
+    return frozenset().union(*(dependencies(name) for name in names))
+
+
+class Answers:
+    """Works out answers, and remembers the parts of the last one.
+
+    Not shared between threads; one a page.
+    """
+
+    def __init__(self) -> None:
+        self._parts: dict[str, tuple[Any, Any]] = {}
+        self._pace = 0.0  # seconds a cell of the last map
+
+    def _part(self, name: str, key: Any, make: Any) -> Any:
+        if name not in self._parts or self._parts[name][0] != key:
+            self._parts[name] = (key, make())
+        return self._parts[name][1]
+
+    def answer(self, question: Question) -> Answer:
+        """The whole answer. Raises InputError."""
+        *_, last = self.steps(question)
+        return last
+
+    def steps(self, question: Question) -> Iterator[Answer]:
+        """The answer as it grows, in pieces of at most about SLICE seconds each."""
+        first = self._without_map(question)
+        key = self._map_key(question)
+        if "map" in self._parts and self._parts["map"][0] == key:
+            yield self._finished(first, self._parts["map"][1])
+            return
+        last = self._parts["map"][1] if "map" in self._parts else None
+        cells = question.x.count * question.y.count
+        if self._pace * cells > SLICE:
+            yield replace(first, map=last if self._same_place(last, question) else None)
+        for drawn in self._maps(question):
+            yield replace(first, map=drawn)
+        self._parts["map"] = (key, drawn)
+        yield self._finished(first, drawn)
+
+    def _finished(self, first: Answer, drawn: Map) -> Answer:
+        said = "" if first.sentence.met else self._hint(first, drawn)
+        return replace(first, map=drawn, whole=True, hint=said)
+
+    def _hint(self, first: Answer, drawn: Map) -> str:
+        place = tuple(float(first.values[axis.name]) for axis in (drawn.x, drawn.y))
+        requirements = first.question.design.requirements
+        return self._part("hint", (id(drawn), place), lambda: next_step(drawn, place, requirements))
+
+    @staticmethod
+    def _same_place(last: Map | None, question: Question) -> bool:
+        """Whether an older map may stay on screen: same axes, same quantity."""
+        return (
+            last is not None
+            and (last.x, last.y) == (question.x, question.y)
+            and question.shown in last.values
+        )
+
+    def _maps(self, question: Question) -> Iterator[Map]:
+        """The map, coarser first where it takes long."""
+        counts = [question.x.count]
+        while self._pace * counts[0] ** 2 > SLICE and counts[0] > 16:
+            counts.insert(0, counts[0] // 2)
+        for count in counts:
+            start = time.perf_counter()
+            x, y = (replace(axis, count=count) for axis in (question.x, question.y))
+            drawn = self._map(question, x, y)
+            self._pace = (time.perf_counter() - start) / count**2
+            yield drawn
+
+    def _without_map(self, question: Question) -> Answer:
+        design = question.design
+        needed = {entry.quantity for entry in design.requirements}
+        work = self._part("work", design.point, lambda: Evaluation(design.point))
+        values = self._part(
+            "values", design.point, lambda: {name: work.value(name) for name in INPUTS}
+        )
+        names = (*READ_OUT, *needed, question.shown)
+        outcome = self._part(
+            "outcome", (design.point, names), lambda: {name: _scalar(work, name) for name in names}
+        )
+        marks = self._part(
+            "cautions",
+            design.point,
+            lambda: tuple(name for name in REGISTRY.cautions if bool(work.value(name))),
+        )
+        rows = self._part("rows", design.point, lambda: tuple(budget_rows(work)))
+        free = work.value("destination") == "free_space"
+        said = self._part(
+            "sentence",
+            (design.point, design.requirements),
+            lambda: sentence(design, outcome, rows, free),
+        )
+        wide = self._part(
+            "angles", _key(design.point, _needs("collected_share")), lambda: angles(work)
+        )
+        spectral = _needs("filter_share", "other_filter_share", "cavity_share")
+        seen = self._part("colours", _key(design.point, spectral), lambda: colours(work))
+        beam = self._part(
+            "half_angles",
+            (question.x, _key(design.point, _needs("half_angle") - {question.x.name})),
+            lambda: _along(design, question.x, "half_angle"),
+        )
+        width = float(work.value("emission_width"))
+        return Answer(
+            question, values, outcome, marks, rows, said, wide, seen, width, beam, None, False
+        )
+
+    def _wanted(self, question: Question) -> tuple[str, ...]:
+        lines = [name for name, _, _ in FRONTIERS] if "frontiers" in question.layers else []
+        return (question.shown, *lines)
+
+    def _marks(self, question: Question) -> tuple[str, ...]:
+        if "hatching" not in question.layers:
+            return ()
+        about = dependencies(question.shown)
+        return tuple(
+            mark.name
+            for mark in REGISTRY.cautions.values()
+            if mark.voids or about & set(mark.about) or not mark.about
+        )
+
+    def _map_key(self, question: Question) -> tuple[Any, ...]:
+        design = question.design
+        wanted = self._wanted(question)
+        marks = self._marks(question)
+        names = _needs(*wanted, *marks, *(entry.quantity for entry in design.requirements))
+        names -= {question.x.name, question.y.name}
+        return (
+            wanted,
+            marks,
+            question.x,
+            question.y,
+            design.requirements,
+            frozenset(_key(design.point, names)),
+        )
+
+    def _map(self, question: Question, x: Axis, y: Axis) -> Map:
+        design = question.design
+        return make_map(
+            design.point, x, y, self._wanted(question), design.requirements, self._marks(question)
+        )
+
+
+def _scalar(work: Evaluation, name: str) -> Any:
+    value = np.asarray(work.result(name)).reshape(()).item()
+    return value
+
+
+def _along(design: Design, axis: Axis, quantity: str) -> Any:
+    """A quantity along an axis of mode volume; None along another, or where it does not vary."""
+    if axis.name != "mode_volume":
+        return None
+    value = Evaluation({**design.point, axis.name: axis.values}).result(quantity)
+    return np.asarray(value) if np.shape(value) == axis.values.shape else None
+
+
+def default_axis(name: str, count: int = 256) -> Axis:
+    """An axis over an input's slider range. Raises InputError for a whole value."""
+    entry = INPUTS[name]
+    low, high = entry.slider
+    return Axis(name, low, high, log=entry.scale.startswith("log"), count=count)
+
+
+def required(design: Design, entry: Requirement | None, at: int | None = None) -> Design:
+    """A design with a requirement added, replaced at an index, or (None) taken away."""
+    entries = list(design.requirements)
+    if at is None:
+        entries += [entry] if entry else []
+    elif entry is None:
+        del entries[at]
+    else:
+        entries[at] = entry
+    return replace(design, requirements=tuple(entries))
