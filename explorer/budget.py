@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-from .evaluate import Evaluation, InputError
+from .evaluate import Evaluation, InputError, voiding
 from .physics.photons import STREAMS
 
 if TYPE_CHECKING:
@@ -25,18 +26,22 @@ class Step:
 
 
 def budget_rows(work: Evaluation) -> list[Step]:
-    """The rows of one design's budget; the last total is the detected rate."""
+    """The rows of one design's budget; the last total is the detected rate.
+
+    Where a caution leaves the photon rates without a number, no row has one.
+    """
     if work.shape:
         raise InputError("a budget is of one design; give single numbers, no arrays")
+    void = any(bool(work.value(mark)) for mark in voiding("budget_table"))
     rows: list[Step] = []
     for name, streams, total in work.value("budget_table"):
-        now = float(total)
+        now = float("nan") if void else float(total)
         before = rows[-1].total if rows else None
         factor = None if before is None else (now / before if before else float("nan"))
         split = {
             stream: float(value)
             for stream, value in zip(STREAMS, streams, strict=True)
-            if value == value
+            if not math.isnan(value) and not void
         }
         rows.append(Step(name, split, now, factor))
     return rows

@@ -91,7 +91,9 @@ def _own_density(work: Evaluation, frequency: Array) -> Array:
     natural = 1 / float(work.value("lifetime"))
     if isinstance(spectrum, Samples):
         line = work.value("measured")(lambda item: item)
-        return np.interp(frequency - detuning, line.omega, line.density, left=0.0, right=0.0)
+        return np.asarray(
+            np.interp(frequency - detuning, line.omega, line.density, left=0.0, right=0.0)
+        )
     if isinstance(spectrum, Lines):
         rows = work.value("line_table")
     else:

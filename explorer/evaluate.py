@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from . import units
 from .inputs import BROADEST, INPUTS
-from .registry import REGISTRY, Input, dependencies, parameters, split_view
+from .registry import REGISTRY, Formula, Input, dependencies, parameters, split_view
 from .whole import Samples
 
 #: Where a domain has no end of its own, SI: beyond it a formula could overflow, and no device is.
@@ -136,7 +136,7 @@ class Evaluation:
 
     def __init__(self, point: Mapping[str, Any]) -> None:
         self._values: dict[str, Any] = {}
-        self._views: dict[str, _View] = {}
+        self._steps: dict[str, tuple[Formula, tuple[tuple[str, str], ...]]] = {}
         self._names(point)
         for name, given in point.items():
             entry = INPUTS[name]
@@ -232,31 +232,41 @@ class Evaluation:
         """An input (given or filled in) or a formula, in its own shape; KeyError if unknown."""
         if name not in self._values:
             with np.errstate(all="ignore"):
-                self._values[name] = self._worked_out(name)
+                return self._get(canonical("", name))
         return self._values[name]
 
-    def _worked_out(self, name: str) -> Any:
-        if name not in INPUTS and name not in REGISTRY.nodes:
-            return self._seen_as(name)
+    def _get(self, name: str) -> Any:
+        """The same, of a canonical name, without guarding against floating-point warnings."""
+        values = self._values
+        if name in values:
+            return values[name]
+        entry = INPUTS.get(name)
+        if entry is not None and not callable(entry.default):
+            value = entry.default if entry.whole else np.float64(entry.default)
+        else:
+            body, arguments = self._step(name)
+            value = body(**{key: self._get(source) for key, source in arguments})
+        values[name] = value
+        return value
+
+    def _step(self, name: str) -> tuple[Formula, tuple[tuple[str, str], ...]]:
+        """The body that works out a formula here, and where each of its arguments comes from."""
+        step = self._steps.get(name)
+        if step is None:
+            step = self._steps[name] = self._chosen(name)
+        return step
+
+    def _chosen(self, name: str) -> tuple[Formula, tuple[tuple[str, str], ...]]:
         if name in INPUTS:
-            default = INPUTS[name].default
-            if not callable(default):
-                return default if INPUTS[name].whole else np.float64(default)
-            return default(**{key: self.value(key) for key in parameters(default)})
-        for when, body in REGISTRY.nodes[name].bodies:
+            return sourced(INPUTS[name].default, "")
+        prefix, inner = ("", name) if name in REGISTRY.nodes else split_view(name)
+        for when, body in REGISTRY.nodes[inner].bodies:
             if all(self._matches(key, wanted) for key, wanted in when.items()):
-                return body(**{key: self.value(key) for key in parameters(body)})
+                return sourced(body, prefix)
         raise KeyError(name)
 
-    def _seen_as(self, name: str) -> Any:
-        """A formula of another transition: the same formulas with some of them replaced."""
-        prefix, inner = split_view(name)
-        if prefix not in self._views:
-            self._views[prefix] = _View(self, REGISTRY.views[prefix])
-        return self._views[prefix].value(inner)
-
     def _matches(self, name: str, wanted: Any) -> bool:
-        value = self.value(name)
+        value = self._get(name)
         if isinstance(wanted, type):
             return isinstance(value, wanted)
         if wanted is None or isinstance(wanted, str):
@@ -277,21 +287,24 @@ class Evaluation:
         return value
 
 
-class _View(Evaluation):
-    """The same point seen with some formulas replaced; what they do not touch is shared."""
+@cache
+def canonical(prefix: str, name: str) -> str:
+    """The one name of a formula as seen from a view: shared ones lose the view's prefix."""
+    if name in INPUTS or (not prefix and name in REGISTRY.nodes):
+        return name
+    if not prefix:
+        return canonical(*split_view(name))
+    replaced = REGISTRY.views[prefix]
+    if name in replaced:
+        return canonical("", replaced[name])
+    own = not dependencies(name).isdisjoint(replaced)
+    return f"{prefix}_{name}" if own else canonical("", name)
 
-    def __init__(self, parent: Evaluation, replaced: Mapping[str, str]) -> None:
-        self._parent = parent
-        self._replaced = replaced
-        self._values = {}
-        self._views = {}
 
-    def value(self, name: str) -> Any:
-        if name in self._replaced:
-            return self._parent.value(self._replaced[name])
-        if name in self._values or dependencies(name) & self._replaced.keys():
-            return super().value(name)
-        return self._parent.value(name)
+@cache
+def sourced(body: Formula, prefix: str) -> tuple[Formula, tuple[tuple[str, str], ...]]:
+    """A body with its arguments: parameter, canonical name of where it comes from."""
+    return body, tuple((key, canonical(prefix, key)) for key in parameters(body))
 
 
 @cache

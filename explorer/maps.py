@@ -118,24 +118,24 @@ def isolines(field: NDArray[Any], levels: Sequence[float], log: bool = False) ->
     return [[(line + 0.5) / scale for line in lines] for lines in _polylines(values, wanted)]
 
 
-def margins(work: Evaluation, requirements: Sequence[Requirement]) -> list[Any]:
+def margins(found: Mapping[str, Any], requirements: Sequence[Requirement]) -> list[Any]:
     """How far each requirement is met: above 0 met, below 0 missed, NaN no number.
 
     The natural logarithm of the ratio of value and limit where both are positive, else their
-    difference; in the own shape of each quantity.
+    difference; in the own shape of each quantity. found: the quantities by name.
     """
-    found = []
+    margin = []
     for requirement in requirements:
-        value = np.asarray(work.result(requirement.quantity), dtype=float)
+        value = np.asarray(found[requirement.quantity], dtype=float)
         sign = 1.0 if requirement.at_least is not None else -1.0
         limit = requirement.limit
         with np.errstate(divide="ignore", invalid="ignore"):
             if limit > 0:
                 ratio = np.log(np.maximum(value, 1e-300) / limit)
-                found.append(sign * np.where(np.isnan(value), np.nan, ratio))
+                margin.append(sign * np.where(np.isnan(value), np.nan, ratio))
             else:
-                found.append(sign * (value - limit))
-    return found
+                margin.append(sign * (value - limit))
+    return margin
 
 
 def make_map(
@@ -154,10 +154,13 @@ def make_map(
     """
     work = Evaluation({**point, **mesh(x, y)})
     shape = (y.count, x.count)
-    values = {name: np.broadcast_to(work.result(name), shape) for name in wanted}
+    shown, marks = list(wanted), list(cautions)
+    needed = dict.fromkeys([*shown, *(entry.quantity for entry in requirements), *marks])
+    worked = {name: work.result(name) for name in needed}
+    values = {name: np.broadcast_to(worked[name], shape) for name in shown}
     margin = binding = None
     if requirements:
-        found = margins(work, requirements)
+        found = margins(worked, requirements)
         margin = np.broadcast_to(found[0], shape)
         binding = np.zeros(shape, dtype=np.int64)
         for index, other in enumerate(found[1:], start=1):
@@ -165,6 +168,6 @@ def make_map(
             binding = np.where(worse, index, binding)
             margin = np.where(worse, other, margin)
     caution = np.zeros(shape, dtype=bool)
-    for name in cautions:
-        caution |= work.value(name)
+    for name in marks:
+        caution |= worked[name]
     return Map(x, y, values, margin, binding, caution)

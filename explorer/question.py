@@ -136,9 +136,12 @@ class Answers:
         return replace(first, map=drawn, whole=True, hint=said)
 
     def _hint(self, first: Answer, drawn: Map) -> str:
-        place = tuple(float(first.values[axis.name]) for axis in (drawn.x, drawn.y))
+        place = (float(first.values[drawn.x.name]), float(first.values[drawn.y.name]))
         requirements = first.question.design.requirements
-        return self._part("hint", (id(drawn), place), lambda: next_step(drawn, place, requirements))
+        said: str = self._part(
+            "hint", (id(drawn), place), lambda: next_step(drawn, place, requirements)
+        )
+        return said
 
     @staticmethod
     def _same_place(last: Map | None, question: Question) -> bool:
@@ -236,8 +239,7 @@ class Answers:
 
 
 def _scalar(work: Evaluation, name: str) -> Any:
-    value = np.asarray(work.result(name)).reshape(()).item()
-    return value
+    return np.asarray(work.result(name)).reshape(()).item()
 
 
 def _along(design: Design, axis: Axis, quantity: str) -> Any:

@@ -183,20 +183,21 @@ def save_design(design: Design | Mapping[str, Any], path: str | os.PathLike[str]
     """
     text = design_text(design)
     target = Path(path)
-    unfinished = ""
+    unfinished: Path | None = None
     try:
-        handle, unfinished = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
+        handle, beside = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
+        unfinished = Path(beside)
         with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as stream:
             stream.write(text)
             stream.flush()
             os.fsync(stream.fileno())
-        os.chmod(unfinished, target.stat().st_mode & 0o777 if target.exists() else 0o644)
-        os.replace(unfinished, target)
+        unfinished.chmod(target.stat().st_mode & 0o777 if target.exists() else 0o644)
+        os.replace(unfinished, target)  # noqa: PTH105  # os's own name says that it is atomic
     except OSError as error:
         raise RecordError(f"the design was not saved to {target.name}: {error.strerror}") from error
     finally:
-        if unfinished and os.path.exists(unfinished):
-            os.unlink(unfinished)
+        if unfinished is not None:
+            unfinished.unlink(missing_ok=True)
 
 
 def load_design(path: str | os.PathLike[str]) -> Design:

@@ -123,6 +123,7 @@ class Registry:
 REGISTRY = Registry()
 
 
+@cache
 def parameters(body: Formula) -> tuple[str, ...]:
     """Names of a formula's keyword-only parameters; TypeError if it has any other kind."""
     found = inspect.signature(body).parameters.values()

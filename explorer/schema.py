@@ -8,6 +8,7 @@ from __future__ import annotations
 import json
 from functools import cache
 from importlib.resources import files
+from pathlib import Path
 from typing import Any
 
 from .design import LONGEST_TEXT, ORIGINS, SPREADS
@@ -181,7 +182,7 @@ def schema() -> Json:
             lambda row: _object({"low": _with_unit(row.shown), "high": _with_unit(row.shown)})
         ),
         "origins": _by_input(
-            lambda row: _object({"kind": {"enum": list(ORIGINS)}, "source": _TEXT, "where": _TEXT}),
+            lambda _: _object({"kind": {"enum": list(ORIGINS)}, "source": _TEXT, "where": _TEXT}),
             numbers_only=False,
         ),
         "data": {"type": "object", "additionalProperties": _TEXT},
@@ -222,9 +223,20 @@ def problems(record: Any) -> str:
 def _validator(kind: Any) -> Any:
     from decimal import Decimal
 
-    checker = kind.TYPE_CHECKER.redefine(
-        "number", lambda _, value: isinstance(value, int | float | Decimal) and not isinstance(value, bool)
-    )
-    from jsonschema.validators import extend
+    from jsonschema import validators
 
-    return extend(kind, type_checker=checker)(schema())
+    def is_number(_: Any, value: Any) -> bool:
+        return isinstance(value, int | float | Decimal) and not isinstance(value, bool)
+
+    extended: Any = validators.extend  # untyped in its stubs
+    return extended(kind, type_checker=kind.TYPE_CHECKER.redefine("number", is_number))(schema())
+
+
+def write() -> None:
+    """Write the schema out beside the data, in a clone."""
+    target = Path(__file__).parent / "data" / "design.schema.json"
+    target.write_text(json.dumps(schema(), indent=1, ensure_ascii=False) + "\n", encoding="utf-8")
+
+
+if __name__ == "__main__":
+    write()

@@ -51,16 +51,15 @@ def plane_waves(radius: float, theta: Array, phi: Array) -> Array:
     The far field of a plane with a given tangential field: each plane wave's field, made transverse,
     times the cosine of its angle (stationary phase).
     """
-    step = radius / 6
-    axis = np.arange(-40, 41) * step
-    field = np.exp(-((axis[:, None] / radius) ** 2) - (axis / radius) ** 2)
+    step = min(radius / 6, 0.25)  # finer than half a wavelength: no direction is aliased
+    axis = np.arange(-np.ceil(6.7 * radius / step), np.ceil(6.7 * radius / step) + 1) * step
+    profile = np.exp(-((axis / radius) ** 2)) * step
     kx = 2 * np.pi * np.sin(theta)[:, None] * np.cos(phi)
     ky = 2 * np.pi * np.sin(theta)[:, None] * np.sin(phi)
-    ex = np.empty(kx.shape, complex)
-    for i in np.ndindex(kx.shape):
-        ex[i] = np.exp(-1j * kx[i] * axis) @ field @ np.exp(-1j * ky[i] * axis) * step**2
+    # The sum over the grid x, y of field·exp(−i(kx x + ky y)): a product, for the field is one.
+    ex = (np.exp(-1j * kx[..., None] * axis) @ profile) * (np.exp(-1j * ky[..., None] * axis) @ profile)
     kz = 2 * np.pi * np.cos(theta)[:, None]
-    ez = -kx * ex / kz
+    ez = -kx * ex / kz  # transverse
     return (np.abs(ex) ** 2 + np.abs(ez) ** 2) * np.cos(theta)[:, None] ** 2
 
 
@@ -251,16 +250,20 @@ def test_fibre_share_in_a_two_dimensional_pupil(case: tuple[float, ...]) -> None
     expected = pupil_overlap(pattern_amplitude(case[0]), **numbers)
     other = pupil_overlap(lambda theta: np.sqrt((1 + np.cos(theta) ** 2) / 2), **numbers)
     print(f"fibre {found['fibre_share'] / expected - 1:.1e}, other {found['other_fibre_share'] / other - 1:.1e}")
-    assert found["fibre_share"] == pytest.approx(expected, rel=1e-10, abs=1e-15)
-    assert found["other_fibre_share"] == pytest.approx(other, rel=1e-10, abs=1e-15)
+    assert found["fibre_share"] == pytest.approx(expected, rel=1e-12, abs=1e-15)
+    assert found["other_fibre_share"] == pytest.approx(other, rel=1e-12, abs=1e-15)
 
 
+@cache
 def best_fibre(radius: float, sine: float) -> float:
     """The largest share that a fibre of any size takes of a pattern cut by the pupil."""
-    amplitude = pattern_amplitude(radius)
+    x, weights = gauss(0, np.pi / 2, 200)
+    theta = np.arcsin(sine * np.sin(x))
+    known = np.sqrt(averaged(radius, theta))
 
     def loss(logarithm: float) -> float:
-        return -pupil_overlap(amplitude, sine=sine, fibre=float(np.exp(logarithm)), shift=0.0, rings=120, spokes=1)
+        fibre = float(np.exp(logarithm))
+        return -pupil_overlap(lambda _: known, sine=sine, fibre=fibre, shift=0.0, rings=200, spokes=1)
 
     middle = np.log(min(sine, 1 / (np.pi * radius)))
     found = minimize_scalar(loss, bounds=(middle - 2, middle + 2), method="bounded", options={"xatol": 1e-6})
@@ -270,13 +273,15 @@ def best_fibre(radius: float, sine: float) -> float:
 @pytest.mark.parametrize("index", [1.0, 1.33])
 @pytest.mark.parametrize("radius", [0.02, 0.15, 0.3, 0.6, 1.0, 3.0])
 def test_default_magnification_is_near_the_best(radius: float, index: float) -> None:
-    """Within 0.3 % of the best; where the pupil is filled to grazing angles the loss is largest."""
+    """Within 0.3 % of the best size of fibre mode, found by search without an offset."""
+    worst = 0.0
     for sine in (0.1, 0.3, 0.5, 0.7, 0.9):
         point = point_of(radius, index, numerical_aperture=sine * index, destination="fibre", reference_side="glass")
         found = explorer.evaluate(point, ["fibre_share"])["fibre_share"]
         best = best_fibre(radius, sine)
-        print(f"radius {radius}, sine {sine}: {1 - found / best:.2e} below the best")
+        worst = max(worst, 1 - found / best)
         assert best * (1 - 3e-3) < found < best * (1 + 1e-6)
+    print(f"magnification, radius {radius}: {worst:.2e} below the best")
 
 
 @pytest.mark.parametrize(("aperture", "excess"), [(0.65, 0.004), (0.95, 0.03)])

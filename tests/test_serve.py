@@ -90,7 +90,7 @@ def test_stops_without_a_word_and_without_kernels(start_server, number: int) -> 
 @pytest.mark.skipif(
     os.name == "nt", reason="these signals cannot be sent to one process on Windows"
 )
-@pytest.mark.parametrize("wait", [0.0, 0.3, 1.0])
+@pytest.mark.parametrize("wait", [0.0, pytest.param(0.3, marks=pytest.mark.slow), 1.0])
 def test_stops_cleanly_while_the_first_kernel_starts(start_server, wait: float) -> None:
     served = start_server(code=SMALL_PAGE)
     time.sleep(wait)

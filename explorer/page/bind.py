@@ -15,7 +15,6 @@ from ..registry import Input
 from .scales import Scale
 from .state import State
 
-
 #: Longest label that takes its symbol along.
 SHORT = 18
 

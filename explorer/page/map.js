@@ -1,6 +1,7 @@
 // The map canvas: colours, axes, lines, marks, labels, legend, readout and the design point.
-// canvas.py describes the message. Three layers lie on each other, so that a moved point redraws
-// the ring alone: the cells (stretched by the browser), the ink over them, and the point.
+// canvas.py describes the message. Four layers lie on each other, so that a moved point redraws
+// the ring alone: the cells (stretched by the browser), the axes and the legend around them, the
+// ink over them, and the point.
 
 const FONT = '"Noto Sans", "Liberation Sans", Arial, "DejaVu Sans", sans-serif';
 const KINDS = { float32: Float32Array, uint32: Uint32Array, uint8: Uint8Array };
@@ -292,12 +293,12 @@ class Places {
     const b = this.bounds;
     return box.x >= b.x && box.y >= b.y && box.x + box.w <= b.x + b.w && box.y + box.h <= b.y + b.h;
   }
-  free(box) {
+  touches(a, b) {
     const air = 3;
-    return this.inside(box) && !this.taken.some((t) =>
-      box.x < t.x + t.w + air && t.x < box.x + box.w + air && box.y < t.y + t.h + air && t.y < box.y + box.h + air);
+    return a.x < b.x + b.w + air && b.x < a.x + a.w + air && a.y < b.y + b.h + air && b.y < a.y + a.h + air;
   }
-  // the first free candidate; `always` takes the first one inside if none is free
+  free(box) { return this.inside(box) && !this.taken.some((other) => this.touches(box, other)); }
+  // the first free candidate; `always` takes one beside the ring at least if none is free
   choose(candidates, always = false) {
     const box = candidates.find((c) => this.free(c)) ?? (always ? this.forced(candidates) : undefined);
     if (box) this.take(box);
@@ -305,7 +306,8 @@ class Places {
   }
   forced(candidates) {
     const b = this.bounds;
-    const box = candidates.find((c) => this.inside(c)) ?? candidates[0];
+    const inside = candidates.filter((c) => this.inside(c));
+    const box = inside.find((c) => !this.touches(c, this.ring)) ?? inside[0] ?? candidates[0];
     const within = (at, size, start, room) => Math.max(start, Math.min(start + room - size, at));
     return { ...box, x: within(box.x, box.w, b.x, b.w), y: within(box.y, box.h, b.y, b.h) };
   }
@@ -351,6 +353,7 @@ class MapView {
     this.image = make("div", `${fill}width:100%;height:100%`, this.host, { role: "img" });
     this.clip = make("div", "position:absolute;overflow:hidden", this.image);
     this.cells = make("canvas", "position:absolute", this.clip);
+    this.around = make("canvas", fill, this.image);
     this.ink = make("canvas", fill, this.image);
     this.top = make("canvas", fill, this.image);
     this.surface = make("div", "position:absolute;cursor:crosshair;touch-action:none;outline:none", this.host, {
@@ -461,6 +464,7 @@ class MapView {
     if (!this.picture || clientWidth < 80 || clientHeight < 80) return;
     this.measureLayout(clientWidth, clientHeight);
     this.paintCells();
+    this.paintAround();
     this.paintInk();
     this.paintPoint();
     this.host.dataset.frame = String(++this.frame);
@@ -511,7 +515,8 @@ class MapView {
     if (width === this.width && height === this.height && ratio === this.ratio) return;
     Object.assign(this, { width, height, ratio });
     this.widths.clear();
-    for (const canvas of [this.ink, this.top]) {
+    this.aroundKey = "";
+    for (const canvas of [this.around, this.ink, this.top]) {
       canvas.width = Math.round(width * ratio);
       canvas.height = Math.round(height * ratio);
       canvas.style.width = `${width}px`;
@@ -631,10 +636,22 @@ class MapView {
     for (const band of bands) this.paintBand(pen, band);
     this.paintLines(pen);
     pen.restore();
+    pen.strokeStyle = this.theme.ink;
+    pen.lineWidth = 1.5;
+    pen.strokeRect(plot.x, plot.y, plot.w, plot.h);
+    this.paintLabels(pen, bands);
+  }
+
+  // Axes and legend stay as they are in most pictures; drawing text is dear
+  paintAround() {
+    const { x, y, colour } = this.picture;
+    const key = JSON.stringify([x, y, colour, this.second, this.plot, this.legendRows, this.theme.key]);
+    if (key === this.aroundKey) return;
+    this.aroundKey = key;
+    const pen = this.pen(this.around);
     this.paintAxes(pen);
     this.paintSecondScales(pen);
     this.paintLegend(pen);
-    this.paintLabels(pen, bands);
   }
 
   paintBand(pen, band) {
@@ -649,13 +666,19 @@ class MapView {
     pen.stroke();
   }
 
+  // Points closer than 2 px to the last one are left out: they cost more than all the rest
   trace(pen, line) {
     const { points, starts } = this.picture.data;
     pen.beginPath();
     for (let path = line.first; path < line.first + line.count; path++) {
-      for (let i = starts[path]; i < starts[path + 1]; i++) {
+      let [px, py] = [0, 0];
+      const last = starts[path + 1] - 1;
+      for (let i = starts[path]; i <= last; i++) {
         const [x, y] = [this.toX(points[2 * i]), this.toY(points[2 * i + 1])];
-        if (i === starts[path]) pen.moveTo(x, y); else pen.lineTo(x, y);
+        if (i === starts[path]) pen.moveTo(x, y);
+        else if (i === last || Math.abs(x - px) + Math.abs(y - py) > 2) pen.lineTo(x, y);
+        else continue;
+        [px, py] = [x, y];
       }
     }
   }
@@ -686,6 +709,7 @@ class MapView {
 
   paintLines(pen) {
     const { theme, picture } = this;
+    pen.lineJoin = "bevel"; // as good as round on finely divided lines, and much quicker
     const stroke = (colour, width) => { pen.strokeStyle = colour; pen.lineWidth = width; pen.stroke(); };
     const ofKind = (kind, layer) => (this.shows(layer) ? picture.lines.filter((line) => line.kind === kind) : []);
     for (const line of ofKind("iso", "iso")) {
@@ -776,9 +800,6 @@ class MapView {
   paintAxes(pen) {
     const { plot, theme, line, picture } = this;
     const bottom = plot.y + plot.h;
-    pen.strokeStyle = theme.ink;
-    pen.lineWidth = 1.5;
-    pen.strokeRect(plot.x, plot.y, plot.w, plot.h);
     this.tickMarks(pen, this.xTicks.map((tick) => [this.toX(tick.fraction), bottom, 0, 6]), theme.ink);
     this.tickMarks(pen, this.yTicks.map((tick) => [plot.x, this.toY(tick.fraction), -6, 0]), theme.ink);
     for (const tick of this.xTicks) this.write(pen, tick.text, this.toX(tick.fraction), bottom + 8 + line / 2, { align: "center" });
@@ -921,7 +942,8 @@ class MapView {
     const marks = this.visibleMarks();
     const [px, py] = this.ringPlace();
     this.settledAt = [px, py];
-    places.take({ x: px - 17, y: py - 17, w: 34, h: 34 });
+    places.ring = { x: px - 17, y: py - 17, w: 34, h: 34 };
+    places.take(places.ring);
     for (const [x, y] of marks.map((mark) => [this.toX(mark.x), this.toY(mark.y)])) places.take({ x: x - 8, y: y - 8, w: 16, h: 16 });
     if (this.shows("outline")) {
       for (const label of picture.labels) {

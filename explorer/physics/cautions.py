@@ -45,6 +45,18 @@ def no_decay(*, decay_elsewhere: Any, exchange_rate: Any) -> Any:
 
 
 @caution(
+    "The biexciton never decays: no other decay and no coupling to the mode, so photon rates have no "
+    "number.",
+    label="no biexciton decay",
+    about=("rate_in_fibre", "g2_zero"),
+    voids=("biexciton_rate",),
+)
+def no_biexciton_decay(*, biexciton_decay_elsewhere: Any, biexciton_exchange_rate: Any) -> Any:
+    """γ = R = 0 of the biexciton, which has no non-radiative decay at a yield of 1."""
+    return (biexciton_decay_elsewhere == 0) & (biexciton_exchange_rate == 0)
+
+
+@caution(
     "No light and no background reach the detector, so g²(0) has no number.",
     label="no light",
     about=("g2_zero",),
@@ -310,7 +322,7 @@ def continuous_beyond(*, mode_rate: Any, resonator_linewidth: Any, saturation: A
 )
 def mean_rates_used(*, slow_linewidth: Any, repetition_rate: Any, device_lifetime: Any) -> Any:
     """Slow wandering with a period under five lifetimes."""
-    return (slow_linewidth > 0) & (1 < 5 * repetition_rate * device_lifetime)
+    return (slow_linewidth > 0) & (5 * repetition_rate * device_lifetime > 1)
 
 
 @variant("mean_rates_used", pumping="continuous")
@@ -326,7 +338,7 @@ def mean_rates_used_continuous(*, slow_linewidth: Any) -> Any:
 )
 def overlapping_pulses(*, repetition_rate: Any, device_lifetime: Any) -> Any:
     """Period under five lifetimes in the device."""
-    return 1 < 5 * repetition_rate * device_lifetime
+    return 5 * repetition_rate * device_lifetime > 1
 
 
 @variant("overlapping_pulses", pumping="continuous")

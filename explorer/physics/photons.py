@@ -95,7 +95,7 @@ def occupations(*, excitations_per_pulse: Any, period_decay: Any) -> Any:
 
     From the spanning trees of the three states, a sum of products without any subtraction.
     """
-    stays, gone, gone_b, one, both = period_decay
+    stays, gone, _, one, both = period_decay
     none = np.exp(-excitations_per_pulse)
     single = excitations_per_pulse * none
     double = gammainc(2.0, excitations_per_pulse)
@@ -223,7 +223,7 @@ def pair_transmitted(*, biexciton_yield: Any, biexciton_transmitted: Any) -> Any
 @variant("pair_transmitted", biexciton_yield=0)
 def no_pair_transmitted() -> Any:
     """No photon from the biexciton."""
-    return lambda steps: (0.0, 0.0)
+    return lambda _: (0.0, 0.0)
 
 
 @part

@@ -124,16 +124,25 @@ class Browser:
         self.driver.save_screenshot(str(path))
 
 
+def installed_chromium() -> tuple[str, str]:
+    """Paths of the browser and of its driver; skips the test, or fails it, where there is none."""
+    found = [next(filter(None, map(shutil.which, names)), None) for names in (BROWSERS, DRIVERS)]
+    program, driver = found
+    if program and driver:
+        return program, driver
+    reason = "no Chromium with its driver here (Debian: apt install chromium chromium-driver)"
+    if os.environ.get("EXPLORER_REQUIRE_BROWSER"):
+        pytest.fail(f"EXPLORER_REQUIRE_BROWSER is set, but there is {reason}", pytrace=False)
+    pytest.skip(reason)  # the machine has no browser: the reason says so and how to get one
+
+
+def pytest_runtest_setup() -> None:
+    installed_chromium()  # before any fixture starts a server in vain
+
+
 def start_browser(folder: Path, width: int = 1280, height: int = 720) -> Browser:
     """A new window with a fresh profile; the caller quits its driver."""
-    program, driver = (
-        next(filter(None, map(shutil.which, names)), None) for names in (BROWSERS, DRIVERS)
-    )
-    if not (program and driver):
-        reason = "no Chromium with its driver here (Debian: apt install chromium chromium-driver)"
-        if os.environ.get("EXPLORER_REQUIRE_BROWSER"):
-            pytest.fail(f"EXPLORER_REQUIRE_BROWSER is set, but there is {reason}", pytrace=False)
-        pytest.skip(reason)  # the machine has no browser: the reason says so and how to get one
+    program, driver = installed_chromium()
     downloads = folder / "downloads"
     downloads.mkdir(parents=True, exist_ok=True)
     options = webdriver.ChromeOptions()

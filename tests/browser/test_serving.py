@@ -39,6 +39,7 @@ text = ipywidgets.HTML("<b>lighthouse</b>")
 ipywidgets.VBox([parcel, figure, text])
 """
 FIGURE = ".bqplot"
+PAPER = "rgb(251, 250, 246)"
 
 
 @pytest.fixture(scope="module")
@@ -70,17 +71,17 @@ def test_error_page_asks_no_other_host(small, browser) -> None:
 
 
 def test_waiting_line_is_shown_on_paper_while_a_cold_kernel_starts(small, browser) -> None:
-    browser.driver.execute_cdp_cmd("Page.enable", {})
-    browser.driver.set_page_load_timeout(60)
+    look = """
+        const line = document.querySelector("#loading");
+        return line && [line.getAttribute("aria-live"), line.innerText.trim(),
+                        getComputedStyle(line).backgroundColor];
+    """
     browser.run("window.location = arguments[0]", small.url + "?theme=cold")
-    line = browser.wait_for("#loading")
-    assert line.get_attribute("aria-live") == "polite"
-    assert "Loading the page…" in line.text
-    colour = "return getComputedStyle(document.querySelector(arguments[0])).backgroundColor"
-    assert browser.run(colour, "#loading") == "rgb(251, 250, 246)"
+    shown = browser.wait_until(lambda: browser.run(look))
+    assert shown == ["polite", "Loading the page…", PAPER]
     browser.wait_for(FIGURE)
     browser.wait_until(lambda: not browser.find("#loading"))
-    assert browser.run(colour, "body") == "rgb(251, 250, 246)"
+    assert browser.run("return getComputedStyle(document.body).backgroundColor") == PAPER
 
 
 def test_large_message_arrives(small, browser) -> None:

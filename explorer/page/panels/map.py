@@ -13,7 +13,8 @@ from ...question import Answer, Question, default_axis
 from ...registry import REGISTRY
 from ...units import from_si, text
 from ..backdrop import Backdrop
-from ..canvas import AxisScale, ColourScale, Label as Note, Line, MapCanvas, Picture
+from ..canvas import AxisScale, ColourScale, Line, MapCanvas, Picture
+from ..canvas import Label as Note
 from ..scales import rounded
 from ..state import State
 

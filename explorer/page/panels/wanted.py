@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from typing import Any
 
 from ipywidgets import Button, Dropdown, HBox, Label, Text, VBox
@@ -94,7 +95,7 @@ class WantedPanel(VBox):
             return
         self.more.value = ""
         value = self._state.reading(name)
-        entry = Requirement(name, at_least=value) if value == value else Requirement(name, at_least=0.0)
+        entry = Requirement(name, at_least=0.0 if math.isnan(value) else value)
         self._state.ask(design=required(self._state.question.design, entry))
 
 
