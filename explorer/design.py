@@ -10,7 +10,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, fields, replace
 from typing import Any
 
-from .evaluate import Evaluation, InputError, evaluate, shown
+from .evaluate import Evaluation, InputError, evaluate, quoted, shown
 from .inputs import INPUTS
 from .registry import REGISTRY
 
@@ -66,10 +66,20 @@ class Frozen(Mapping[str, Any]):
 
 def _finite(value: Any, what: str) -> float:
     if isinstance(value, bool) or not isinstance(value, int | float):
-        raise InputError(f"{what} = {value!r:.60} is not a number")
+        raise InputError(f"{what} = {quoted(value)} is not a number")
     if not math.isfinite(value):
         raise InputError(f"{what} = {value} is not a finite number")
     return float(value)
+
+
+def _text(value: Any, what: str) -> None:
+    """InputError for what is no text that a record can hold."""
+    if not isinstance(value, str) or len(value) > LONGEST_TEXT:
+        raise InputError(f"{what} is a text of at most {LONGEST_TEXT} signs; got {quoted(value)}")
+    if any(ord(sign) < 32 and sign not in "\n\t" for sign in value):
+        raise InputError(f"{what} holds a control character")
+    if any("\ud800" <= sign <= "\udfff" for sign in value):
+        raise InputError(f"{what} holds half a sign, which cannot be written")
 
 
 @dataclass(frozen=True)
@@ -84,11 +94,13 @@ class Requirement:
     at_most: float | None = None
 
     def __post_init__(self) -> None:
-        known = REGISTRY.quantities.get(self.quantity)
+        known = REGISTRY.quantities.get(self.quantity) if isinstance(self.quantity, str) else None
         if known is None or known.kind != "number":
-            raise InputError(f"{self.quantity!r:.60} is no quantity that can be required")
+            raise InputError(f"{quoted(self.quantity)} is no quantity that can be required")
         if (self.at_least is None) == (self.at_most is None):
-            raise InputError(f"a requirement on {self.quantity} takes at_least or at_most, one of them")
+            raise InputError(
+                f"a requirement on {self.quantity} takes at_least or at_most, one of them"
+            )
         name = "at_most" if self.at_least is None else "at_least"
         object.__setattr__(self, name, _finite(self.limit, f"{name} of {self.quantity}"))
 
@@ -115,8 +127,10 @@ class Spread:
     width: float = 0.0
 
     def __post_init__(self) -> None:
-        if self.kind not in SPREADS:
-            raise InputError(f"{self.kind!r:.60} is no kind of scatter; known: {', '.join(SPREADS)}")
+        if not isinstance(self.kind, str) or self.kind not in SPREADS:
+            raise InputError(
+                f"{quoted(self.kind)} is no kind of scatter; known: {', '.join(SPREADS)}"
+            )
         width = _finite(self.width, "the width of a scatter")
         if width < 0:
             raise InputError(f"the width of a scatter must not be negative; got {width}")
@@ -149,7 +163,9 @@ class Origin:
 
     def __post_init__(self) -> None:
         if self.kind not in ORIGINS:
-            raise InputError(f"{self.kind!r:.60} is no origin; known: {', '.join(ORIGINS)}")
+            raise InputError(f"{quoted(self.kind)} is no origin; known: {', '.join(ORIGINS)}")
+        _text(self.source, "the source of an origin")
+        _text(self.where, "the place in a source")
 
 
 @dataclass(frozen=True)
@@ -195,10 +211,15 @@ class Design:
             for name, value in self.point.items()
         }
         object.__setattr__(self, "point", Frozen(point))
+        if isinstance(self.requirements, Requirement | str | Mapping):
+            raise InputError("requirements is a sequence of Requirement, not a single one")
         object.__setattr__(self, "requirements", tuple(self.requirements))
         for name in ("scatter", "unknowns", "origins", "correlation", "data"):
+            if not isinstance(getattr(self, name), Mapping):
+                raise InputError(f"{name} = {quoted(getattr(self, name))} is no mapping from names")
             object.__setattr__(self, name, Frozen(getattr(self, name)))
         self._check_companions()
+        self._check_correlation()
         self._check_texts()
 
     def _check_companions(self) -> None:
@@ -206,7 +227,7 @@ class Design:
         for attribute, kind in kinds.items():
             for name, value in getattr(self, attribute).items():
                 if name not in INPUTS:
-                    raise InputError(f"{attribute} names {name!r:.60}, which is no input")
+                    raise InputError(f"{attribute} names {quoted(name)}, which is no input")
                 if not isinstance(value, kind):
                     raise InputError(f"{attribute} of {name} is no {kind.__name__}", name)
                 if attribute != "origins" and INPUTS[name].whole:
@@ -216,18 +237,32 @@ class Design:
                 Evaluation({**self._without(name), name: end})
         for requirement in self.requirements:
             if not isinstance(requirement, Requirement):
-                raise InputError(f"{requirement!r:.60} is no Requirement")
+                raise InputError(f"{quoted(requirement)} is no Requirement")
 
     def _without(self, name: str) -> dict[str, Any]:
         return {key: value for key, value in self.point.items() if key != name}
 
+    def _check_correlation(self) -> None:
+        for pair, value in self.correlation.items():
+            names = pair.split("|") if isinstance(pair, str) else []
+            known = [name for name in names if name in INPUTS and not INPUTS[name].whole]
+            if len(names) != 2 or len(set(known)) != 2:
+                raise InputError(
+                    f"a correlation is of two inputs that scatter, 'one|other'; got {quoted(pair)}"
+                )
+            if not -1 <= _finite(value, f"the correlation of {pair}") <= 1:
+                raise InputError(f"the correlation of {pair} = {value:g} is outside -1 to 1")
+
     def _check_texts(self) -> None:
-        texts = [self.name, self.note, *(getattr(self.decision, f.name) for f in fields(Decision))]
-        for text in texts:
-            if not isinstance(text, str) or len(text) > LONGEST_TEXT:
-                raise InputError(f"a name, note or decision is a text of at most {LONGEST_TEXT} signs")
-            if any(ord(sign) < 32 and sign not in "\n\t" for sign in text):
-                raise InputError("a name, note or decision holds a control character")
+        if not isinstance(self.decision, Decision):
+            raise InputError(f"decision = {quoted(self.decision)} is no Decision")
+        for name in ("name", "note", "emitter", "resonator", "optic"):
+            _text(getattr(self, name), name)
+        for entry in fields(Decision):
+            _text(getattr(self.decision, entry.name), f"{entry.name} of the decision")
+        for name, value in self.data.items():
+            _text(name, "the name of a data file")
+            _text(value, f"data of {name}")
 
     def with_values(self, **values: Any) -> Design:
         """The same design with some inputs given, as typed by a person."""

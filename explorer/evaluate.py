@@ -59,7 +59,7 @@ def _number(entry: Input, given: Any) -> NDArray[np.float64]:
     if isinstance(given, np.ma.MaskedArray):
         raise InputError(f"{entry.name} is a masked array; give plain numbers", entry.name)
     if isinstance(given, str | bytes | bool | np.bool_ | Mapping) or given is None:
-        raise InputError(f"{entry.name} = {_quoted(given)} is not a number", entry.name)
+        raise InputError(f"{entry.name} = {quoted(given)} is not a number", entry.name)
     try:
         # A whole number beyond 64 bits is a number too.
         array = np.asarray(float(given) if type(given) is int else given)
@@ -70,13 +70,18 @@ def _number(entry: Input, given: Any) -> NDArray[np.float64]:
     if array.dtype.kind == "c":
         raise InputError(f"{entry.name} is complex; give real numbers", entry.name)
     if array.dtype.kind not in "iuf":
-        raise InputError(f"{entry.name} = {_quoted(given)} is not a number", entry.name)
+        raise InputError(f"{entry.name} = {quoted(given)} is not a number", entry.name)
     return array.astype(np.float64, copy=False)
 
 
-def _quoted(given: Any) -> str:
-    """Something that a person gave, on one line, cut where it is long."""
+def quoted(given: Any) -> str:
+    """Something that a person gave, on one line, cut where it is long, without inner workings."""
+    if isinstance(given, np.ndarray):
+        given = given.ravel()[:9].tolist()
+    plain = given is None or isinstance(given, str | bytes | int | float | complex | list | tuple)
     text = " ".join(repr(given).split())
+    if not (plain or isinstance(given, Mapping | set)) or " at 0x" in text:
+        text = f"something of the kind {type(given).__name__!r}"
     return text if len(text) <= 80 else f"{text[:79]}…"
 
 
@@ -119,11 +124,11 @@ def _whole(entry: Input, given: Any) -> Any:
         if isinstance(given, str) and given in entry.choices:
             return str(given)
         words = " or ".join(repr(word) for word in entry.choices)
-        raise InputError(f"{entry.name} = {_quoted(given)} is not one of {words}", entry.name)
+        raise InputError(f"{entry.name} = {quoted(given)} is not one of {words}", entry.name)
     if type(given) in entry.types:
         return given
     names = " or ".join(kind.__name__ for kind in entry.types)
-    raise InputError(f"{entry.name} = {_quoted(given)} is no {names}", entry.name)
+    raise InputError(f"{entry.name} = {quoted(given)} is no {names}", entry.name)
 
 
 class Evaluation:
@@ -156,7 +161,7 @@ class Evaluation:
         for name in point:
             if name not in INPUTS:
                 raise InputError(
-                    f"{_quoted(name)} is no input; the inputs are: {', '.join(sorted(INPUTS))}"
+                    f"{quoted(name)} is no input; the inputs are: {', '.join(sorted(INPUTS))}"
                 )
 
     def _common_shape(self) -> tuple[int, ...]:
@@ -336,7 +341,7 @@ def evaluate(point: Mapping[str, Any], wanted: Iterable[str]) -> dict[str, Any]:
     for name in names:
         if not isinstance(name, str) or (name not in public and name not in INPUTS):
             raise KeyError(
-                f"{_quoted(name)} is no quantity; the quantities are: {', '.join(sorted(public))}"
+                f"{quoted(name)} is no quantity; the quantities are: {', '.join(sorted(public))}"
             )
     work = Evaluation(point)
     found = {}

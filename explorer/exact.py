@@ -46,7 +46,11 @@ def value_of(number: Any, unit: str) -> float:
             raise RecordError(f"{number!r:.40} is no number")
         return WORDS[number]
     exponent = EXPONENTS[unit_name(unit)][1]
-    return float(Decimal(number).scaleb(exponent))
+    decimal = Decimal(number)
+    # Beyond any float, and beyond what a decimal can be shifted by.
+    if decimal and abs(decimal.adjusted()) > 1000:
+        return math.copysign(math.inf if decimal.adjusted() > 0 else 0.0, decimal)
+    return float(decimal.scaleb(exponent))
 
 
 def serialise(record: Any) -> str:
@@ -78,7 +82,7 @@ def _pairs(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
 def _depth(text: str) -> int:
     """Deepest nesting of brackets outside strings, without recursion."""
     deepest = depth = 0
-    for sign in re.sub(r'"(?:[^"\\]|\\.)*"', "", text):
+    for sign in re.sub(r'"(?:[^"\\]|\\.)*"|[^][{}"]+', "", text):
         if sign in "[{":
             depth += 1
             deepest = max(deepest, depth)

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .design import Requirement
-from .evaluate import Evaluation, InputError
+from .evaluate import Evaluation, InputError, quoted
 from .inputs import INPUTS
 from .registry import REGISTRY
 
@@ -36,14 +36,22 @@ class Axis:
     count: int = 256
 
     def __post_init__(self) -> None:
-        if self.name not in INPUTS or INPUTS[self.name].whole:
-            raise InputError(f"{self.name!r:.60} is no input that can be an axis")
-        if not (np.isfinite(self.low) and np.isfinite(self.high)) or self.low >= self.high:
-            raise InputError(f"the axis {self.name} must rise from a low to a high number", self.name)
+        if not isinstance(self.name, str) or self.name not in INPUTS or INPUTS[self.name].whole:
+            raise InputError(f"{quoted(self.name)} is no input that can be an axis")
+        ends = (self.low, self.high)
+        known = all(isinstance(end, int | float) and np.isfinite(end) for end in ends)
+        if not known or self.low >= self.high:
+            raise InputError(
+                f"the axis {self.name} must rise from a low to a high number", self.name
+            )
         if self.log and self.low <= 0:
-            raise InputError(f"the axis {self.name} is logarithmic and must start above 0", self.name)
-        if not 2 <= self.count <= 2048:
-            raise InputError(f"the axis {self.name} takes 2 to 2048 cells, not {self.count}", self.name)
+            raise InputError(
+                f"the axis {self.name} is logarithmic and must start above 0", self.name
+            )
+        if not isinstance(self.count, int | np.integer) or not 2 <= self.count <= 2048:
+            raise InputError(
+                f"the axis {self.name} takes 2 to 2048 cells, not {quoted(self.count)}", self.name
+            )
 
     @cached_property
     def values(self) -> Array:

@@ -13,9 +13,10 @@ from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
+from .advice import record_cautions
 from .budget import budget_rows
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
-from .evaluate import Evaluation, InputError
+from .evaluate import Evaluation, InputError, quoted
 from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
 from .registry import REGISTRY
@@ -99,7 +100,12 @@ def _budget(design: Design) -> list[Json]:
         streams = {name: number_in(value, "1/s") for name, value in row.streams.items()}
         factor = None if row.factor is None else number_in(row.factor, "1")
         rows.append(
-            {"step": row.step, "total": _number(row.total, "1/s"), "factor": factor, "streams": streams}
+            {
+                "step": row.step,
+                "total": _number(row.total, "1/s"),
+                "factor": factor,
+                "streams": streams,
+            }
         )
     return rows
 
@@ -138,9 +144,7 @@ def record_of(design: Design) -> Json:
         "inputs": _inputs(design),
         "requirements": [_requirement(entry) for entry in design.requirements],
         "scatter": {name: _spread(name, spread) for name, spread in design.scatter.items()},
-        "correlation": {
-            pair: number_in(value, "1") for pair, value in design.correlation.items()
-        },
+        "correlation": {pair: number_in(value, "1") for pair, value in design.correlation.items()},
         "unknowns": {
             name: {
                 "low": _number(unknown.low, INPUTS[name].shown),
@@ -155,12 +159,18 @@ def record_of(design: Design) -> Json:
         "data": dict(design.data),
         "outcome": _outcome(design),
         "budget": _budget(design),
-        "cautions": [
-            {"name": name, "sentence": REGISTRY.cautions[name].sentence}
-            for name in design.cautions()
-        ],
+        "cautions": _cautions(design),
         "sources": _sources(design),
     }
+
+
+def _cautions(design: Design) -> list[Json]:
+    """The model's cautions that hold here, and those of the records the values came from."""
+    model = [(name, REGISTRY.cautions[name].sentence) for name in design.cautions()]
+    return [
+        {"name": name, "sentence": sentence}
+        for name, sentence in (*model, *record_cautions(design))
+    ]
 
 
 def _spread(name: str, spread: Spread) -> Json:
@@ -194,7 +204,11 @@ def save_design(design: Design | Mapping[str, Any], path: str | os.PathLike[str]
         unfinished.chmod(target.stat().st_mode & 0o777 if target.exists() else 0o644)
         os.replace(unfinished, target)  # noqa: PTH105  # os's own name says that it is atomic
     except OSError as error:
-        raise RecordError(f"the design was not saved to {target.name}: {error.strerror}") from error
+        raise RecordError(
+            f"the design was not saved to {quoted(target.name)}: {error.strerror}"
+        ) from error
+    except ValueError as error:  # a path that no file system takes
+        raise RecordError(f"the design was not saved to {quoted(target.name)}: {error}") from error
     finally:
         if unfinished is not None:
             unfinished.unlink(missing_ok=True)
@@ -216,7 +230,9 @@ def load_design(path: str | os.PathLike[str]) -> Design:
             )
         content = target.read_bytes()
     except OSError as error:
-        raise RecordError(f"{target.name} cannot be read: {error.strerror}") from error
+        raise RecordError(f"{quoted(target.name)} cannot be read: {error.strerror}") from error
+    except ValueError as error:  # a path that no file system takes
+        raise RecordError(f"{quoted(target.name)} cannot be read: {error}") from error
     return design_from(content, target.name)
 
 
@@ -230,7 +246,7 @@ def design_from(content: bytes, name: str = "the record") -> Design:
         raise RecordError(f"{name} is no design record: {found}")
     try:
         return _design(record)
-    except (InputError, WholeError) as error:
+    except (InputError, WholeError, RecordError) as error:
         raise RecordError(f"{name} holds what cannot be: {error}") from error
 
 
@@ -312,9 +328,7 @@ def _design(record: Json) -> Design:
         point=_read_point(record["inputs"]["given"]),
         requirements=tuple(_read_requirement(entry) for entry in record["requirements"]),
         scatter={name: _read_spread(name, entry) for name, entry in record["scatter"].items()},
-        correlation={
-            pair: value_of(value, "1") for pair, value in record["correlation"].items()
-        },
+        correlation={pair: value_of(value, "1") for pair, value in record["correlation"].items()},
         unknowns={name: _read_unknown(name, entry) for name, entry in record["unknowns"].items()},
         origins={name: Origin(**entry) for name, entry in record["origins"].items()},
         name=record["name"],

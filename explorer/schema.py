@@ -8,6 +8,7 @@ from __future__ import annotations
 import json
 from functools import cache
 from importlib.resources import files
+from itertools import islice
 from pathlib import Path
 from typing import Any
 
@@ -29,7 +30,12 @@ _ANY_NUMBER: Json = {
 }
 
 
-_FAMILY_NAMES = {"1": "plain", "1/s": "per_second", "(λ/n)³": "cubic_wavelengths", "λ/n": "wavelengths"}
+_FAMILY_NAMES = {
+    "1": "plain",
+    "1/s": "per_second",
+    "(λ/n)³": "cubic_wavelengths",
+    "λ/n": "wavelengths",
+}
 
 
 def _object(properties: Json, required: list[str] | None = None, **more: Any) -> Json:
@@ -125,12 +131,16 @@ def _requirement() -> Json:
 def _step() -> Json:
     streams = {"type": "object", "additionalProperties": _NUMBER}
     factor = {"oneOf": [{"type": "null"}, _NUMBER]}
-    return _object({"step": _TEXT, "total": _with_unit("1/s"), "factor": factor, "streams": streams})
+    return _object(
+        {"step": _TEXT, "total": _with_unit("1/s"), "factor": factor, "streams": streams}
+    )
 
 
 def _open_slots() -> Json:
     """Slots that a record may carry and this version does not fill itself."""
-    interval = _object({"value": _NUMBER, "low": _NUMBER, "high": _NUMBER, "unit": _TEXT}, ["value"])
+    interval = _object(
+        {"value": _NUMBER, "low": _NUMBER, "high": _NUMBER, "unit": _TEXT}, ["value"]
+    )
     by_name: Json = {"type": "object", "additionalProperties": interval}
     table: Json = {"type": "array", "items": {"type": "object"}}
     return {
@@ -145,7 +155,9 @@ def _open_slots() -> Json:
         "headroom": {**table, "description": "what each step alone could give back"},
         "measured": {**table, "description": "fits of measured data with their intervals"},
         "bounds": {
-            **_by_input(lambda row: _object({"low": _with_unit(row.shown), "high": _with_unit(row.shown)})),
+            **_by_input(
+                lambda row: _object({"low": _with_unit(row.shown), "high": _with_unit(row.shown)})
+            ),
             "description": "bounds of a search",
         },
         "shown": {"type": "object", "description": "what the page showed"},
@@ -206,17 +218,73 @@ def shipped() -> Json:
     return loaded
 
 
+#: Errors looked at before the most telling one is named: a large file may hold a million.
+ENOUGH = 100
+
+_KINDS = {
+    "object": "set of names and values",
+    "array": "list",
+    "string": "text",
+    "number": "number",
+}
+
+
 def problems(record: Any) -> str:
     """The most telling problem of a record against the schema in one sentence; '' if none."""
     from jsonschema import Draft202012Validator
-    from jsonschema.exceptions import best_match
 
-    worst = best_match(_validator(Draft202012Validator).iter_errors(record))
+    errors = islice(_validator(Draft202012Validator).iter_errors(record), ENOUGH)
+    worst = min(errors, key=lambda error: len(error.absolute_path), default=None)
     if worst is None:
         return ""
-    place = " → ".join(str(part) for part in worst.absolute_path) or "the record"
-    message = worst.message if len(worst.message) < 160 else f"fails {worst.validator!r}"
-    return f"at {place:.120}: {message}"
+    place = " → ".join(str(part) for part in worst.absolute_path)
+    return f"at {quoted_name(place) or 'the record'}: {_in_words(worst)}"
+
+
+def quoted_name(text: str) -> str:
+    """A place or a name in a record, on one line, cut where it is long."""
+    line = "".join(sign if sign.isprintable() else "?" for sign in text)
+    return line if len(line) <= 120 else f"{line[:119]}…"
+
+
+def _as_written(value: Any) -> str:
+    """A value of a record as its file has it, cut where it is long."""
+    text = quoted_name(json.dumps(value, default=_figure, ensure_ascii=False))
+    return text if len(text) <= 60 else f"{text[:59]}…"
+
+
+def _figure(number: Any) -> int | float:
+    """A decimal of a record as JSON writes it."""
+    figure = float(number)
+    return int(figure) if figure.is_integer() else figure
+
+
+def _in_words(error: Any) -> str:
+    """What an error of the validator means, in the words of this tool."""
+    found, rule, limit = _as_written(error.instance), error.validator, error.validator_value
+    if rule == "required":
+        missing = next(name for name in limit if name not in error.instance)
+        return f"{missing!r} is missing"
+    if rule == "additionalProperties" and limit is False:
+        extra = next(name for name in error.instance if name not in error.schema["properties"])
+        return f"{quoted_name(str(extra))!r} is not known here"
+    if rule == "type":
+        return f"{found} is no {_KINDS.get(limit, limit)}"
+    if rule == "enum" and len(limit) <= 10:
+        return f"{found} is none of {', '.join(str(word) for word in limit)}"
+    if rule == "const":
+        return f"{found} is not {_as_written(limit)}"
+    if rule == "maxLength":
+        return f"the text is longer than {limit} signs"
+    if rule == "oneOf" and error.schema == _ANY_NUMBER:
+        return f"{found} is no number"
+    if rule == "oneOf" and "quantity" in error.schema.get("properties", {}):
+        return "a requirement takes at_least or at_most, one of them"
+    if rule == "oneOf" and isinstance(error.instance, dict) and "rows" in error.instance:
+        return "the table needs a known kind, the units of that kind, and rows of as many numbers"
+    if isinstance(error.instance, dict) and "unit" in error.instance:
+        return f"{found} is no number in a unit that fits"
+    return f"{found} is not known here"
 
 
 @cache
@@ -236,7 +304,3 @@ def write() -> None:
     """Write the schema out beside the data, in a clone."""
     target = Path(__file__).parent / "data" / "design.schema.json"
     target.write_text(json.dumps(schema(), indent=1, ensure_ascii=False) + "\n", encoding="utf-8")
-
-
-if __name__ == "__main__":
-    write()

@@ -116,6 +116,9 @@ class _Sampled:
     def __hash__(self) -> int:
         return self._hash
 
+    def __reduce__(self) -> tuple[Any, ...]:
+        return type(self), (self._first, self._second)
+
     def __len__(self) -> int:
         return int(self._first.size)
 

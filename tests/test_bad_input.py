@@ -41,6 +41,7 @@ from explorer import (
 )
 from explorer.evaluate import FARTHEST, shown
 from explorer.record import design_from
+from explorer.registry import parameters
 
 NUMBERS = [name for name, entry in INPUTS.items() if not entry.whole]
 CHOICES = [name for name, entry in INPUTS.items() if entry.choices]
@@ -117,20 +118,19 @@ def test_what_is_no_number(name: str, kind: str) -> None:
 def domain(name: str) -> tuple[float, float]:
     """Both ends of a domain, SI, the other inputs at their defaults."""
     entry = INPUTS[name]
-    ends = []
-    for end, without in ((entry.low, -FARTHEST), (entry.high, FARTHEST)):
-        if callable(end):
-            source = end.__kwdefaults__ or {}
-            del source
-            needed = end.__annotations__.keys() - {"return"}
-            end = end(**{key: INPUTS[key].default for key in needed})
-        ends.append(end if math.isfinite(end) else without)
-    return ends[0], ends[1]
+    low, high = (_end(end) for end in (entry.low, entry.high))
+    return max(low, -FARTHEST), min(high, FARTHEST)
+
+
+def _end(end: Any) -> float:
+    if not callable(end):
+        return float(end)
+    return float(end(**{key: INPUTS[key].default for key in parameters(end)}))
 
 
 OUTSIDE: dict[str, Callable[[str], float]] = {
-    "not-a-number": lambda name: math.nan,
-    "minus infinity": lambda name: -math.inf,
+    "not-a-number": lambda _: math.nan,
+    "minus infinity": lambda _: -math.inf,
     "far below": lambda name: domain(name)[0] - 1.0 - abs(domain(name)[0]),
     "far above": lambda name: 3 * domain(name)[1] + 1.0,
     "just below": lambda name: float(np.nextafter(domain(name)[0], -math.inf)),
@@ -599,23 +599,23 @@ def swap(old: str, new: str) -> Callable[[str], bytes]:
 LIFETIME = "inputs/given/lifetime"
 LINES = "inputs/given/spectrum/value"
 RECORDS: dict[str, tuple[Callable[[str], bytes], tuple[str, ...]]] = {
-    "empty": (lambda text: b"", ("not JSON", "line 1")),
-    "spaces": (lambda text: b" \n ", ("not JSON",)),
+    "empty": (lambda _: b"", ("not JSON", "line 1")),
+    "spaces": (lambda _: b" \n ", ("not JSON",)),
     "cut off": (lambda text: text[: len(text) // 2].encode(), ("not JSON", "line")),
     "cut off by one sign": (lambda text: text.rstrip()[:-1].encode(), ("not JSON",)),
     "more behind the end": (lambda text: (text + "}").encode(), ("not JSON",)),
     "two records": (lambda text: (text + text).encode(), ("not JSON",)),
-    "another language": (lambda text: b"<html><body>hello</body></html>", ("not JSON", "line 1")),
+    "another language": (lambda _: b"<html><body>hello</body></html>", ("not JSON", "line 1")),
     "a comment": (lambda text: ("// saved\n" + text).encode(), ("not JSON",)),
     "single quotes": (lambda text: text.replace('"', "'").encode(), ("not JSON",)),
-    "not UTF-8": (lambda text: b'{"name": "\xff\xfe"}', ("UTF-8", "byte 10")),
+    "not UTF-8": (lambda _: b'{"name": "\xff\xfe"}', ("UTF-8", "byte 10")),
     "UTF-16": (lambda text: text.encode("utf-16"), ("UTF-8",)),
-    "a picture": (lambda text: b"\x89PNG\r\n\x1a\n" + bytes(range(256)), ("UTF-8",)),
-    "zero bytes": (lambda text: b"\x00" * 100, ("not JSON",)),
-    "a number": (lambda text: b"42", ("no design record",)),
+    "a picture": (lambda _: b"\x89PNG\r\n\x1a\n" + bytes(range(256)), ("UTF-8",)),
+    "zero bytes": (lambda _: b"\x00" * 100, ("not JSON",)),
+    "a number": (lambda _: b"42", ("no design record",)),
     "a list": (lambda text: f"[{text}]".encode(), ("no design record",)),
-    "null": (lambda text: b"null", ("no design record",)),
-    "an empty object": (lambda text: b"{}", ("no design record", "format")),
+    "null": (lambda _: b"null", ("no design record",)),
+    "an empty object": (lambda _: b"{}", ("no design record", "format")),
     "another format": (put("format", "a shopping list"), ("format",)),
     "a later version": (put("version", 2), ("version", "2", "reads version 1")),
     "an earlier version": (put("version", 0), ("version", "0")),
@@ -691,11 +691,11 @@ RECORDS: dict[str, tuple[Callable[[str], bytes], tuple[str, ...]]] = {
     "a written control character": (put("note", "a\x00b"), ("control",)),
     "half a sign": (put("note", "a\ud800b"), ("sign",)),
     "a number for a text": (put("name", 5), ("name",)),
-    "nested deeply": (lambda text: b"[" * 100_000 + b"]" * 100_000, ("nested deeper",)),
+    "nested deeply": (lambda _: b"[" * 100_000 + b"]" * 100_000, ("nested deeper",)),
     "nested deeply in a slot": (put("shown", json.loads('{"a":' * 60 + "1" + "}" * 60)), ("nested deeper",)),
-    "nested deeply and cut off": (lambda text: b'{"a":' * 100_000, ("nested deeper",)),
-    "50 MB": (lambda text: b" " * 50_000_000, ("50 MB", "20 MB")),
-    "19 MB of nothing": (lambda text: b" " * 19_000_000, ("not JSON",)),
+    "nested deeply and cut off": (lambda _: b'{"a":' * 100_000, ("nested deeper",)),
+    "50 MB": (lambda _: b" " * 50_000_000, ("50 MB", "20 MB")),
+    "19 MB of nothing": (lambda _: b" " * 19_000_000, ("not JSON",)),
     "a million parts": (put("data", {str(i): 1 for i in range(100_000)}), ("data",)),
 }  # fmt: skip
 KINDS |= {f"record: {kind}" for kind in RECORDS}

@@ -57,7 +57,9 @@ def plane_waves(radius: float, theta: Array, phi: Array) -> Array:
     kx = 2 * np.pi * np.sin(theta)[:, None] * np.cos(phi)
     ky = 2 * np.pi * np.sin(theta)[:, None] * np.sin(phi)
     # The sum over the grid x, y of field·exp(−i(kx x + ky y)): a product, for the field is one.
-    ex = (np.exp(-1j * kx[..., None] * axis) @ profile) * (np.exp(-1j * ky[..., None] * axis) @ profile)
+    ex = (np.exp(-1j * kx[..., None] * axis) @ profile) * (
+        np.exp(-1j * ky[..., None] * axis) @ profile
+    )
     kz = 2 * np.pi * np.cos(theta)[:, None]
     ez = -kx * ex / kz  # transverse
     return (np.abs(ex) ** 2 + np.abs(ez) ** 2) * np.cos(theta)[:, None] ** 2
@@ -84,7 +86,13 @@ def whole_power(radius: float) -> float:
 def test_collection_and_directivity(radius: float, index: float) -> None:
     worst = 0.0
     for share in (0.1, 0.5, 0.9, 0.99):
-        point = point_of(radius, index, numerical_aperture=share * index, reference_side="glass", upward_share=0.7)
+        point = point_of(
+            radius,
+            index,
+            numerical_aperture=share * index,
+            reference_side="glass",
+            upward_share=0.7,
+        )
         if share * index > 1.52:
             continue
         found = explorer.evaluate(point, ["collected_share", "directivity"])
@@ -129,7 +137,9 @@ def test_wide_aperture_is_a_gaussian_beam(radius: float) -> None:
     spread = 1 / (np.pi * radius)
     for ratio in (0.3, 1.0, 1.7):
         point = point_of(radius, numerical_aperture=ratio * spread)
-        found = explorer.evaluate(point, ["divergence", "half_angle", "collected_share", "directivity"])
+        found = explorer.evaluate(
+            point, ["divergence", "half_angle", "collected_share", "directivity"]
+        )
         assert found["divergence"] == pytest.approx(spread, rel=spread**2)
         assert found["half_angle"] == pytest.approx(spread * np.sqrt(np.log(2) / 2), rel=spread**2)
         expected = -np.expm1(-2 * ratio**2)
@@ -141,7 +151,9 @@ def test_wide_aperture_is_a_gaussian_beam(radius: float) -> None:
 def test_narrow_aperture_is_a_dipole(aperture: float) -> None:
     """An in-plane dipole, half up: directivity 1.5, collected (4 − 3c − c³)/4 of the upward light."""
     point = point_of(1e-7, numerical_aperture=aperture)
-    found = explorer.evaluate(point, ["directivity", "collected_share", "dipole_collected", "half_angle", "divergence"])
+    found = explorer.evaluate(
+        point, ["directivity", "collected_share", "dipole_collected", "half_angle", "divergence"]
+    )
     with mp.workdps(40):
         c = mp.sqrt(1 - mp.mpf(aperture) ** 2)
         expected = float((4 - 3 * c - c**3) / 4)
@@ -210,7 +222,14 @@ def pupil_overlap(
     return float(abs(overlap) ** 2 / (light * np.pi * fibre**2 / 2))
 
 
-def fibre_case(radius: float, index: float, aperture: float, fibre_radius: float, magnification: float, offset: float) -> tuple[dict[str, Any], dict[str, float]]:
+def fibre_case(
+    radius: float,
+    index: float,
+    aperture: float,
+    fibre_radius: float,
+    magnification: float,
+    offset: float,
+) -> tuple[dict[str, Any], dict[str, float]]:
     """A point, and the numbers of its pupil."""
     point = point_of(
         radius, index, numerical_aperture=aperture, destination="fibre", fibre_mode_radius=fibre_radius,
@@ -218,7 +237,11 @@ def fibre_case(radius: float, index: float, aperture: float, fibre_radius: float
     )  # fmt: skip
     wave = 2 * np.pi * index / WAVELENGTH
     # A fibre mode exp(−r²/wf²), seen from the source side wf/M wide, has the transform exp(−(k wf t/2M)²).
-    numbers = {"sine": aperture / index, "fibre": 2 * magnification / (wave * fibre_radius), "shift": wave * offset / magnification}
+    numbers = {
+        "sine": aperture / index,
+        "fibre": 2 * magnification / (wave * fibre_radius),
+        "shift": wave * offset / magnification,
+    }
     return point, numbers
 
 
@@ -249,7 +272,9 @@ def test_fibre_share_in_a_two_dimensional_pupil(case: tuple[float, ...]) -> None
     found = explorer.evaluate(point, NAMES)
     expected = pupil_overlap(pattern_amplitude(case[0]), **numbers)
     other = pupil_overlap(lambda theta: np.sqrt((1 + np.cos(theta) ** 2) / 2), **numbers)
-    print(f"fibre {found['fibre_share'] / expected - 1:.1e}, other {found['other_fibre_share'] / other - 1:.1e}")
+    print(
+        f"fibre {found['fibre_share'] / expected - 1:.1e}, other {found['other_fibre_share'] / other - 1:.1e}"
+    )
     assert found["fibre_share"] == pytest.approx(expected, rel=1e-12, abs=1e-15)
     assert found["other_fibre_share"] == pytest.approx(other, rel=1e-12, abs=1e-15)
 
@@ -257,16 +282,20 @@ def test_fibre_share_in_a_two_dimensional_pupil(case: tuple[float, ...]) -> None
 @cache
 def best_fibre(radius: float, sine: float) -> float:
     """The largest share that a fibre of any size takes of a pattern cut by the pupil."""
-    x, weights = gauss(0, np.pi / 2, 200)
+    x, _ = gauss(0, np.pi / 2, 200)
     theta = np.arcsin(sine * np.sin(x))
     known = np.sqrt(averaged(radius, theta))
 
     def loss(logarithm: float) -> float:
         fibre = float(np.exp(logarithm))
-        return -pupil_overlap(lambda _: known, sine=sine, fibre=fibre, shift=0.0, rings=200, spokes=1)
+        return -pupil_overlap(
+            lambda _: known, sine=sine, fibre=fibre, shift=0.0, rings=200, spokes=1
+        )
 
     middle = np.log(min(sine, 1 / (np.pi * radius)))
-    found = minimize_scalar(loss, bounds=(middle - 2, middle + 2), method="bounded", options={"xatol": 1e-6})
+    found = minimize_scalar(
+        loss, bounds=(middle - 2, middle + 2), method="bounded", options={"xatol": 1e-6}
+    )
     return -float(found.fun)
 
 
@@ -276,7 +305,13 @@ def test_default_magnification_is_near_the_best(radius: float, index: float) -> 
     """Within 0.3 % of the best size of fibre mode, found by search without an offset."""
     worst = 0.0
     for sine in (0.1, 0.3, 0.5, 0.7, 0.9):
-        point = point_of(radius, index, numerical_aperture=sine * index, destination="fibre", reference_side="glass")
+        point = point_of(
+            radius,
+            index,
+            numerical_aperture=sine * index,
+            destination="fibre",
+            reference_side="glass",
+        )
         found = explorer.evaluate(point, ["fibre_share"])["fibre_share"]
         best = best_fibre(radius, sine)
         worst = max(worst, 1 - found / best)
@@ -319,10 +354,14 @@ def test_given_pattern_agrees_with_the_gaussian_path(radius: float, count: int) 
     pattern = explorer.Pattern(angles, averaged(radius, np.minimum(angles, np.pi / 2 - 1e-9)))
     wanted = ["collected_share", "directivity", "half_angle", "divergence", "fibre_share"]
     tolerance = 0.5 * (1 + (2 * np.pi * radius) ** 2) * (np.pi / 2 / count) ** 2
-    point = point_of(radius, numerical_aperture=0.6, destination="fibre", fibre_offset=0.5e-6, magnification=12.0)
+    point = point_of(
+        radius, numerical_aperture=0.6, destination="fibre", fibre_offset=0.5e-6, magnification=12.0
+    )
     mine, given = (explorer.evaluate(p, wanted) for p in (point, point | {"pattern": pattern}))
     worst = max(abs(given[name] / mine[name] - 1) for name in wanted)
-    print(f"given pattern of {count} samples, radius {radius}: worst {worst:.1e}, allowed {tolerance:.1e}")
+    print(
+        f"given pattern of {count} samples, radius {radius}: worst {worst:.1e}, allowed {tolerance:.1e}"
+    )
     for name in wanted:
         grazing = name in {"half_angle", "divergence"} and mine[name] > 1.5
         assert given[name] == pytest.approx(mine[name], rel=1e-3 if grazing else tolerance), name

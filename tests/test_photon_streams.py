@@ -19,6 +19,8 @@ import mpmath as mp
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from scipy.constants import speed_of_light
+from scipy.optimize import brentq
 
 import explorer
 from explorer.physics.photons import both_decays, occupations, period_decay
@@ -50,11 +52,31 @@ PULSED: tuple[dict[str, Any], ...] = (
     {"biexciton_yield": 0.2, "bright_share": 0.6, "background_per_pulse": 0.05},
     {"biexciton_yield": 0.05, "background_per_pulse": 0.2},
     {"biexciton_yield": 0.7, "repetition_rate": 3e8, "excitations_per_pulse": 0.8},
-    {"biexciton_yield": 0.4, "repetition_rate": 1e9, "excitations_per_pulse": 0.5, "bright_share": 0.8},
-    {"biexciton_yield": 0.0, "repetition_rate": 5e8, "excitations_per_pulse": 2.0, "background_per_pulse": 0.1},
-    {"biexciton_yield": 1.0, "biexciton_rate_ratio": 0.3, "repetition_rate": 2e8, "quality_factor": 20.0},
+    {
+        "biexciton_yield": 0.4,
+        "repetition_rate": 1e9,
+        "excitations_per_pulse": 0.5,
+        "bright_share": 0.8,
+    },
+    {
+        "biexciton_yield": 0.0,
+        "repetition_rate": 5e8,
+        "excitations_per_pulse": 2.0,
+        "background_per_pulse": 0.1,
+    },
+    {
+        "biexciton_yield": 1.0,
+        "biexciton_rate_ratio": 0.3,
+        "repetition_rate": 2e8,
+        "quality_factor": 20.0,
+    },
     {"biexciton_yield": 0.5, "biexciton_shift": 6e-9, "filter_width": 8e-9},
-    {"biexciton_yield": 0.8, "destination": "fibre", "optics_transmission": 0.9, "fibre_mode_radius": 2e-6},
+    {
+        "biexciton_yield": 0.8,
+        "destination": "fibre",
+        "optics_transmission": 0.9,
+        "fibre_mode_radius": 2e-6,
+    },
     {"biexciton_yield": 0.3, "radiative_share": 0.7, "quenching": 0.8, "detector_efficiency": 0.85},
     {"biexciton_yield": 0.5, "other_modes": 0.0, "quantum_yield": 0.5, "bulk_rate_ratio": 1.4},
 )
@@ -62,7 +84,12 @@ CONTINUOUS: tuple[dict[str, Any], ...] = (
     {"biexciton_yield": 0.0, "saturation": 1.0, "background_rate": 2e6},
     {"biexciton_yield": 0.3, "saturation": 0.2},
     {"biexciton_yield": 1.0, "saturation": 3.0},
-    {"biexciton_yield": 0.5, "saturation": 1.0, "biexciton_rate_ratio": 0.5, "background_rate": 1e7},
+    {
+        "biexciton_yield": 0.5,
+        "saturation": 1.0,
+        "biexciton_rate_ratio": 0.5,
+        "background_rate": 1e7,
+    },
     {"biexciton_yield": 0.2, "saturation": 0.5, "bright_share": 0.7, "background_rate": 5e6},
     {"biexciton_yield": 0.7, "saturation": 10.0, "bulk_rate_ratio": 0.7, "quenching": 0.4},
     {"biexciton_yield": 0.9, "saturation": 0.3, "biexciton_shift": 6e-9, "filter_width": 8e-9},
@@ -107,17 +134,21 @@ def as_emitter(point: Point) -> dict[str, Any]:
     lifetime = point["lifetime"] * share / (ratio * point["quantum_yield"])
     centre = 650e-9 + point.get("biexciton_shift", 0.0)
     dephasing = explorer.evaluate(point, ["pure_dephasing"])["pure_dephasing"]
-    # Width in wavelength that gives the exciton's dephasing beside the biexciton's own decay.
-    from scipy.constants import speed_of_light
-    from scipy.optimize import brentq
 
+    # Width in wavelength that gives the exciton's dephasing beside the biexciton's own decay.
     def excess(width: float) -> float:
         angular = 2 * np.pi * speed_of_light * width / (centre**2 - width**2 / 4)
         return angular - 1 / lifetime - dephasing
 
     own = {"lifetime": lifetime, "quantum_yield": share, "biexciton_yield": 0.0}
     width = brentq(excess, 0, 0.5 * centre, xtol=1e-25, rtol=1e-15)
-    return {**point, **own, "emission_wavelength": centre, "resonance_wavelength": 650e-9, "fast_linewidth": width}
+    return {
+        **point,
+        **own,
+        "emission_wavelength": centre,
+        "resonance_wavelength": 650e-9,
+        "fast_linewidth": width,
+    }
 
 
 def both_odds(point: Point) -> tuple[Odds, Odds]:
@@ -187,11 +218,13 @@ def simulate_pulses(
     return Counts(decays, photons), seen
 
 
-def simulate_pump(random: np.random.Generator, point: Point, *, emitters: int, lifetimes: float) -> tuple[Counts, Array, float]:
-    """Counts per emitter in a time window; expected and squared rates after a click; the window [s].
+def simulate_pump(
+    random: np.random.Generator, point: Point, *, emitters: int, lifetimes: float
+) -> tuple[Counts, Array, float]:
+    """Counts per emitter, the sums for g²(0) and the clicks (2, emitters), and the time window [s].
 
     The delay-zero rate is found without a bin width: after each detected photon the next one's rate
-    is known from the state it leaves. (2, emitters): the sum of those rates, and the clicks.
+    is known from the state it leaves, and those rates are summed.
     """
     exciton, biexciton = both_odds(point)
     pump = point["saturation"] * exciton.rate
@@ -208,7 +241,9 @@ def simulate_pump(random: np.random.Generator, point: Point, *, emitters: int, l
     rise = np.array([pump, pump, 0.0])
     instant = np.isinf(decay[2])
     while np.any(running := bright & (time < start + window)):
-        fall = np.where(state == 2, 0.0 if instant else decay[2], np.where(state == 1, decay[1], 0.0))
+        fall = np.where(
+            state == 2, 0.0 if instant else decay[2], np.where(state == 1, decay[1], 0.0)
+        )
         total = fall + rise[state]
         gone = random.exponential(1, emitters) / total
         until = np.where(running, np.minimum(time + gone, start + window), time)
@@ -244,7 +279,9 @@ def simulate_pump(random: np.random.Generator, point: Point, *, emitters: int, l
 
 def total_chance(odds: Odds) -> float:
     """Detected photons per decay."""
-    return sum(way * float(np.prod(steps)) for way, steps in zip(odds.ways, odds.steps, strict=True))
+    return sum(
+        way * float(np.prod(steps)) for way, steps in zip(odds.ways, odds.steps, strict=True)
+    )
 
 
 # --- comparison ----------------------------------------------------------------------------------
@@ -273,7 +310,11 @@ def away_from_zero(samples: Array) -> float:
 def compare_budget(point: Point, counts: Counts, seconds: float) -> dict[str, float]:
     """Every entry of the budget's table, in standard errors."""
     table = explorer.budget(point)
-    found = {"decays": away(counts.decays.sum(axis=0) / seconds, table.loc["excited and decayed", "total"])}
+    found = {
+        "decays": away(
+            counts.decays.sum(axis=0) / seconds, table.loc["excited and decayed", "total"]
+        )
+    }
     for step, name in enumerate(STEPS):
         for stream, column in enumerate(STREAMS):
             photons = counts.photons[stream, step] / seconds
@@ -297,7 +338,9 @@ def test_pulses(index: int) -> None:
     counts, seen = simulate_pulses(random, point, emitters=12000, pulses=pulses)
     rate = point.get("repetition_rate", 10e6)
     found = compare_budget(point, counts, pulses / rate)
-    wanted = explorer.evaluate(point, ["g2_zero", "rate_detected", "overlapping_pulses", "device_lifetime"])
+    wanted = explorer.evaluate(
+        point, ["g2_zero", "rate_detected", "overlapping_pulses", "device_lifetime"]
+    )
     far = int(np.ceil(12 * wanted["device_lifetime"] * rate)) if wanted["overlapping_pulses"] else 1
     assert far < pulses / 2
     same = (seen * (seen - 1))[:-far].mean(axis=0)
@@ -333,7 +376,9 @@ def test_continuous_pump(index: int) -> None:
 # --- exact relations -----------------------------------------------------------------------------
 
 
-@pytest.mark.parametrize("extra", [*PULSED, *({"pumping": "continuous", **row} for row in CONTINUOUS)])
+@pytest.mark.parametrize(
+    "extra", [*PULSED, *({"pumping": "continuous", **row} for row in CONTINUOUS)]
+)
 def test_budget_adds_up(extra: Point) -> None:
     """Streams sum to totals, factors multiply to the end rate, named rates are rows of the table."""
     point = BASE | dict(extra)
@@ -342,9 +387,13 @@ def test_budget_adds_up(extra: Point) -> None:
     streams = table[list(STREAMS)].iloc[2:].to_numpy()
     totals = table["total"].to_numpy()
     assert streams.sum(axis=1) == pytest.approx(totals[2:], rel=1e-12)
-    assert totals[0] * np.prod(table["factor"].to_numpy()[1:]) == pytest.approx(totals[-1], rel=1e-12)
+    assert totals[0] * np.prod(table["factor"].to_numpy()[1:]) == pytest.approx(
+        totals[-1], rel=1e-12
+    )
     assert totals[-1] == pytest.approx(rates["rate_detected"], rel=1e-12)
-    assert table.loc["inside the aperture", "total"] == pytest.approx(rates["rate_at_lens"], rel=1e-12)
+    assert table.loc["inside the aperture", "total"] == pytest.approx(
+        rates["rate_at_lens"], rel=1e-12
+    )
     assert table.loc["in the fibre", "total"] == pytest.approx(rates["rate_in_fibre"], rel=1e-12)
 
 
@@ -392,10 +441,7 @@ def test_g2_of_a_perfect_emitter_in_background() -> None:
 def exact_decays(x: float, y: float) -> tuple[mp.mpf, ...]:
     """1−e^−x, 1−e^−y, BX and B0 over a period, at the working precision."""
     x, y = mp.mpf(x), mp.mpf(y)
-    if x == y:
-        one = y * mp.exp(-y)
-    else:
-        one = y * (mp.exp(-x) - mp.exp(-y)) / (y - x)
+    one = y * mp.exp(-y) if x == y else y * (mp.exp(-x) - mp.exp(-y)) / (y - x)
     gone_b = -mp.expm1(-y)
     return -mp.expm1(-x), gone_b, one, gone_b - one
 
@@ -421,7 +467,9 @@ RATES = [10.0**power for power in range(-8, 9, 2)]
 def chain_points() -> list[tuple[float, float, float]]:
     """Mean, kX T and kB T: from 1e-8 to 1e8, equal, and nearly equal."""
     pairs = [(x, y) for x in RATES for y in RATES]
-    pairs += [(x, x * (1 + near)) for x in (*RATES, 0.3, 2.9, 3.1) for near in (1e-12, -1e-9, 1e-5, 1e-2)]
+    pairs += [
+        (x, x * (1 + near)) for x in (*RATES, 0.3, 2.9, 3.1) for near in (1e-12, -1e-9, 1e-5, 1e-2)
+    ]
     return [(mean, x, y) for mean in (1e-6, 1e-2, 1.0, 20.0) for x, y in pairs]
 
 
@@ -461,13 +509,19 @@ def test_stationary_chain_against_an_eigenvector() -> None:
                 gone, gone_b, one, both = (float(value) for value in exact_decays(x, y))
                 none = np.exp(-mean)
                 single = mean * none
-                pulse_ = np.array([[none, single, 1 - none - single], [0, none, 1 - none], [0, 0, 1]])
+                pulse_ = np.array(
+                    [[none, single, 1 - none - single], [0, none, 1 - none], [0, 0, 1]]
+                )
                 decay = np.array([[1, 0, 0], [gone, 1 - gone, 0], [both, one, 1 - gone_b]])
                 values, vectors = np.linalg.eig((decay @ pulse_).T)
                 vector = vectors[:, np.argmax(values.real)].real
                 vector /= vector.sum()
                 ours = occupations(
                     excitations_per_pulse=mean,
-                    period_decay=period_decay(exciton_rate=x, biexciton_rate=y, repetition_rate=1.0),
+                    period_decay=period_decay(
+                        exciton_rate=x, biexciton_rate=y, repetition_rate=1.0
+                    ),
                 )
-                assert (float(ours[0]), float(ours[1])) == pytest.approx(tuple(vector[1:]), rel=1e-10)
+                assert (float(ours[0]), float(ours[1])) == pytest.approx(
+                    tuple(vector[1:]), rel=1e-10
+                )

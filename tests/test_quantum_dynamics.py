@@ -59,7 +59,9 @@ def rates_of(point: dict[str, float]) -> Rates:
     """From the definitions: rates over the bulk radiative rate, Purcell's coupling, placement."""
     x = {name: mp.mpf(float(value)) for name, value in point.items()}
     radiative = x["bulk_rate_ratio"] * x["quantum_yield"] / x["lifetime"]
-    elsewhere = radiative * (x["other_modes"] + x["quenching"]) + (1 - x["quantum_yield"]) / x["lifetime"]
+    elsewhere = (
+        radiative * (x["other_modes"] + x["quenching"]) + (1 - x["quantum_yield"]) / x["lifetime"]
+    )
     middle, half = x["emission_wavelength"], x["fast_linewidth"] / 2
     width = angular(middle - half) - angular(middle + half) if half else mp.mpf(0)
     dephasing = max(width - 1 / x["lifetime"], mp.mpf(0))
@@ -75,7 +77,13 @@ def rates_of(point: dict[str, float]) -> Rates:
         angular(x["filter_centre"] + sign * x["filter_width"] / 2) - resonance for sign in (1, -1)
     )
     return Rates(
-        coupling, elsewhere, dephasing, leak, angular(middle) - resonance, x["other_modes"] * radiative, edges
+        coupling,
+        elsewhere,
+        dephasing,
+        leak,
+        angular(middle) - resonance,
+        x["other_modes"] * radiative,
+        edges,
     )
 
 
@@ -99,7 +107,8 @@ def draw(random: np.random.Generator) -> dict[str, float]:
         "fast_linewidth": random.choice([0.0, width, width, width]),
         "dipole_alignment": random.choice([1.0, 1 / 3, random.uniform(0.01, 1)]),
         "bulk_rate_ratio": 10 ** random.uniform(-1, 1),
-        "resonance_wavelength": wavelength + random.choice([0, -1, 1, 1]) * min(spread, 0.3 * wavelength),
+        "resonance_wavelength": wavelength
+        + random.choice([0, -1, 1, 1]) * min(spread, 0.3 * wavelength),
         "quality_factor": quality,
         "mode_volume": volume,
         "refractive_index": index,
@@ -118,7 +127,9 @@ def with_filter(point: dict[str, float], rates: Rates, random: np.random.Generat
     scale = float(random.choice(np.array([float(value) for value in scales])))
     width = scale / per_metre * 10 ** random.uniform(-2, 2)
     shift = float(random.choice(np.array([0.0, float(rates.detuning), scale]))) / per_metre
-    shift = float(np.clip(shift, -0.4 * point["resonance_wavelength"], 0.4 * point["resonance_wavelength"]))
+    shift = float(
+        np.clip(shift, -0.4 * point["resonance_wavelength"], 0.4 * point["resonance_wavelength"])
+    )
     point["filter_width"] = float(np.clip(width, 1e-20, 0.8 * point["resonance_wavelength"]))
     point["filter_centre"] = point["resonance_wavelength"] - shift
 
@@ -128,7 +139,9 @@ def regime_of(rates: Rates) -> str | None:
     coherence = rates.elsewhere + rates.dephasing
     if rates.coupling > rates.leak * 1e8 or abs(rates.detuning) > 1e6 * (rates.leak + coherence):
         return None
-    if rates.elsewhere > 0 and rates.coupling**2 < 1e-12 * rates.elsewhere * (rates.leak + coherence):
+    if rates.elsewhere > 0 and rates.coupling**2 < 1e-12 * rates.elsewhere * (
+        rates.leak + coherence
+    ):
         return None  # no light through the mode to speak of
     if abs(rates.detuning) > rates.leak + coherence + 2 * rates.coupling:
         return "detuned"
@@ -346,7 +359,9 @@ def test_outgoing_light_inside_a_filter() -> None:
             assert found < FILTER + rounding
             rounded += rounding > FILTER
             worst = max(worst, found if rounding < FILTER else 0.0)
-    print(f"filter_share: worst {worst:.2e}; limited by the rounding of its edges at {rounded} points")
+    print(
+        f"filter_share: worst {worst:.2e}; limited by the rounding of its edges at {rounded} points"
+    )
     assert rounded < 10
     assert worst < FILTER
 
@@ -359,7 +374,9 @@ def test_outgoing_spectrum_and_windows_without_wavelengths() -> None:
         for (_, rates, _), truth in zip(points(), references(), strict=True):
             scale = rates.leak + rates.elsewhere + rates.dephasing + rates.coupling
             near = [mp.mpf(0), rates.detuning, rates.coupling][random.integers(3)]
-            low = float(near + scale * mp.mpf(random.normal()) * mp.mpf(10) ** random.uniform(-3, 1))
+            low = float(
+                near + scale * mp.mpf(random.normal()) * mp.mpf(10) ** random.uniform(-3, 1)
+            )
             high = low + float(scale) * 10 ** random.uniform(-3, 1)
             numbers = {
                 "kappa": float(rates.leak),
@@ -369,7 +386,9 @@ def test_outgoing_spectrum_and_windows_without_wavelengths() -> None:
             }
             density = outgoing_density(frequency=low, **numbers)
             share = outgoing_window(lower=low, upper=high, **numbers)
-            worst_density = max(worst_density, difference(float(density), truth.density(mp.mpf(low))))
+            worst_density = max(
+                worst_density, difference(float(density), truth.density(mp.mpf(low)))
+            )
             expected = truth.light(mp.mpf(low), mp.mpf(high))
             worst_window = max(worst_window, difference(float(share), expected))
     print(f"density: worst {worst_density:.2e}; window: worst {worst_window:.2e}")
@@ -412,7 +431,9 @@ def test_linear_solves_agree_with_the_librarys_time_evolution(numbers: tuple[flo
         hamiltonian, EXCITED * EXCITED.dag(), times, collapse,
         e_ops=[UP, PHOTON * PHOTON.dag()], options=options,
     )  # fmt: skip
-    for trace, expected in zip(evolved.expect, (truth.excited_time, truth.photon_time), strict=True):
+    for trace, expected in zip(
+        evolved.expect, (truth.excited_time, truth.photon_time), strict=True
+    ):
         assert simpson(trace, x=times) == pytest.approx(float(expected), rel=1e-7)
 
 

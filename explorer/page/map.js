@@ -284,6 +284,24 @@ function cellPixels(picture, theme, pixels) {
   else linearPixels(data, colour, theme.table, put);
 }
 
+// Indices of the points that a path needs to stay within an eighth of a pixel of its course.
+// Iso-lines come with a point a cell, and stroking them all costs more than the rest of a redraw.
+function cornersOf(xs, ys) {
+  const kept = xs.length ? [0] : [];
+  let anchor = 0;
+  for (let i = 2; i < xs.length; i++) {
+    const [dx, dy] = [xs[i] - xs[anchor], ys[i] - ys[anchor]];
+    const limit = 0.12 * Math.hypot(dx, dy);
+    let straight = i - anchor < 40;
+    for (let k = anchor + 1; straight && k < i; k++) {
+      straight = Math.abs(dx * (ys[k] - ys[anchor]) - dy * (xs[k] - xs[anchor])) <= limit;
+    }
+    if (!straight) kept.push(anchor = i - 1);
+  }
+  if (xs.length > 1) kept.push(xs.length - 1);
+  return kept;
+}
+
 // ---------------------------------------------------------------- labels that don't collide
 
 class Places {
@@ -666,20 +684,14 @@ class MapView {
     pen.stroke();
   }
 
-  // Points closer than 2 px to the last one are left out: they cost more than all the rest
   trace(pen, line) {
     const { points, starts } = this.picture.data;
     pen.beginPath();
     for (let path = line.first; path < line.first + line.count; path++) {
-      let [px, py] = [0, 0];
-      const last = starts[path + 1] - 1;
-      for (let i = starts[path]; i <= last; i++) {
-        const [x, y] = [this.toX(points[2 * i]), this.toY(points[2 * i + 1])];
-        if (i === starts[path]) pen.moveTo(x, y);
-        else if (i === last || Math.abs(x - px) + Math.abs(y - py) > 2) pen.lineTo(x, y);
-        else continue;
-        [px, py] = [x, y];
-      }
+      const [first, end] = [starts[path], starts[path + 1]];
+      const xs = [], ys = [];
+      for (let i = first; i < end; i++) { xs.push(this.toX(points[2 * i])); ys.push(this.toY(points[2 * i + 1])); }
+      cornersOf(xs, ys).forEach((i, k) => (k ? pen.lineTo(xs[i], ys[i]) : pen.moveTo(xs[i], ys[i])));
     }
   }
 
@@ -709,7 +721,6 @@ class MapView {
 
   paintLines(pen) {
     const { theme, picture } = this;
-    pen.lineJoin = "bevel"; // as good as round on finely divided lines, and much quicker
     const stroke = (colour, width) => { pen.strokeStyle = colour; pen.lineWidth = width; pen.stroke(); };
     const ofKind = (kind, layer) => (this.shows(layer) ? picture.lines.filter((line) => line.kind === kind) : []);
     for (const line of ofKind("iso", "iso")) {

@@ -15,7 +15,13 @@ from .coupling import CIRCLE, angular_width
     "The coupling exceeds the resonance frequency: the model has no number here.",
     label="coupling beyond the model",
     about=("coupling_rate",),
-    voids=("exchange_rate", "resonant_rate", "strong_ratio", "splitting_ratio", "mode_light_window"),
+    voids=(
+        "exchange_rate",
+        "resonant_rate",
+        "strong_ratio",
+        "splitting_ratio",
+        "mode_light_window",
+    ),
 )
 def coupling_beyond_model(*, coupling_rate: Any, resonance_wavelength: Any) -> Any:
     """g above ωc."""
@@ -159,9 +165,7 @@ def unknown_light_of_lines(*, spectrum: Any) -> Any:
     label="several resonances",
     about=("spectral_overlap",),
 )
-def several_resonances(
-    *, emission_width: Any, mode_length: Any, resonance_wavelength: Any
-) -> Any:
+def several_resonances(*, emission_width: Any, mode_length: Any, resonance_wavelength: Any) -> Any:
     """Linewidth above the mode spacing λ/(2L), L in λ/n, of a standing wave."""
     return emission_width > resonance_wavelength / (2 * mode_length)
 
@@ -361,5 +365,3 @@ def re_excitation(*, device_lifetime: Any) -> Any:
 def no_re_excitation() -> Any:
     """Continuous: not applicable."""
     return False
-
-

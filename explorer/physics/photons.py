@@ -36,15 +36,25 @@ def both_decays(x: Any, y: Any) -> Any:
     x, y: decay rates of X and B times the period [1], broadcasting. [y(1−e^−x) − x(1−e^−y)]/(y−x)
     without its cancellations: as an integral where both are small, as the complement where neither.
     """
+    return chain_decay(x, y)[4]
+
+
+def chain_decay(x: Any, y: Any) -> tuple[Any, Any, Any, Any, Any]:
+    """What a period does to X and B: e^−x, 1−e^−x, 1−e^−y, BX = y(e^−x − e^−y)/(y−x), and B0."""
     x, y = np.broadcast_arrays(np.asarray(x, dtype=float), np.asarray(y, dtype=float))
-    gone = -np.expm1(-x), -np.expm1(-y)
-    result = 1 - np.exp(-y) - _one_decay(x, y)
-    gap = np.where(x == y, 1.0, y - x)
-    result = np.where(np.minimum(x, y) < 1.5, (y * gone[0] - x * gone[1]) / gap, result)
+    stays, gone, gone_b = np.exp(-x), -np.expm1(-x), -np.expm1(-y)
+    gap = np.abs(y - x)
+    ratio = np.divide(-np.expm1(-gap), gap, out=np.ones_like(gap), where=gap > 0)
+    one = y * np.maximum(stays, np.exp(-y)) * ratio
+    both = np.asarray(gone_b - one)
     small = (x < 3) & (y < 3)
+    low = (np.minimum(x, y) < 1.5) & ~small
+    if low.any():
+        a, b = x[low], y[low]
+        both[low] = (b * gone[low] - a * gone_b[low]) / (b - a)
     if small.any():
-        result[small] = _both_small(x[small], y[small])
-    return result
+        both[small] = _both_small(x[small], y[small])
+    return stays, gone, gone_b, one, both
 
 
 def _both_small(x: Any, y: Any) -> Any:
@@ -52,14 +62,6 @@ def _both_small(x: Any, y: Any) -> Any:
         return y * np.exp(-y * s) * -np.expm1(-x * (1 - s))
 
     return integral(integrand, np.zeros_like(x), np.ones_like(x), _RULE, x.size)
-
-
-def _one_decay(x: Any, y: Any) -> Any:
-    """Probability that B has decayed to X, and X has not decayed: BX = y(e^−x − e^−y)/(y−x)."""
-    gap = np.abs(y - x)
-    safe = np.where(gap > 0, gap, 1.0)
-    ratio = np.where(gap > 0, -np.expm1(-gap) / safe, 1.0)
-    return y * np.exp(-np.minimum(x, y)) * ratio
 
 
 @part
@@ -77,8 +79,7 @@ def biexciton_rate(*, biexciton_device_lifetime: Any) -> Any:
 @part
 def period_decay(*, exciton_rate: Any, biexciton_rate: Any, repetition_rate: Any) -> Any:
     """What a period does: e^−x, 1−e^−x, 1−e^−y, BX and B0."""
-    x, y = exciton_rate / repetition_rate, biexciton_rate / repetition_rate
-    return np.exp(-x), -np.expm1(-x), -np.expm1(-y), _one_decay(x, y), both_decays(x, y)
+    return chain_decay(exciton_rate / repetition_rate, biexciton_rate / repetition_rate)
 
 
 @variant("period_decay", biexciton_yield=0)

@@ -159,6 +159,8 @@ def filter_share(*, mode_light_window: Any, filter_width: Any) -> Any:
 
     One line: the exact outgoing spectrum, averaged with the share of the mode over slow wandering.
     Several lines and measured spectra: the product of line and resonance, right for R << γ.
+    Right to 1e-9 where the filter is wider than 1e-6 of its distance from the resonance; a narrower
+    one loses the rounding of its two edges over its width.
     """
     return np.where(np.isinf(filter_width), 1.0, mode_light_window)
 
