@@ -18,23 +18,19 @@ def record_cautions(design: Design) -> tuple[tuple[str, str], ...]:
             found.append(("emitter_record", emitter.caution))
         host = emitter.values.get("host_index")
         if host is not None and host.value_si >= HIGH_INDEX:
-            found.append(
-                (
-                    "emitter_reference",
-                    f"{emitter.name}: measured inside a solid of index {host.shown}; gains over a "
-                    "bare emitter on a coverslip are only a guide.",
-                )
+            sentence = (
+                f"{emitter.name}: measured inside a solid of index {host.shown}; gains over a bare "
+                "emitter on a coverslip are only a guide."
             )
+            found.append(("emitter_reference", sentence))
     resonator = resonators().get(design.resonator)
     if resonator is not None:
         if resonator.caution:
             found.append(("resonator_record", resonator.caution))
         if resonator.gaussian_beam is False and "pattern" not in design.point:
-            found.append(
-                (
-                    "resonator_beam",
-                    f"{resonator.name}: a resonator of this class is not known to radiate a "
-                    "Gaussian beam; angles and collected share assume one.",
-                )
+            sentence = (
+                f"{resonator.name}: a resonator of this class is not known to radiate a Gaussian "
+                "beam; angles and collected share assume one."
             )
+            found.append(("resonator_beam", sentence))
     return tuple(found)

@@ -10,7 +10,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, fields, replace
 from typing import Any
 
-from .evaluate import Evaluation, InputError, evaluate, quoted, shown
+from .evaluate import Evaluation, InputError, evaluated, quoted, shown
 from .inputs import INPUTS
 from .registry import REGISTRY
 
@@ -201,11 +201,14 @@ class Design:
     resonator: str = ""
     optic: str = ""
     data: Mapping[str, str] = field(default_factory=Frozen)
+    #: The point being evaluated; what was worked out once is kept.
+    evaluation: Evaluation = field(init=False, repr=False, compare=False)
 
     def __post_init__(self) -> None:
         work = Evaluation(self.point)
         if work.shape:
             raise InputError("a design is one point; give single numbers, no arrays")
+        object.__setattr__(self, "evaluation", work)
         point = {
             name: value if INPUTS[name].whole else float(value)
             for name, value in self.point.items()
@@ -264,6 +267,10 @@ class Design:
             _text(name, "the name of a data file")
             _text(value, f"data of {name}")
 
+    def __reduce__(self) -> tuple[Any, ...]:
+        """Travels between processes without what was worked out."""
+        return _made, ({f.name: getattr(self, f.name) for f in fields(self) if f.init},)
+
     def with_values(self, **values: Any) -> Design:
         """The same design with some inputs given, as typed by a person."""
         origins = {name: Origin("typed") for name in values}
@@ -277,7 +284,7 @@ class Design:
 
     def outcome(self, wanted: Any = None) -> dict[str, Any]:
         """Quantities of the design by name; all of them unless `wanted` names some."""
-        return evaluate(self.point, REGISTRY.quantities if wanted is None else wanted)
+        return evaluated(self.evaluation, REGISTRY.quantities if wanted is None else wanted)
 
     def origin(self, name: str) -> Origin:
         """Where an input's value comes from; 'default' where it is not given."""
@@ -285,8 +292,12 @@ class Design:
 
     def cautions(self) -> tuple[str, ...]:
         """Names of the cautions that are true at this point, the order of their definition."""
-        marks = evaluate(self.point, REGISTRY.cautions)
+        marks = evaluated(self.evaluation, REGISTRY.cautions)
         return tuple(name for name, holds in marks.items() if holds)
+
+
+def _made(parts: dict[str, Any]) -> Design:
+    return Design(**parts)
 
 
 def written(name: str, value: Any, digits: int = 12) -> str:

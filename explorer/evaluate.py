@@ -25,6 +25,9 @@ FARTHEST = 1e20
 #: A line or a sample of a spectrum lies within these multiples of `emission_wavelength`.
 SPECTRUM_REACH = (0.1, 10.0)
 
+#: Closest spacing of samples over the wavelength; closer, rounding would make them one.
+CLOSEST = 1e-14
+
 
 class InputError(ValueError):
     """A point that cannot be evaluated: the message names input, value, unit and allowed range.
@@ -88,11 +91,9 @@ def quoted(given: Any) -> str:
 def _refuse_first(
     entry: Input, value: NDArray[np.float64], bad: Any, low: Any, high: Any, why: str
 ) -> None:
-    """InputError for the first element that is `bad`, with the ends of its own range."""
+    """InputError for the first element that is `bad`, of which there is one."""
     shape = np.broadcast_shapes(np.shape(bad), value.shape)
     bad = np.broadcast_to(bad, shape)
-    if not bad.any():
-        return
     index = np.unravel_index(int(np.argmax(bad)), shape)
     number, first, last = (float(np.broadcast_to(one, shape)[index]) for one in (value, low, high))
     # The place in the array as it was given, which may be smaller than the shape of the point.
@@ -199,8 +200,9 @@ class Evaluation:
         over = (value >= high if entry.high_open else value > high) & np.isfinite(value)
         finite = np.isfinite(value) | (entry.infinite & (value == np.inf))
         for bad in (~finite, under, over):
-            _refuse_first(entry, value, bad, low, high, why_low + why_high)
-        if entry.low_open:
+            if bad.any():
+                _refuse_first(entry, value, bad, low, high, why_low + why_high)
+        if entry.low_open and (value < 1 / FARTHEST).any():
             least = f", at least {shown(1 / FARTHEST, entry)}"
             _refuse_first(entry, value, value < 1 / FARTHEST, low, high, least)
 
@@ -209,9 +211,10 @@ class Evaluation:
         aperture = np.asarray(self.value("numerical_aperture"))
         side = self.value("reference_side")
         limit = 1.0 if side == "air" else 1.52
-        entry = replace(INPUTS["numerical_aperture"], high_open=False)
-        why = f" where reference_side is {side!r}"
-        _refuse_first(entry, aperture, aperture > limit, 0.0, limit, why)
+        if (aperture > limit).any():
+            entry = replace(INPUTS["numerical_aperture"], high_open=False)
+            why = f" where reference_side is {side!r}"
+            _refuse_first(entry, aperture, aperture > limit, 0.0, limit, why)
 
     def _check_spectrum(self) -> None:
         """Lines and samples lie at wavelengths near the emission, and no line is too broad."""
@@ -225,6 +228,9 @@ class Evaluation:
             if isinstance(spectrum, Samples)
             else spectrum.lines
         )
+        if isinstance(spectrum, Samples):
+            gap, least = float(np.diff(spectrum.offsets).min()), CLOSEST * float(np.max(wavelength))
+            _refuse_part("a spacing", gap, gap >= least, least, SPECTRUM_REACH[1] * centre)
         nearest, farthest = (factor * centre for factor in SPECTRUM_REACH)
         for _, offset, width in rows:
             own = centre + offset
@@ -336,6 +342,11 @@ def evaluate(point: Mapping[str, Any], wanted: Iterable[str]) -> dict[str, Any]:
     Not-a-number stands exactly where a caution marked "no number" is true.
     Raises InputError for a bad point, KeyError for an unknown wanted name.
     """
+    return evaluated(Evaluation(point), wanted)
+
+
+def evaluated(work: Evaluation, wanted: Iterable[str]) -> dict[str, Any]:
+    """The same of a point that is being evaluated. Raises KeyError for an unknown wanted name."""
     names = [wanted] if isinstance(wanted, str) else list(wanted)
     public = REGISTRY.quantities.keys() | REGISTRY.cautions.keys()
     for name in names:
@@ -343,7 +354,6 @@ def evaluate(point: Mapping[str, Any], wanted: Iterable[str]) -> dict[str, Any]:
             raise KeyError(
                 f"{quoted(name)} is no quantity; the quantities are: {', '.join(sorted(public))}"
             )
-    work = Evaluation(point)
     found = {}
     for name in names:
         if name in INPUTS:

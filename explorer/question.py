@@ -58,7 +58,9 @@ class Question:
         if known is None:
             raise InputError(f"{self.shown!r:.60} is no quantity")
         if self.x.name == self.y.name:
-            raise InputError(f"a map needs two different inputs; both are {self.x.name}", self.x.name)
+            raise InputError(
+                f"a map needs two different inputs; both are {self.x.name}", self.x.name
+            )
 
 
 @dataclass(frozen=True)
@@ -167,7 +169,7 @@ class Answers:
     def _without_map(self, question: Question) -> Answer:
         design = question.design
         needed = {entry.quantity for entry in design.requirements}
-        work = self._part("work", design.point, lambda: Evaluation(design.point))
+        work = self._part("work", design.point, lambda: design.evaluation)
         values = self._part(
             "values", design.point, lambda: {name: work.value(name) for name in INPUTS}
         )

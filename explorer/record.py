@@ -16,7 +16,7 @@ from typing import Any
 from .advice import record_cautions
 from .budget import budget_rows
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
-from .evaluate import Evaluation, InputError, quoted
+from .evaluate import InputError, quoted
 from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
 from .registry import REGISTRY
@@ -66,7 +66,7 @@ def _input(name: str, value: Any) -> Json:
 
 def _inputs(design: Design) -> Json:
     """Given inputs apart from the defaults filled in for the others."""
-    work = Evaluation(design.point)
+    work = design.evaluation
     given = {name: _input(name, design.point[name]) for name in INPUTS if name in design.point}
     defaults = {}
     for name, entry in INPUTS.items():
@@ -96,7 +96,7 @@ def _requirement(requirement: Requirement) -> Json:
 
 def _budget(design: Design) -> list[Json]:
     rows = []
-    for row in budget_rows(Evaluation(design.point)):
+    for row in budget_rows(design.evaluation):
         streams = {name: number_in(value, "1/s") for name, value in row.streams.items()}
         factor = None if row.factor is None else number_in(row.factor, "1")
         rows.append(

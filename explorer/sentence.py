@@ -80,9 +80,13 @@ def _headline(requirement: Requirement | None, outcome: Mapping[str, Any], free:
     value = outcome[name]
     if name in ARRIVALS:
         arrival = "pass the optics" if free and name == "rate_in_fibre" else ARRIVALS[name]
-        start = "No number of photons" if math.isnan(value) else f"{_count(value)} photons/s {arrival}"
+        start = (
+            "No number of photons" if math.isnan(value) else f"{_count(value)} photons/s {arrival}"
+        )
     else:
-        start = f"{REGISTRY.quantities[name].label} is {text(value, REGISTRY.quantities[name].unit)}"
+        start = (
+            f"{REGISTRY.quantities[name].label} is {text(value, REGISTRY.quantities[name].unit)}"
+        )
     return f"{start}, {verdict(requirement, value)}." if requirement else f"{start}."
 
 
@@ -104,7 +108,9 @@ def hindrance(rows: Sequence[Step]) -> str:
     return f"{HINDRANCES[step]} (×{text(1 / factor, '1', 2)})" if factor < 0.995 else ""
 
 
-def sentence(design: Design, outcome: Mapping[str, Any], rows: Sequence[Step], free: bool) -> Sentence:
+def sentence(
+    design: Design, outcome: Mapping[str, Any], rows: Sequence[Step], free: bool
+) -> Sentence:
     """The two lines for a design; `free`: the photons are wanted in free space, not in a fibre."""
     first, *others = design.requirements or (None,)
     clauses = [_clause(entry, outcome[entry.quantity]) for entry in others if entry]

@@ -18,11 +18,17 @@ Array = NDArray[np.float64]
 MOST_SAMPLES = 200_000
 
 
+#: Smallest share of a line, and smallest extent of a pattern [rad]: below, numbers run out of digits.
+LEAST = 1e-20
+
+
 class WholeError(ValueError):
     """A spectrum or pattern that cannot be one; the message says what is wrong and where."""
 
 
-def _columns(first: Iterable[float], second: Iterable[float], names: tuple[str, str]) -> list[Array]:
+def _columns(
+    first: Iterable[float], second: Iterable[float], names: tuple[str, str]
+) -> list[Array]:
     columns = []
     for name, values in zip(names, (first, second), strict=True):
         try:
@@ -70,8 +76,10 @@ class Lines:
         for index, row in enumerate(rows):
             if not np.all(np.isfinite(row)):
                 raise WholeError(f"line {index} holds a number that is not finite: {row}")
-            if row[0] <= 0 or row[2] < 0:
-                raise WholeError(f"line {index}: the share must be > 0, the width >= 0; got {row}")
+            if row[0] < LEAST or row[2] < 0:
+                raise WholeError(
+                    f"line {index}: the share must be at least {LEAST:g}, the width not below 0; got {row}"
+                )
         if sum(row[0] for row in rows) > 1 + 1e-9:
             raise WholeError(f"the shares sum to {sum(row[0] for row in rows):.6g}, above 1")
         object.__setattr__(self, "lines", rows)
@@ -147,7 +155,9 @@ class Samples(_Sampled):
             raise WholeError(f"offset {first[same[0]]:.6g} m is given twice")
         if np.any(second < 0):
             index = int(np.argmax(second < 0))
-            raise WholeError(f"counts must not be negative; got {second[index]:.6g} at {first[index]:.6g} m")
+            raise WholeError(
+                f"counts must not be negative; got {second[index]:.6g} at {first[index]:.6g} m"
+            )
         if not np.any(second > 0):
             raise WholeError("all counts are zero")
         self._set(first, second)
@@ -183,12 +193,18 @@ class Pattern(_Sampled):
             raise WholeError(
                 f"angles must lie within 0 and π/2 rad; got {first[0]:.6g} to {first[-1]:.6g}"
             )
+        if first[-1] < LEAST:
+            raise WholeError(
+                f"angles must reach {LEAST:g} rad or more; got {first[-1]:.6g} at most"
+            )
         same = np.flatnonzero(np.diff(first) <= 0)
         if same.size:
             raise WholeError(f"angle {first[same[0]]:.6g} rad is given twice")
         if np.any(second < 0):
             index = int(np.argmax(second < 0))
-            raise WholeError(f"powers must not be negative; got {second[index]:.6g} at {first[index]:.6g} rad")
+            raise WholeError(
+                f"powers must not be negative; got {second[index]:.6g} at {first[index]:.6g} rad"
+            )
         if not np.any(second > 0):
             raise WholeError("all powers are zero")
         self._set(first, second)

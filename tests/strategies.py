@@ -12,6 +12,7 @@ from collections.abc import Callable, Mapping
 from typing import Any
 
 import numpy as np
+from hypothesis import HealthCheck, Phase, settings
 from hypothesis import strategies as st
 
 from explorer.evaluate import Evaluation
@@ -20,6 +21,24 @@ from explorer.registry import Input, parameters
 from explorer.whole import Lines, Pattern, Samples
 
 Point = dict[str, Any]
+
+
+def tried(count: int) -> Callable[[Any], Any]:
+    """Settings of a property test: the same examples in every run, none kept on disk.
+
+    No time limit an example, which would only fail on slow machines, and no shrinking, which would
+    take minutes: the example that fails is printed as it is.
+    """
+    return settings(
+        max_examples=count,
+        derandomize=True,
+        database=None,
+        deadline=None,
+        phases=[Phase.explicit, Phase.generate],
+        report_multiple_bugs=False,
+        suppress_health_check=list(HealthCheck),
+    )
+
 
 #: How far a domain without an end is tried, SI; and where a logarithmic scale starts above zero.
 REACH: dict[str, tuple[float, float]] = {
@@ -153,7 +172,7 @@ def patterns() -> st.SearchStrategy[Pattern]:
 
     def build(powers: list[int], reach: float) -> Pattern:
         angles = np.linspace(0, 1, len(powers)) * (0.01 + reach * (np.pi / 2 - 0.01))
-        return Pattern(angles, [max(powers[0], 1), *powers[1:]])
+        return Pattern(angles, powers if any(powers) else [1.0] * len(powers))
 
     return st.builds(build, st.lists(st.integers(0, 50), min_size=2, max_size=8), fractions)
 

@@ -273,6 +273,10 @@ JOINT: dict[str, tuple[dict[str, Any], tuple[str, ...]]] = {
         {"spectrum": Lines([(1.0, 0.0, 400e-9)])},
         ("spectrum", "400 nm", "390 nm", "emission_wavelength"),
     ),
+    "samples closer than rounding": (
+        {"spectrum": Samples([0.0, 1e-24, 1e-9], [1, 1, 1])},
+        ("spectrum", "a spacing of 1e-15 nm", "from 6.5e-12 nm", "emission_wavelength"),
+    ),
     "samples in nanometres": (
         {"spectrum": Samples([-30, 0, 30], [0, 1, 0])},
         ("spectrum", "-3e+10 nm", "emission_wavelength"),
@@ -385,6 +389,8 @@ BAD_WHOLES: dict[str, tuple[Callable[[], Any], str]] = {
     "too many samples": (lambda: Samples(range(200_001), np.ones(200_001)), "200001"),
     "no angles": (lambda: Pattern([], []), "at least two"),
     "one angle": (lambda: Pattern([0.0], [1.0]), "at least two"),
+    "pattern without extent": (lambda: Pattern([0, 1e-300], [1, 1]), "1e-20 rad"),
+    "line share vanishing": (lambda: Lines([(5e-324, 0, 0)]), "share"),
     "angle negative": (lambda: Pattern([-0.1, 1], [1, 1]), "π/2"),
     "angles in degrees": (lambda: Pattern([0, 45], [1, 1]), "π/2"),
     "angle twice": (lambda: Pattern([0, 0, 1], [1, 1, 1]), "twice"),

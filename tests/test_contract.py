@@ -10,12 +10,11 @@ import itertools
 import math
 import subprocess
 import sys
-from collections.abc import Callable
 from typing import Any
 
 import numpy as np
 import pytest
-from hypothesis import HealthCheck, given, settings
+from hypothesis import given
 from hypothesis import strategies as st
 from numpy.typing import NDArray
 
@@ -26,7 +25,7 @@ from explorer.catalogue import references
 from explorer.evaluate import Evaluation, voiding
 from explorer.registry import dependencies, formula_parameters
 
-from .strategies import Point, element, fractions, points, value_at
+from .strategies import Point, element, fractions, points, tried, value_at
 
 NUMBERS = [name for name, quantity in QUANTITIES.items() if quantity.kind == "number"]
 EVERYTHING = [*QUANTITIES, *CAUTIONS]
@@ -45,18 +44,6 @@ THROUGH_FIBRE = {
     "rate_in_fibre": "rate_at_lens",
     "rate_detected": "rate_at_lens",
 }
-
-
-def tried(count: int) -> Callable[[Any], Any]:
-    """The same examples in every run; a time limit an example would only make slow machines fail."""
-    return settings(
-        max_examples=count,
-        derandomize=True,
-        database=None,
-        deadline=None,
-        report_multiple_bugs=False,
-        suppress_health_check=list(HealthCheck),
-    )
 
 
 # --- what every name carries ---------------------------------------------------------------------

@@ -18,7 +18,7 @@ LAYERS = (
     ("evaluate",),
     ("design", "budget", "published", "reading"),
     ("catalogue",),
-    ("maps", "sampling", "limits", "measured", "sweep"),
+    ("maps", "sampling", "limits", "measured", "sweep", "advice"),
     ("curves", "sentence"),
     ("question",),
     ("schema",),

@@ -92,21 +92,32 @@ CHECKS: dict[str, Callable[[dict[str, Any]], float]] = {
     "linewidth_energy": lambda inputs: (
         constants.hbar * value_of("resonator_linewidth", inputs) / constants.e
     ),
-    "coupling_energy": lambda inputs: constants.hbar * value_of("coupling_rate", inputs) / constants.e,
+    "coupling_energy": lambda inputs: (
+        constants.hbar * value_of("coupling_rate", inputs) / constants.e
+    ),
     "four_g_over_kappa": lambda inputs: (
         4 * value_of("coupling_rate", inputs) / value_of("resonator_linewidth", inputs)
     ),
     "strong_coupling": lambda inputs: float(
         explorer.evaluate(point_of(inputs), ["regime"])["regime"] == "strong"
     ),
-    "photon_yield": lambda inputs: value_of("cavity_share", inputs) + value_of("other_share", inputs),
+    "photon_yield": lambda inputs: (
+        value_of("cavity_share", inputs) + value_of("other_share", inputs)
+    ),
     "fourier_limit": lambda inputs: (
-        value_of("coherence_decay", {**inputs, "fast_linewidth": "0 nm", "mode_volume": 1e8,
-                                     "quantum_yield": 1}) / (2 * math.pi)
+        value_of(
+            "coherence_decay",
+            {**inputs, "fast_linewidth": "0 nm", "mode_volume": 1e8, "quantum_yield": 1},
+        )
+        / (2 * math.pi)
     ),
     "fourier_energy": lambda inputs: (
-        value_of("coherence_decay", {**inputs, "fast_linewidth": "0 nm", "mode_volume": 1e8,
-                                     "quantum_yield": 1}) * constants.hbar / constants.e
+        value_of(
+            "coherence_decay",
+            {**inputs, "fast_linewidth": "0 nm", "mode_volume": 1e8, "quantum_yield": 1},
+        )
+        * constants.hbar
+        / constants.e
     ),
     "background_g2": background_g2,
     "half_collected": lambda inputs: value_of("collected_share", inputs) / 2,
@@ -157,7 +168,9 @@ def test_printed_value(entry: dict[str, Any]) -> None:
 
 
 def files() -> list[dict[str, Any]]:
-    return [tomllib.loads(file.read_text(encoding="utf-8")) for file in sorted(FOLDER.glob("*.toml"))]
+    return [
+        tomllib.loads(file.read_text(encoding="utf-8")) for file in sorted(FOLDER.glob("*.toml"))
+    ]
 
 
 @pytest.mark.parametrize("table", files(), ids=lambda table: table["source"])

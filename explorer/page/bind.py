@@ -99,6 +99,10 @@ class InputRow(VBox):
         text = self._state.problems.get(self.entry.name, "")
         if text != self.wrong.value:
             self.wrong.value = text
+        if text:  # a slider that was pulled to where it may not be goes back
+            self._syncing = True
+            self.slider.value = self._scale.stop(self._value)
+            self._syncing = False
 
 
 class ChoiceRow(HBox):
@@ -119,6 +123,7 @@ class ChoiceRow(HBox):
         self.add_class(f"input-{name}")
         self.back.on_click(lambda _: state.reset(name))
         state.on_answer(self._follow)
+        state.on_problem(lambda: self._follow(state.answer))  # what was refused is not shown
         self.menu.observe(self._chosen, "value")
 
     def _chosen(self, change: dict[str, Any]) -> None:

@@ -31,7 +31,7 @@ class State:
         self._complaints: list[Callable[[], None]] = []
         self._work: Iterator[Answer] | None = None
         self._handle: asyncio.TimerHandle | None = None
-        self.answer = self._answers.answer(question)
+        self.answer = self._whole = self._answers.answer(question)
 
     def on_answer(self, listener: Listener) -> None:
         """Call a listener with every answer, the present one at once."""
@@ -130,30 +130,50 @@ class State:
             self._handle.cancel()
         self.question = question
         self._work = self._answers.steps(question)
-        self._go_on()
+        self._go_on(first=True)
 
-    def _go_on(self) -> None:
-        """Work for one slice; the rest waits for its turn on the event loop, if there is one."""
+    def _go_on(self, first: bool = False) -> None:
+        """Work for one slice; the rest waits for its turn on the event loop, if there is one.
+
+        The first part goes out before the map is begun: the browser draws it meanwhile.
+        """
         self._handle = None
         end = time.perf_counter() + SLICE
         newest: Answer | None = None
         try:
             for newest in self._work or ():
+                if first and not newest.whole and _in_a_loop():
+                    self._tell(newest)
+                first = False
                 if not newest.whole and time.perf_counter() > end and self._later():
                     break
         except InputError as error:  # an axis of the map reaches beyond what another input allows
-            self.question = self.answer.question
+            self.question = self._whole.question
+            if self.answer is not self._whole:
+                self._tell(self._whole)
             self.refuse(error.name or "", str(error))
             return
-        if newest is not None:
-            self.answer = newest
-            for listener in self._listeners:
-                listener(newest)
+        if newest is not None and newest is not self.answer:
+            self._tell(newest)
+
+    def _tell(self, answer: Answer) -> None:
+        self.answer = answer
+        if answer.whole:
+            self._whole = answer
+        for listener in self._listeners:
+            listener(answer)
 
     def _later(self) -> bool:
-        try:
-            loop = asyncio.get_running_loop()
-        except RuntimeError:
+        if not _in_a_loop():
             return False
-        self._handle = loop.call_later(0.001, self._go_on)
+        self._handle = asyncio.get_running_loop().call_later(0.001, self._go_on)
         return True
+
+
+def _in_a_loop() -> bool:
+    """Whether an event loop runs here, as it does in a kernel."""
+    try:
+        asyncio.get_running_loop()
+    except RuntimeError:
+        return False
+    return True

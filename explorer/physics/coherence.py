@@ -32,7 +32,9 @@ def splitting_ratio(*, coupling_rate: Any, resonator_linewidth: Any, coherence_d
 REGIMES = ("Purcell", "funnelling", "strong")
 
 
-@quantity("1", label="Regime", group="regime", source="auffeves2009", kind="choice", choices=REGIMES)
+@quantity(
+    "1", label="Regime", group="regime", source="auffeves2009", kind="choice", choices=REGIMES
+)
 def regime(*, strong_ratio: Any, funnelling_ratio: Any) -> Any:
     """'strong' where 2g > κ + Γ, else 'funnelling' where Γ > κ, else 'Purcell'."""
     return np.where(

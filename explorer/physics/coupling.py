@@ -52,7 +52,8 @@ def auger_rate(
     """Auger decay of the biexciton [1/s]; not changed by the resonator."""
     finite = biexciton_yield > 0
     odds = 1 / np.where(finite, biexciton_yield, 1.0) - 1
-    return np.where(finite, biexciton_rate_ratio * quantum_yield / lifetime * odds, INSTANT)
+    rate = biexciton_rate_ratio * quantum_yield / lifetime * odds
+    return np.where(finite, np.minimum(rate, INSTANT), INSTANT)
 
 
 @quantity("1/s", label="Decay past the mode", symbol="γ", group="rates", log=True)

@@ -103,7 +103,13 @@ def _angle(a: Any, drop: float) -> Any:
     return np.arcsin(np.sqrt(y))
 
 
-@quantity("rad", label="Beam half-angle", symbol="θ½", group="angles", note="half power; of the pattern, before the lens cuts it")
+@quantity(
+    "rad",
+    label="Beam half-angle",
+    symbol="θ½",
+    group="angles",
+    note="half power; of the pattern, before the lens cuts it",
+)
 def half_angle(*, sharpness: Any) -> Any:
     r"""Angle at which the power per solid angle is half of that on the axis.
 
@@ -120,7 +126,13 @@ def half_angle_of_given(*, pattern: Any) -> Any:
     return given.outermost_angle(pattern, 0.5)
 
 
-@quantity("rad", label="Beam divergence", symbol="θ", group="angles", note="1/e² half-angle; of the pattern, before the lens cuts it")
+@quantity(
+    "rad",
+    label="Beam divergence",
+    symbol="θ",
+    group="angles",
+    note="1/e² half-angle; of the pattern, before the lens cuts it",
+)
 def divergence(*, sharpness: Any) -> Any:
     r"""Angle at which the power per solid angle is 1/e² of that on the axis.
 
@@ -212,7 +224,8 @@ def fibre_share(*, fibre_overlap: Any, collected_share: Any) -> Any:
     b1 = (kw)²/4, b2 = (k wf/M)²/4. A scalar overlap: 0.4 % above the co-polarised one at a
     numerical aperture of 0.65, 3 % at 0.95. The light that is wanted in free space: 1.
     """
-    return fibre_overlap / collected_share
+    # A pattern without light inside the aperture has none to share.
+    return np.where(collected_share > 0, fibre_overlap / collected_share, 0.0)
 
 
 @variant("fibre_share", destination="free_space")

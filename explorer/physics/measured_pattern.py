@@ -20,7 +20,9 @@ PIECES = 720
 
 
 @lru_cache(maxsize=32)
-def _pieces(pattern: Pattern) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.float64]]:
+def _pieces(
+    pattern: Pattern,
+) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.float64]]:
     """Angles from 0, powers over the largest, and the power inside each angle."""
     angles, powers = pattern.angles, pattern.powers / pattern.powers.max()
     if angles[0] > 0:

@@ -18,9 +18,7 @@ from .window import outgoing_window
 
 
 @part
-def outcome_of(
-    *, ideal_rate: Any, resonator_linewidth: Any, decay_elsewhere: Any
-) -> Any:
+def outcome_of(*, ideal_rate: Any, resonator_linewidth: Any, decay_elsewhere: Any) -> Any:
     """A function of the overlap: rate into the light that leaves, share of the mode, lifetime."""
 
     def outcome(overlap: Any) -> Any:
@@ -64,7 +62,12 @@ def lines_at(
 
 @part
 def lines_average(
-    *, line_table: Any, resonator_linewidth: Any, decay_elsewhere: Any, detuning: Any, slow_deviation: Any
+    *,
+    line_table: Any,
+    resonator_linewidth: Any,
+    decay_elsewhere: Any,
+    detuning: Any,
+    slow_deviation: Any,
 ) -> Any:
     """A function that averages an outcome over the shifts of several lines.
 
@@ -198,7 +201,12 @@ def window_of_still_lines(*, lines_at: Any, filter_edges: Any, resonator_linewid
 
 @variant("mode_light_window", spectrum=Lines)
 def window_of_lines(
-    *, lines_at: Any, lines_average: Any, weight_of: Any, filter_edges: Any, resonator_linewidth: Any
+    *,
+    lines_at: Any,
+    lines_average: Any,
+    weight_of: Any,
+    filter_edges: Any,
+    resonator_linewidth: Any,
 ) -> Any:
     """The same where the lines wander: weighted by the share of the mode."""
 

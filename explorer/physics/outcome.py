@@ -69,7 +69,9 @@ def mode_rate(
     slow_deviation: Any,
 ) -> Any:
     """Mean rate into the light that leaves [1/s], a single line that wanders."""
-    width = (resonator_linewidth + coherence_decay) * np.sqrt(1 + resonant_rate / resonator_linewidth)
+    width = (resonator_linewidth + coherence_decay) * np.sqrt(
+        1 + resonant_rate / resonator_linewidth
+    )
     peak = resonant_rate * resonator_linewidth / (resonant_rate + resonator_linewidth)
     return peak * voigt_mean(detuning=detuning, sigma=slow_deviation, width=width)
 
@@ -148,9 +150,7 @@ def still_lifetime(*, still_rate: Any, decay_elsewhere: Any) -> Any:
 
 
 @quantity("1", label="Share of other light", symbol="ηo", group="shares")
-def other_share(
-    *, device_lifetime: Any, other_modes: Any, radiative_rate: Any
-) -> Any:
+def other_share(*, device_lifetime: Any, other_modes: Any, radiative_rate: Any) -> Any:
     r"""Share of the decays that leave as light past the mode: :math:`(1-\beta)\alpha\gamma_r/\gamma`."""
     return device_lifetime * other_modes * radiative_rate
 

@@ -8,7 +8,6 @@ import numpy as np
 from scipy.special import gammainc
 
 from ..registry import part, quantity, variant
-from .quadrature import integral, legendre
 
 #: The steps of the budget, in order; each is a total of photons (or pulses, or decays) per second.
 STEPS = (
@@ -27,41 +26,46 @@ STEPS = (
 #: Streams of light: transition and way out.
 STREAMS = ("exciton, mode", "exciton, other", "biexciton, mode", "biexciton, other")
 
-_RULE = legendre(16)
-
 
 def both_decays(x: Any, y: Any) -> Any:
     """Probability that B decays to X and X to the ground, within a period: B0.
 
-    x, y: decay rates of X and B times the period [1], broadcasting. [y(1−e^−x) − x(1−e^−y)]/(y−x)
-    without its cancellations: as an integral where both are small, as the complement where neither.
+    x, y: decay rates of X and B times the period [1], broadcasting.
     """
     return chain_decay(x, y)[4]
 
 
 def chain_decay(x: Any, y: Any) -> tuple[Any, Any, Any, Any, Any]:
-    """What a period does to X and B: e^−x, 1−e^−x, 1−e^−y, BX = y(e^−x − e^−y)/(y−x), and B0."""
+    """What a period does to X and B: e^−x, 1−e^−x, 1−e^−y, BX = y(e^−x − e^−y)/(y−x), and B0.
+
+    B0 = [y(1−e^−x) − x(1−e^−y)]/(y−x) is the complement 1 − e^−y − BX where it is not small.
+    """
     x, y = np.broadcast_arrays(np.asarray(x, dtype=float), np.asarray(y, dtype=float))
     stays, gone, gone_b = np.exp(-x), -np.expm1(-x), -np.expm1(-y)
     gap = np.abs(y - x)
     ratio = np.divide(-np.expm1(-gap), gap, out=np.ones_like(gap), where=gap > 0)
     one = y * np.maximum(stays, np.exp(-y)) * ratio
     both = np.asarray(gone_b - one)
-    small = (x < 3) & (y < 3)
-    low = (np.minimum(x, y) < 1.5) & ~small
-    if low.any():
-        a, b = x[low], y[low]
-        both[low] = (b * gone[low] - a * gone_b[low]) / (b - a)
-    if small.any():
-        both[small] = _both_small(x[small], y[small])
+    rare = x * y < 1e-4 * (1 + np.maximum(x, y))
+    if rare.any():
+        both[rare] = _rarely_both(x[rare], y[rare], gone[rare], gone_b[rare])
     return stays, gone, gone_b, one, both
 
 
-def _both_small(x: Any, y: Any) -> Any:
-    def integrand(s: Any) -> Any:
-        return y * np.exp(-y * s) * -np.expm1(-x * (1 - s))
+def _rarely_both(x: Any, y: Any, gone: Any, gone_b: Any) -> Any:
+    """B0 where it is small: a series where both rates are, else the quotient itself.
 
-    return integral(integrand, np.zeros_like(x), np.ones_like(x), _RULE, x.size)
+    The series is xy Σ (−1)^k h_k(x, y)/(k+2)!, h_k the sum of all monomials of degree k.
+    """
+    gap = np.where(x == y, 1.0, y - x)
+    quotient = (y * gone - x * gone_b) / gap
+    total, term, power, size = 0.5, 1.0, 1.0, 2.0
+    for k in range(1, 7):
+        power = power * y
+        term = x * term + power
+        size = size * (k + 2)
+        total = total + (-1) ** k * term / size
+    return np.where(np.maximum(x, y) < 0.02, x * y * total, quotient)
 
 
 @part
@@ -260,7 +264,12 @@ def rate_detected(*, photons_after: Any) -> Any:
 
 @part
 def budget_table(
-    *, attempt_rate: Any, decay_rates: Any, transmitted: Any, pair_transmitted: Any, photons_after: Any
+    *,
+    attempt_rate: Any,
+    decay_rates: Any,
+    transmitted: Any,
+    pair_transmitted: Any,
+    photons_after: Any,
 ) -> Any:
     """Rows of (step, photons per second of each stream, total), the last total the end rate."""
     exciton, biexciton = decay_rates

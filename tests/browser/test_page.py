@@ -344,14 +344,14 @@ def broken_files() -> dict[str, Callable[[str], bytes]]:
 
     return {
         "truncated": lambda good: good[: len(good) // 2].encode(),
-        "empty": lambda good: b"",
-        "not JSON": lambda good: b"\x89PNG\r\n\x1a\n" + bytes(range(256)),
-        "another JSON": lambda good: b'[1, 2, {"three": 4}]',
+        "empty": lambda _: b"",
+        "not JSON": lambda _: b"\x89PNG\r\n\x1a\n" + bytes(range(256)),
+        "another JSON": lambda _: b'[1, 2, {"three": 4}]',
         "wrong version": changed(version=99),
         "wrong format": changed(format="recipe"),
         "no inputs": changed(inputs=None),
         "25 MB": lambda good: good.encode() + b" " * 25_000_000,
-        "deep": lambda good: b"[" * 100_000 + b"]" * 100_000,
+        "deep": lambda _: b"[" * 100_000 + b"]" * 100_000,
         "script as name of an input": lambda good: good.replace(
             '"quality_factor"', '"<img src=x onerror=document.title=1>"', 1
         ).encode(),
@@ -364,7 +364,7 @@ def test_broken_file_leaves_the_page_alive_with_one_sentence(hands, tmp_path, ki
     path = tmp_path / "broken.json"
     path.write_bytes(broken_files()[kind](explorer.design_text(first_question().design)))
     hands.give_file(path)
-    sentence = hands.browser.wait_until(lambda: hands.complaint())
+    sentence = hands.browser.wait_until(hands.complaint)
     assert "\n" not in sentence
     assert "broken.json" in sentence
     assert len(sentence) < 400

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from bqplot import Axis, Figure, LinearScale, Lines
 from ipywidgets import HTML, Label, VBox
 
@@ -41,9 +43,9 @@ class ColoursPanel(VBox):
             x=[0, 1], y=[0, 0], scales=scales, colors=[INK], stroke_width=2, line_style="dashed"
         )
         self.leaving = Lines(x=[0, 1], y=[0, 0], scales=scales, colors=[RED], stroke_width=2.5)
-        axis = Axis(scale=self.across, num_ticks=4, grid_lines="none", color=INK, label="nm", label_offset="2.1em", label_color=INK)
+        self.axis = Axis(scale=self.across, grid_lines="none", color=INK, label="nm", label_offset="2.1em", label_color=INK)
         return Figure(
-            marks=[self.passed, self.emitter, self.resonator, self.leaving], axes=[axis],
+            marks=[self.passed, self.emitter, self.resonator, self.leaving], axes=[self.axis],
             fig_margin={"top": 6, "bottom": 40, "left": 18, "right": 20}, animation_duration=0,
         )
 
@@ -53,15 +55,39 @@ class ColoursPanel(VBox):
             return
         self._drawn = seen
         nanometres = seen.wavelength * 1e9
-        filtered = bool((seen.passed < 1).any())
-        curves = (
+        # The limits first: new ones make the browser draw every curve again.
+        low, high, marks = limits(float(nanometres[0]), float(nanometres[-1]))
+        if (low, high) != (self.across.min, self.across.max):
+            self.axis.tick_values = marks
+            with self.across.hold_sync():
+                self.across.min, self.across.max = low, high
+        curves = [
             (self.emitter, seen.emitter),
             (self.resonator, seen.resonator),
             (self.leaving, seen.leaving),
-            (self.passed, seen.passed if filtered else 0 * seen.passed),
-        )
+        ]
+        filtered = bool((seen.passed < 1).any())
+        self.passed.visible = filtered
+        if filtered:
+            curves.append((self.passed, seen.passed))
         for mark, values in curves:
             with mark.hold_sync():
                 mark.x, mark.y = nanometres, values
-        with self.across.hold_sync():
-            self.across.min, self.across.max = float(nanometres[0]), float(nanometres[-1])
+
+
+def limits(low: float, high: float) -> tuple[float, float, list[float]]:
+    """Ends of the axis just within a range, on round numbers that seldom change; and its ticks."""
+    first, *_, last = multiples(low, high, tidy((high - low) / 16))
+    return first, last, multiples(first, last, tidy((high - low) / 1.6))
+
+
+def multiples(low: float, high: float, step: float) -> list[float]:
+    """Multiples of a step from low to high, both included."""
+    first, last = math.ceil(low / step - 1e-6), math.floor(high / step + 1e-6)
+    return [float(f"{i * step:.13g}") for i in range(first, last + 1)]
+
+
+def tidy(value: float) -> float:
+    """The next lower of 1, 2 and 5 times a power of ten."""
+    power = 10.0 ** math.floor(math.log10(value))
+    return max(size * power for size in (1, 2, 5) if size * power <= value)

@@ -35,6 +35,7 @@ class EmitterPanel(VBox):
         self.add_class("panel-emitter")
         self.sources.on_click(self._toggle)
         state.on_answer(self._draw)
+        state.on_problem(lambda: self._draw(state.answer))  # what was refused is not shown
         self.menu.observe(self._chosen, "value")
 
     def _toggle(self, _: Button) -> None:

@@ -15,6 +15,7 @@ class HeadlinePanel(VBox):
 
     def __init__(self, state: State) -> None:
         self._state = state
+        self._hint = ""
         self.text = HTML()
         self.wrong = HTML()
         super().__init__([self.text, self.wrong])
@@ -24,7 +25,9 @@ class HeadlinePanel(VBox):
 
     def _draw(self, answer: Answer) -> None:
         said = answer.sentence
-        parts = [part for part in (said.detail, answer.hint) if part]
+        if answer.whole or said.met:  # until the map is there, its last hint stays
+            self._hint = answer.hint
+        parts = [part for part in (said.detail, self._hint) if part]
         word = {True: "met", False: "missed", None: "free"}[said.met]
         self.text.value = (
             f'<div class="x-said x-{word}" aria-live="polite" role="status">'

@@ -40,6 +40,7 @@ class MapPanel(VBox):
         self._backdrop = Backdrop()
         self._drawn: tuple[Any, ...] = ()
         self._held: tuple[Any, ...] = ()
+        self._map: Map | None = None
         self._quiet = False
         options = [(entry.label, entry.name) for entry in REGISTRY.quantities.values()]
         self.shown = Dropdown(options=options, tooltip="Quantity shown as colour")
@@ -64,6 +65,7 @@ class MapPanel(VBox):
         self.add_class("panel-map")
         self._listen()
         state.on_answer(self._draw)
+        state.on_problem(lambda: self._draw(state.answer))  # what was refused is not shown
 
     def _listen(self) -> None:
         self.shown.observe(lambda change: self._ask(shown=change["new"]), "value")
@@ -111,7 +113,8 @@ class MapPanel(VBox):
         self._quiet = True
         try:
             self._follow(answer)
-            if answer.map is not None:
+            # A map that is still of an older question is on the canvas already.
+            if answer.map is not None and (answer.whole or answer.map is not self._map):
                 self._paint(answer, answer.map)
             question = answer.question
             place = [
@@ -137,11 +140,13 @@ class MapPanel(VBox):
         key = (id(drawn), question.layers, id(back))
         if key == self._drawn:
             return
+        self._map = drawn
         self._drawn, self._held = key, (drawn, back)  # held, so that their ids stay theirs
         name = question.shown if question.shown in drawn.values else next(iter(drawn.values))
         layers = question.layers
         scale = colour_scale(name, drawn)
         caution = drawn.caution if "hatching" in layers else None
+        border = drawn.outline()
         picture = Picture(
             values=coded(name, drawn.values[name]),
             x=axis_scale(drawn.x.name, drawn.x.low, drawn.x.high, drawn.x.log),
@@ -151,8 +156,8 @@ class MapPanel(VBox):
             cautioned=caution if caution is not None and caution.any() else None,
             caution_texts=("a caution holds",),
             holds=None if drawn.margin is None else drawn.margin >= 0,
-            lines=(*iso_lines(name, drawn, scale, layers), *frontiers(drawn, layers), *outline(drawn)),
-            labels=notes(drawn, answer),
+            lines=(*iso_lines(name, drawn, scale, layers), *frontiers(drawn, layers), *outline(border)),
+            labels=notes(border, drawn, answer),
             bands=back.bands if "all_bands" in layers else tuple(b for b in back.bands if b.own),
             marks=back.marks if "marks" in layers else (),
             top=back.top if "scales" in layers else None,
@@ -251,19 +256,18 @@ def frontiers(drawn: Map, layers: frozenset[str]) -> list[Line]:
     return found
 
 
-def outline(drawn: Map) -> list[Line]:
+def outline(border: list[Any]) -> list[Line]:
     """Border of the region that meets everything."""
-    paths = drawn.outline()
-    return [Line("outline", tuple(paths))] if paths else []
+    return [Line("outline", tuple(border))] if border else []
 
 
-def notes(drawn: Map, answer: Answer) -> tuple[Note, ...]:
+def notes(border: list[Any], drawn: Map, answer: Answer) -> tuple[Note, ...]:
     """The requirement that binds, named at the longest stretch of the outline where it does."""
     if drawn.binding is None:
         return ()
     ny, nx = drawn.binding.shape
     best: dict[int, Any] = {}
-    for path in drawn.outline():
+    for path in border:
         inside = (path > 0.01).all(axis=1) & (path < 0.99).all(axis=1)
         column = np.clip((path[:, 0] * nx).astype(int), 0, nx - 1)
         line = np.clip((path[:, 1] * ny).astype(int), 0, ny - 1)

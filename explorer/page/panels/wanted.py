@@ -7,8 +7,7 @@ from typing import Any
 
 from ipywidgets import Button, Dropdown, HBox, Label, Text, VBox
 
-from ...design import Requirement
-from ...evaluate import InputError
+from ...design import InputError, Requirement
 from ...question import Answer, required
 from ...reading import ReadingError, read_number
 from ...registry import REGISTRY
