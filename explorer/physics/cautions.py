@@ -73,18 +73,6 @@ def no_light(*, rate_detected: Any, active_background: Any) -> Any:
     return (rate_detected == 0) & (active_background == 0)
 
 
-@part
-def active_background(*, background_per_pulse: Any) -> Any:
-    """Background of the pumping in use."""
-    return background_per_pulse
-
-
-@variant("active_background", pumping="continuous")
-def continuous_background(*, background_rate: Any) -> Any:
-    """Background of the pumping in use."""
-    return background_rate
-
-
 @caution(
     "Q is below 5: a resonance this broad is not well described by one Lorentzian.",
     label="Q below 5",

@@ -114,6 +114,18 @@ def occupations(*, excitations_per_pulse: Any, period_decay: Any) -> Any:
     return weight_x / total, weight_b / total
 
 
+@variant("occupations", biexciton_yield=0)
+def occupations_without_biexciton(*, excitations_per_pulse: Any, period_decay: Any) -> Any:
+    """The same where the biexciton is gone at once: excited at all, p/(D + p(1 − D))."""
+    stays, gone, *_ = period_decay
+    none, some = np.exp(-excitations_per_pulse), -np.expm1(-excitations_per_pulse)
+    double = gammainc(2.0, excitations_per_pulse)
+    total = gone + some * stays
+    empty, excited = gone / total, some * stays / total  # before the pulse
+    in_x = (empty * excitations_per_pulse + excited) * none
+    return in_x, empty * double + excited * some
+
+
 @part
 def attempt_rate(*, repetition_rate: Any, bright_share: Any) -> Any:
     """Pulses per second while the emitter is on [1/s]."""

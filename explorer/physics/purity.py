@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from typing import Any
 
-import numpy as np
-
 from ..registry import part, quantity, variant
 
 
@@ -23,73 +21,87 @@ def detected_per_pair(*, pair_transmitted: Any) -> Any:
     return mode + other
 
 
+@part
+def signal_while_on(*, rate_detected: Any, attempt_rate: Any) -> Any:
+    """Detected photons per pulse while the emitter is on, μ [1]."""
+    return rate_detected / attempt_rate
+
+
+@variant("signal_while_on", pumping="continuous")
+def continuous_signal(*, rate_detected: Any, bright_share: Any) -> Any:
+    """Detected photons per second while the emitter is on [1/s]."""
+    return rate_detected / bright_share
+
+
+@part
+def coincidences(
+    *, occupations: Any, period_decay: Any, detected_per_decay: Any, detected_per_pair: Any
+) -> Any:
+    """Ordered pairs of detected photons in a pulse, G = 2 qB B0 φX φB [1]."""
+    return 2 * occupations[1] * period_decay[4] * detected_per_decay * detected_per_pair
+
+
+@variant("coincidences", biexciton_yield=0)
+@variant("coincidences", biexciton_yield=0, pumping="continuous")
+def no_coincidences() -> Any:
+    """A biexciton that emits nothing makes no pair."""
+    return 0.0
+
+
+@variant("coincidences", pumping="continuous")
+def continuous_coincidences(
+    *,
+    saturation: Any,
+    exciton_rate: Any,
+    steady_weight: Any,
+    detected_per_decay: Any,
+    detected_per_pair: Any,
+) -> Any:
+    """Pairs at zero delay over the time squared, φX kX φB kB p2 [1/s²]."""
+    pumped = saturation * exciton_rate
+    return pumped**2 / steady_weight * detected_per_decay * detected_per_pair
+
+
+@part
+def active_background(*, background_per_pulse: Any) -> Any:
+    """Background photons per pulse [1]."""
+    return background_per_pulse
+
+
+@variant("active_background", pumping="continuous")
+def continuous_background(*, background_rate: Any) -> Any:
+    """Background photons per second [1/s]."""
+    return background_rate
+
+
 @quantity(
     "1",
     label="g²(0)",
     symbol="g²(0)",
     source="nair2011",
     group="photons",
-    note="pulsed: same pulse over neighbouring pulses; continuous: zero delay",
+    note="pulsed: same pulse over neighbouring pulses; continuous: zero delay over delays long "
+    "against the decay and short against the blinking",
 )
 def g2_zero(
-    *,
-    occupations: Any,
-    period_decay: Any,
-    detected_per_decay: Any,
-    detected_per_pair: Any,
-    background_per_pulse: Any,
-    bright_share: Any,
+    *, coincidences: Any, signal_while_on: Any, active_background: Any, bright_share: Any
 ) -> Any:
-    r"""Coincidences of one pulse over those of neighbouring pulses.
+    r"""Coincidences at zero delay over those of neighbouring pulses, or of longer delays.
 
-    .. math:: g^2(0) = \frac{q (G + 2\mu b + b^2) + (1-q) b^2}{q (\mu + b)^2 + (1-q) b^2},
-       \quad G = 2 q_B B_0 \varphi_X \varphi_B
+    .. math:: g^2(0) = \frac{q (G + 2\mu b + b^2) + (1-q) b^2}{q (\mu + b)^2 + (1-q) b^2}
 
-    μ photons per pulse while on, b background per pulse, q share of the time on. Weak pumping:
-    :math:`\varphi_B/\varphi_X` (Nair et al.).
+    G pairs and μ photons of the source while on, b of the background, q share of the time on; per
+    pulse, or per second under continuous pumping. With q = 1: 1 + (g² − 1)ρ², ρ = μ/(μ + b) (Brouri
+    et al.). Weak pumping: φB/φX (Nair et al.).
     """
-    _, gone, gone_b, _, both = period_decay
-    in_x, in_b = occupations
-    photons = in_x * gone * detected_per_decay + in_b * (
-        gone_b * detected_per_pair + both * detected_per_decay
-    )
-    some = np.where(photons > 0, photons, 1.0)
-    pure = 2 * in_b * both * (detected_per_decay / some) * (detected_per_pair / some)
-    return blinking(pure, photons, background_per_pulse, bright_share)
+    dark = (1 - bright_share) * active_background**2
+    light = coincidences + active_background * (2 * signal_while_on + active_background)
+    total = (signal_while_on + active_background) ** 2
+    return (bright_share * light + dark) / (bright_share * total + dark)
 
 
-def blinking(pure: Any, signal: Any, background: Any, on: Any) -> Any:
-    """g2 of a source that is on for a share of the time, slowly against the delays compared.
-
-    pure: g2 of the signal alone; signal, background: photons per pulse or per second. Only their
-    shares of the whole are squared: the square of a faint signal would be lost as zero.
-    """
-    whole = np.where(signal + background > 0, signal + background, 1.0)
-    clean, stray = signal / whole, background / whole
-    dark = (1 - on) * stray**2
-    return (on * (pure * clean**2 + stray * (2 * clean + stray)) + dark) / (on + dark)
-
-
-@variant("g2_zero", pumping="continuous")
-def continuous_g2(
-    *,
-    saturation: Any,
-    steady_weight: Any,
-    detected_per_decay: Any,
-    detected_per_pair: Any,
-    decay_rates: Any,
-    bright_share: Any,
-    background_rate: Any,
-) -> Any:
-    r"""Zero delay under continuous pumping, over delays long against the decay.
-
-    .. math:: \frac{\varphi_X k_X \varphi_B k_B p_2}{(\varphi_X k_X p_1 + \varphi_B k_B p_2)^2},
-       \quad 1 + (g^2 - 1)\rho^2 \text{ with background}
-
-    With a share of the time off, over delays short against the blinking.
-    """
-    both = detected_per_decay + saturation * detected_per_pair
-    some = np.where(both > 0, both, 1.0)
-    pure = steady_weight * (detected_per_decay / some) * (detected_per_pair / some)
-    signal = decay_rates[0] / bright_share * both
-    return blinking(pure, signal, background_rate, bright_share)
+@variant("g2_zero", bright_share=1)
+def steady_g2(*, coincidences: Any, signal_while_on: Any, active_background: Any) -> Any:
+    """The same of an emitter that is always on: (G + 2μb + b²)/(μ + b)²."""
+    light = coincidences + active_background * (2 * signal_while_on + active_background)
+    return light / (signal_while_on + active_background) ** 2
