@@ -94,14 +94,19 @@ def g2_zero(
     pulse, or per second under continuous pumping. With q = 1: 1 + (g² − 1)ρ², ρ = μ/(μ + b) (Brouri
     et al.). Weak pumping: φB/φX (Nair et al.).
     """
-    dark = (1 - bright_share) * active_background**2
-    light = coincidences + active_background * (2 * signal_while_on + active_background)
-    total = (signal_while_on + active_background) ** 2
-    return (bright_share * light + dark) / (bright_share * total + dark)
+    pure, share = compared(coincidences, signal_while_on, active_background)
+    dark = (1 - bright_share) * share**2
+    return (bright_share * (pure + share * (2 - share)) + dark) / (bright_share + dark)
+
+
+def compared(coincidences: Any, signal: Any, background: Any) -> tuple[Any, Any]:
+    """Pairs over the square of all light, and the background's share; no square that underflows."""
+    total = signal + background
+    return coincidences / total / total, background / total
 
 
 @variant("g2_zero", bright_share=1)
 def steady_g2(*, coincidences: Any, signal_while_on: Any, active_background: Any) -> Any:
     """The same of an emitter that is always on: (G + 2μb + b²)/(μ + b)²."""
-    light = coincidences + active_background * (2 * signal_while_on + active_background)
-    return light / (signal_while_on + active_background) ** 2
+    pure, share = compared(coincidences, signal_while_on, active_background)
+    return pure + share * (2 - share)
