@@ -9,7 +9,8 @@ from __future__ import annotations
 from . import physics as _physics
 from .budget import budget
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
-from .evaluate import InputError, evaluate
+from .domain import InputError
+from .evaluate import evaluate
 from .exact import RecordError
 from .inputs import INPUTS
 from .maps import Axis, Map, make_map, mesh

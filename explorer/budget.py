@@ -7,7 +7,8 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-from .evaluate import Evaluation, InputError, voiding
+from .domain import InputError
+from .evaluate import Evaluation, voiding
 from .physics.photons import STREAMS
 
 if TYPE_CHECKING:

@@ -8,7 +8,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from .evaluate import Evaluation, InputError
+from .domain import InputError
+from .evaluate import Evaluation
 from .inputs import INPUTS
 from .physics.coupling import CIRCLE
 from .physics.window import line_density, outgoing_density, wandering_density

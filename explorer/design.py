@@ -10,7 +10,8 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, fields, replace
 from typing import Any
 
-from .evaluate import Evaluation, InputError, evaluated, quoted, shown
+from .domain import InputError, quoted, shown
+from .evaluate import Evaluation, evaluated
 from .inputs import INPUTS
 from .registry import REGISTRY
 

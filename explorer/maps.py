@@ -11,7 +11,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .design import Requirement
-from .evaluate import Evaluation, InputError, quoted
+from .domain import InputError, quoted
+from .evaluate import Evaluation
 from .inputs import INPUTS
 from .registry import REGISTRY
 

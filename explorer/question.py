@@ -16,7 +16,8 @@ import numpy as np
 from .budget import Step, budget_rows
 from .curves import Angles, Colours, angles, colours
 from .design import Design, Requirement
-from .evaluate import Evaluation, InputError
+from .domain import InputError
+from .evaluate import Evaluation
 from .inputs import INPUTS
 from .maps import FRONTIERS, Axis, Map, make_map
 from .registry import REGISTRY, dependencies

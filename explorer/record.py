@@ -13,10 +13,9 @@ from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
-from .advice import record_cautions
 from .budget import budget_rows
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
-from .evaluate import InputError, quoted
+from .domain import InputError, quoted
 from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
 from .registry import REGISTRY
@@ -166,6 +165,8 @@ def record_of(design: Design) -> Json:
 
 def _cautions(design: Design) -> list[Json]:
     """The model's cautions that hold here, and those of the records the values came from."""
+    from .advice import record_cautions  # reads the catalogue, which nobody has asked for before
+
     model = [(name, REGISTRY.cautions[name].sentence) for name in design.cautions()]
     return [
         {"name": name, "sentence": sentence}

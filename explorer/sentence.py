@@ -12,7 +12,7 @@ import numpy as np
 from .budget import Step
 from .design import Design, Requirement, written
 from .inputs import INPUTS
-from .maps import Map
+from .maps import Axis, Map
 from .registry import REGISTRY
 from .units import text
 
@@ -138,8 +138,8 @@ def next_step(drawn: Map, place: tuple[float, float], requirements: Sequence[Req
         return f"nowhere on this map is everything met; {worst} is furthest from it"
     ny, nx = holds.shape
     rows, columns = np.nonzero(holds)
-    across = (columns + 0.5) / nx - float(drawn.x.fraction(place[0]))
-    up = (rows + 0.5) / ny - float(drawn.y.fraction(place[1]))
+    across = (columns + 0.5) / nx - _inside(drawn.x, place[0])
+    up = (rows + 0.5) / ny - _inside(drawn.y, place[1])
     nearest = int(np.argmin(across**2 + up**2))
     goals = []
     for axis, index, move, count in (
@@ -149,10 +149,17 @@ def next_step(drawn: Map, place: tuple[float, float], requirements: Sequence[Req
         if abs(move) > 0.75 / count:
             value = written(axis.name, float(axis.values[index]), 2)
             goals.append(f"{_name(axis.name)} {value}")
-    return f"nearest on this map: {' and '.join(goals)}" if goals else ""
+    return f"nearest design that meets all: {', '.join(goals)}" if goals else ""
+
+
+def _inside(axis: Axis, value: float) -> float:
+    """Fraction of an axis at a value; beyond its ends (zero on a logarithmic one), the ends."""
+    return float(np.clip(axis.fraction(value), 0.0, 1.0))
 
 
 def _name(name: str) -> str:
+    if INPUTS[name].symbol:
+        return INPUTS[name].symbol
     label = INPUTS[name].label
     return label[0].lower() + label[1:]
 
@@ -162,6 +169,6 @@ def _worst(drawn: Map, place: tuple[float, float], requirements: Sequence[Requir
     if drawn.binding is None:
         return "a requirement"
     ny, nx = drawn.binding.shape
-    column = min(max(int(float(drawn.x.fraction(place[0])) * nx), 0), nx - 1)
-    row = min(max(int(float(drawn.y.fraction(place[1])) * ny), 0), ny - 1)
+    column = min(int(_inside(drawn.x, place[0]) * nx), nx - 1)
+    row = min(int(_inside(drawn.y, place[1]) * ny), ny - 1)
     return REGISTRY.quantities[requirements[int(drawn.binding[row, column])].quantity].label

@@ -99,7 +99,7 @@ def _ends(entry: Input, point: Mapping[str, Any]) -> tuple[Any, Any]:
     low, high = _end(entry.low, point), _end(entry.high, point)
     if entry.name == "numerical_aperture":
         side = SIDES[point.get("reference_side", "air")]
-        high = np.minimum(high, side * (1 + 1e-12)) * (1 - 1e-12)
+        high = np.where(np.asarray(high) > side, side, np.asarray(high) * (1 - 1e-12))
     if entry.name.endswith("_linewidth"):
         high = WIDEST * point.get("emission_wavelength", INPUTS["emission_wavelength"].default)
     start, stop = REACH.get(entry.name, (math.nan, math.nan))

@@ -39,7 +39,7 @@ from explorer import (
     save_design,
     units,
 )
-from explorer.evaluate import FARTHEST, shown
+from explorer.domain import FARTHEST, shown
 from explorer.record import design_from
 from explorer.registry import parameters
 

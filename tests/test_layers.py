@@ -14,7 +14,7 @@ PACKAGE = Path(__file__).resolve().parent.parent / "explorer"
 LAYERS = (
     ("units", "whole"),
     ("registry", "exact"),
-    ("inputs", "physics"),
+    ("inputs", "physics", "domain"),
     ("evaluate",),
     ("design", "budget", "published", "reading"),
     ("catalogue",),

@@ -14,7 +14,7 @@ import explorer
 import explorer.question as question_module
 from explorer.catalogue import emitters, resonators
 from explorer.design import Requirement
-from explorer.evaluate import InputError
+from explorer.domain import InputError
 from explorer.inputs import EMITTER
 from explorer.page.app import Explorer
 from explorer.page.canvas import unpack
@@ -422,6 +422,20 @@ def test_nonsense_in_a_box_is_said_beside_it_and_only_there(page) -> None:
     assert page.state.answer.values["quality_factor"] == 70.0
 
 
+def test_a_given_spectrum_stands_in_for_the_linewidth(page) -> None:
+    """A slider that does nothing must not look as if it did."""
+    row = row_of(page, "fast_linewidth")
+    assert not row.slider.disabled
+    page.state.take_record("emitter", "inas_gaas_dot", tuple(row.name for row in EMITTER))
+    assert page.state.answer.values["spectrum"] is not None
+    assert row.slider.disabled
+    assert row.box.disabled
+    assert row.box.value == "spectrum"
+    page.state.reset("spectrum")
+    assert not row.slider.disabled
+    assert row.box.value == "20"
+
+
 def test_requirements_are_edited_in_place(page) -> None:
     wanted = panel(page, "wanted")
     line = wanted.rows.children[0]
@@ -481,5 +495,5 @@ def test_two_pages_have_two_states(page) -> None:
 
 
 def test_a_question_checks_itself() -> None:
-    with pytest.raises(InputError):
+    with pytest.raises(explorer.InputError):
         Question(shown="beauty")

@@ -18,6 +18,9 @@ from .state import State
 #: Longest label that takes its symbol along.
 SHORT = 18
 
+#: The input that a given spectrum stands in for: its row says so and takes nothing.
+IDLE = "fast_linewidth"
+
 
 def typed(name: str, value: Any, digits: int = 12) -> str:
     """An input's value as its number box shows it: without the unit."""
@@ -85,8 +88,10 @@ class InputRow(VBox):
         given = name in answer.question.design.point
         self._syncing = True
         try:
+            idle = name == IDLE and answer.values["spectrum"] is not None
             if name not in self._state.problems:
-                self.box.value = typed(name, value, 12 if given else 4)
+                self.box.value = "spectrum" if idle else typed(name, value, 12 if given else 4)
+            self.box.disabled = self.slider.disabled = idle
             self._value = value
             stop = self._scale.stop(value)
             if abs(stop - self.slider.value) > self._scale.step / 4:

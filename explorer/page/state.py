@@ -13,7 +13,7 @@ from dataclasses import replace
 from typing import Any
 
 from ..design import Design
-from ..evaluate import InputError
+from ..domain import InputError
 from ..question import SLICE, Answer, Answers, Question
 from .records import point_of
 

@@ -18,7 +18,6 @@ NEGLIGIBLE = 40.0
 UNIFORM_MATCH = 1.2564
 
 _RULE = legendre(48)
-_PUPIL_RULE = panels((0.0, 0.25, 0.5, 0.75, 1.0), 24)
 
 
 @part
@@ -208,9 +207,12 @@ def pupil_overlap(b1: Any, b2: Any, sine: Any, tilt: Any) -> Any:
         bessel = j0(tilt * np.sqrt(t2)) if np.any(tilt) else 1.0
         return np.exp(-(b1 + b2) * t2) * np.sqrt((2 - t2) / 2) * bessel * 2 * c**2
 
+    # A tilted pupil oscillates with t, the root of x: more panels the more periods, even in t.
+    count = 4 + min(int(np.max(tilt * np.sqrt(farthest), initial=0.0) / 25), 400)
+    rule = panels(tuple((np.linspace(0.0, 1.0, count + 1) ** 2).tolist()), 24)
     shape = np.broadcast_shapes(*(np.shape(value) for value in (b1, b2, sine, tilt)))
     zero = np.zeros(shape)
-    amplitude = integral(integrand, zero, zero + 1, _PUPIL_RULE, int(np.prod(shape))) * depth
+    amplitude = integral(integrand, zero, zero + 1, rule, int(np.prod(shape))) * depth
     return 4 * b2 * amplitude**2
 
 

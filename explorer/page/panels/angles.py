@@ -59,11 +59,11 @@ class AnglesPanel(VBox):
             x=[[a, a] for a in FIBRE_APERTURES], y=[[0, 0.06]] * len(FIBRE_APERTURES),
             scales=scales, colors=[AMBER], stroke_width=2,
         )
-        across = Axis(scale=scales["x"], label="NA", label_offset="2.1em", tick_values=[0, 0.5, 1], grid_lines="none", color=INK, label_color=INK)
+        across = Axis(scale=scales["x"], label="NA", label_offset="2.4em", tick_values=[0, 0.5, 1], grid_lines="none", color=INK, label_color=INK)
         up = Axis(scale=scales["y"], side="left", tick_values=[0, 0.5, 1], grid_lines="none", color=INK)
         figure = Figure(
             marks=[fibres, self.share, self.here], axes=[across, up],
-            fig_margin={"top": 8, "bottom": 40, "left": 36, "right": 12}, animation_duration=0,
+            fig_margin={"top": 8, "bottom": 42, "left": 36, "right": 12}, animation_duration=0,
         )
         figure.add_class("x-share")
         return figure

@@ -43,10 +43,10 @@ class ColoursPanel(VBox):
             x=[0, 1], y=[0, 0], scales=scales, colors=[INK], stroke_width=2, line_style="dashed"
         )
         self.leaving = Lines(x=[0, 1], y=[0, 0], scales=scales, colors=[RED], stroke_width=2.5)
-        self.axis = Axis(scale=self.across, grid_lines="none", color=INK, label="nm", label_offset="2.1em", label_color=INK)
+        self.axis = Axis(scale=self.across, grid_lines="none", color=INK, label="nm", label_offset="2.4em", label_color=INK)
         return Figure(
             marks=[self.passed, self.emitter, self.resonator, self.leaving], axes=[self.axis],
-            fig_margin={"top": 6, "bottom": 40, "left": 18, "right": 20}, animation_duration=0,
+            fig_margin={"top": 6, "bottom": 42, "left": 18, "right": 20}, animation_duration=0,
         )
 
     def _draw(self, answer: Answer) -> None:

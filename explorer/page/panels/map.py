@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 from ipywidgets import Button, Dropdown, HBox, Label, ToggleButton, VBox
 
+from ...design import Requirement
 from ...inputs import INPUTS
 from ...maps import FRONTIERS, Map
 from ...question import Answer, Question, default_axis
@@ -279,10 +280,16 @@ def notes(border: list[Any], drawn: Map, answer: Answer) -> tuple[Note, ...]:
                 best[index] = path[run]
     entries = answer.question.design.requirements
     return tuple(
-        Note(*map(float, run[len(run) // 2]), REGISTRY.quantities[entries[index].quantity].label)
+        Note(*map(float, run[len(run) // 2]), wish(entries[index]))
         for index, run in best.items()
         if index < len(entries)
     )
+
+
+def wish(entry: Requirement) -> str:
+    """A requirement as the outline names it: 'Photons/s in the fibre ≥ 20 M/s'."""
+    quantity = REGISTRY.quantities[entry.quantity]
+    return f"{quantity.label} {entry.sense} {text(entry.limit, quantity.unit, 2)}"
 
 
 def described(answer: Answer, drawn: Map) -> str:
