@@ -17,6 +17,7 @@ from .maps import Axis, Map, make_map, mesh
 from .record import design_text, load_design, save_design
 from .registry import REGISTRY as _REGISTRY
 from .registry import check as _check
+from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
 
 _check()
@@ -26,8 +27,6 @@ QUANTITIES = _REGISTRY.quantities
 
 #: Every caution by name.
 CAUTIONS = _REGISTRY.cautions
-
-__version__ = "0.1.0"
 
 __all__ = [
     "CAUTIONS",

@@ -21,6 +21,7 @@ from .inputs import INPUTS
 from .registry import REGISTRY
 from .schema import FORMAT, VERSION, problems
 from .units import text
+from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
 
 #: Largest record that is read [bytes].
@@ -121,8 +122,6 @@ def _sources(design: Design) -> Json:
 
 def record_of(design: Design) -> Json:
     """The record of a design as a JSON object; numbers are exact decimals (see `exact`)."""
-    from . import __version__
-
     return {
         "format": FORMAT,
         "version": VERSION,
