@@ -14,7 +14,6 @@ import explorer
 import explorer.question as question_module
 from explorer.catalogue import emitters, resonators
 from explorer.design import Requirement
-from explorer.domain import InputError
 from explorer.inputs import EMITTER
 from explorer.page.app import Explorer
 from explorer.page.canvas import unpack
