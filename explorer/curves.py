@@ -12,6 +12,8 @@ from .domain import InputError
 from .evaluate import Evaluation
 from .inputs import INPUTS
 from .physics.coupling import CIRCLE
+from .physics.farfield import pattern_integral
+from .physics.measured_pattern import power_inside
 from .physics.window import line_density, outgoing_density, wandering_density
 from .registry import REGISTRY
 from .whole import Lines, Pattern, Samples
@@ -154,11 +156,13 @@ def angles(work: Evaluation, count: int = 91) -> Angles:
         power = np.exp(-a * np.sin(theta) ** 2) * (1 + np.cos(theta) ** 2) / 2
     index = float(work.value("medium_index"))
     aperture = np.linspace(0.0, 1.0, 61)[1:] * index * (1 - 1e-9)
-    side = {} if aperture[-1] <= 1 else {"reference_side": "glass"}
-    aperture = np.minimum(aperture, 1.52) if side else aperture
-    given = {name: work.value(name) for name in work.given}
-    whole = Evaluation({**given, **side, "numerical_aperture": aperture})
-    collected = np.asarray(whole.result("collected_share"))
+    sines = aperture / index
+    inside = (
+        power_inside(pattern, sines)
+        if isinstance(pattern, Pattern)
+        else pattern_integral(float(work.value("sharpness")), sines)
+    )
+    collected = np.asarray(inside) / float(work.value("whole_pattern"))
     edge = float(np.arcsin(work.value("aperture_sine")))
     return Angles(theta, power, edge, aperture, collected)
 

@@ -180,3 +180,23 @@ def make_map(
     for name in marks:
         caution |= worked[name]
     return Map(x, y, values, margin, binding, caution)
+
+
+def stacked(bands: Sequence[Map], y: Axis) -> Map:
+    """One map from bands of its rows, lowest first; `y` is the axis of the whole."""
+    if len(bands) == 1:
+        return bands[0]
+
+    def joined(arrays: Sequence[Any]) -> Any:
+        return None if arrays[0] is None else np.concatenate(arrays)
+
+    first = bands[0]
+    values = {name: joined([band.values[name] for band in bands]) for name in first.values}
+    return Map(
+        first.x,
+        y,
+        values,
+        joined([band.margin for band in bands]),
+        joined([band.binding for band in bands]),
+        joined([band.caution for band in bands]),
+    )

@@ -6,6 +6,7 @@ did not change is the same object as before, so whoever draws it can tell by ide
 
 from __future__ import annotations
 
+import itertools
 import time
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
@@ -14,17 +15,23 @@ from typing import Any
 import numpy as np
 
 from .budget import Step, budget_rows
-from .curves import Angles, Colours, angles, colours
+from .curves import Angles, Colours, Cut, angles, colours, cut
 from .design import Design, Requirement
 from .domain import InputError
 from .evaluate import Evaluation
 from .inputs import INPUTS
-from .maps import FRONTIERS, Axis, Map, make_map
+from .maps import FRONTIERS, Axis, Map, make_map, stacked
 from .registry import REGISTRY, dependencies
 from .sentence import Sentence, next_step, sentence
 
 #: Longest piece of work between two chances to hear of a newer question [s].
 SLICE = 0.04
+
+#: Longest that a map may take while a hand moves [s]; a slower one is drawn in fewer cells first.
+DRAFT = 0.007
+
+#: Cells along each axis of a draft.
+COARSER = (192, 160, 128, 96, 64)
 
 #: Quantities that a page always reads out.
 READ_OUT = (
@@ -46,18 +53,26 @@ READ_OUT = (
 
 @dataclass(frozen=True)
 class Question:
-    """A design, and what is shown of it: quantity, axes, and layers of the map that are on."""
+    """A design, and what is shown of it: quantity, axes, layers of the map that are on, and a cut.
+
+    cut: quantity and input of a curve through the point, or None.
+    """
 
     design: Design = field(default_factory=Design)
     shown: str = "rate_in_fibre"
     x: Axis = field(default_factory=lambda: Axis("mode_volume", 1e-4, 1e3))
     y: Axis = field(default_factory=lambda: Axis("quality_factor", 3.0, 1e6))
     layers: frozenset[str] = frozenset({"outline", "bands", "marks"})
+    cut: tuple[str, str] | None = None
 
     def __post_init__(self) -> None:
         known = REGISTRY.quantities.get(self.shown)
         if known is None:
             raise InputError(f"{self.shown!r:.60} is no quantity")
+        if self.cut is not None:
+            quantity, name = self.cut
+            if quantity not in REGISTRY.quantities or name not in INPUTS:
+                raise InputError(f"{self.cut!r:.80} names no quantity and input to cut along")
         if self.x.name == self.y.name:
             raise InputError(
                 f"a map needs two different inputs; both are {self.x.name}", self.x.name
@@ -71,7 +86,7 @@ class Answer:
     values: every input of the design, given or filled in. outcome: quantities by name. cautions:
     names of those that hold. rows: the budget. width: of the emission [m]. half_angles: beam
     half-angle along the horizontal axis [rad], or None where that is not the mode volume. hint: the
-    next step that the map shows.
+    next step that the map shows. rest: a draft of the map is there, the whole one can wait.
     """
 
     question: Question
@@ -85,8 +100,10 @@ class Answer:
     width: float
     half_angles: Any
     map: Map | None
+    cut: Cut | None
     whole: bool
     hint: str = ""
+    rest: bool = False
 
 
 def _key(point: Mapping[str, Any], names: frozenset[str]) -> tuple[Any, ...]:
@@ -125,14 +142,32 @@ class Answers:
         if "map" in self._parts and self._parts["map"][0] == key:
             yield self._finished(first, self._parts["map"][1])
             return
-        last = self._parts["map"][1] if "map" in self._parts else None
-        cells = question.x.count * question.y.count
-        if self._pace * cells > SLICE:
-            yield replace(first, map=last if self._same_place(last, question) else None)
-        for drawn in self._maps(question):
-            yield replace(first, map=drawn)
-        self._parts["map"] = (key, drawn)
-        yield self._finished(first, drawn)
+        waiting = first
+        if self._pace * question.x.count * question.y.count > DRAFT:
+            for waiting in self._drafted(question, key, first):
+                yield waiting
+            waiting = replace(waiting, rest=False)
+        for drawn in self._bands(question):
+            if drawn is None:
+                yield waiting
+            else:
+                self._parts["map"] = (key, drawn)
+                yield self._finished(first, drawn)
+
+    def _drafted(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
+        """A map of fewer cells, as many as DRAFT allows; a moment to rest before the whole one."""
+        if self._parts.get("draft", (None, None))[0] != key:
+            counts = [count for count in COARSER if self._pace * count**2 <= DRAFT]
+            count = counts[0] if counts else COARSER[-1]
+            if self._pace * count**2 > SLICE:  # slow even so: the readouts do not wait for it
+                last = self._parts["map"][1] if "map" in self._parts else None
+                yield replace(first, map=last if self._same_place(last, question) else None)
+            x, y = (
+                replace(axis, count=min(count, axis.count)) for axis in (question.x, question.y)
+            )
+            self._parts["draft"] = (key, self._timed_map(question, x, y))
+        drawn = self._parts["draft"][1]
+        yield replace(self._finished(first, drawn), whole=False, rest=True)
 
     def _finished(self, first: Answer, drawn: Map) -> Answer:
         said = "" if first.sentence.met else self._hint(first, drawn)
@@ -155,17 +190,29 @@ class Answers:
             and question.shown in last.values
         )
 
-    def _maps(self, question: Question) -> Iterator[Map]:
-        """The map, coarser first where it takes long."""
-        counts = [question.x.count]
-        while self._pace * counts[0] ** 2 > SLICE and counts[0] > 16:
-            counts.insert(0, counts[0] // 2)
-        for count in counts:
-            start = time.perf_counter()
-            x, y = (replace(axis, count=count) for axis in (question.x, question.y))
-            drawn = self._map(question, x, y)
-            self._pace = (time.perf_counter() - start) / count**2
-            yield drawn
+    def _bands(self, question: Question) -> Iterator[Map | None]:
+        """The whole map in bands of rows of at most about SLICE seconds; None between two."""
+        x, y = question.x, question.y
+        rows = int(np.clip(SLICE / max(self._pace * x.count, 1e-12), 2, y.count))
+        edges = [*range(0, y.count - 1, rows), y.count]
+        if y.count - edges[-2] < 2:  # no band of a single row
+            edges[-2] -= 1
+        bands: list[Map] = []
+        for start, stop in itertools.pairwise(edges):
+            if bands:
+                yield None
+            low, high = (float(y.at(edge / y.count)) for edge in (start, stop))
+            part = replace(y, low=low, high=high, count=stop - start)
+            bands.append(self._timed_map(question, x, part if stop - start < y.count else y))
+        yield stacked(bands, y)
+
+    def _timed_map(self, question: Question, x: Axis, y: Axis) -> Map:
+        """A map, and how long a cell takes, not counting what others on the machine take."""
+        start = time.thread_time()
+        design, wanted = question.design, self._wanted(question)
+        drawn = make_map(design.point, x, y, wanted, design.requirements, self._marks(question))
+        self._pace = (time.thread_time() - start) / (x.count * y.count)
+        return drawn
 
     def _without_map(self, question: Question) -> Answer:
         design = question.design
@@ -201,8 +248,9 @@ class Answers:
             lambda: _along(design, question.x, "half_angle"),
         )
         width = float(work.value("emission_width"))
+        line = self._part("cut", (question.cut, design.point), lambda: _cut(work, question.cut))
         return Answer(
-            question, values, outcome, marks, rows, said, wide, seen, width, beam, None, False
+            question, values, outcome, marks, rows, said, wide, seen, width, beam, None, line, False
         )
 
     def _wanted(self, question: Question) -> tuple[str, ...]:
@@ -234,12 +282,6 @@ class Answers:
             frozenset(_key(design.point, names)),
         )
 
-    def _map(self, question: Question, x: Axis, y: Axis) -> Map:
-        design = question.design
-        return make_map(
-            design.point, x, y, self._wanted(question), design.requirements, self._marks(question)
-        )
-
 
 def _scalar(work: Evaluation, name: str) -> Any:
     return np.asarray(work.result(name)).reshape(()).item()
@@ -251,6 +293,13 @@ def _along(design: Design, axis: Axis, quantity: str) -> Any:
         return None
     value = Evaluation({**design.point, axis.name: axis.values}).result(quantity)
     return np.asarray(value) if np.shape(value) == axis.values.shape else None
+
+
+def _cut(work: Evaluation, wanted: tuple[str, str] | None) -> Cut | None:
+    """A curve through the point along one input's slider range; None where none is wanted."""
+    if wanted is None:
+        return None
+    return cut(work, *wanted, default_axis(wanted[1], 121).values)
 
 
 def default_axis(name: str, count: int = 256) -> Axis:

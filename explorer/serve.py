@@ -38,6 +38,7 @@ def serve(*, port: int = 0, open_browser: bool = True, code: str = PAGE_CODE) ->
             folder = Path(name)
             notebook = write_private_files(folder, code)
             use_private_files(folder)
+            keep_memory()
             # Voilà takes a second to load: only now, so that a taken port is told at once.
             from explorer.page import server
 
@@ -106,6 +107,20 @@ def use_private_files(folder: Path) -> None:
     """Put the kernel and the shipped template where Voilà looks first."""
     paths = [str(folder), str(TEMPLATES), os.environ.get("JUPYTER_PATH", "")]
     os.environ["JUPYTER_PATH"] = os.pathsep.join(path for path in paths if path)
+
+
+def keep_memory() -> None:
+    """Let kernels keep freed memory: a map's arrays are then not fetched anew from the system.
+
+    That halves the time of a map under Linux's usual allocator, which reads these names; others
+    ignore them. What the person set already stays.
+    """
+    for name, size in (
+        ("MALLOC_MMAP_THRESHOLD_", 1 << 30),
+        ("MALLOC_TRIM_THRESHOLD_", 1 << 28),
+        ("MALLOC_TOP_PAD_", 1 << 24),
+    ):
+        os.environ.setdefault(name, str(size))
 
 
 def _announcement(listener: socket, open_browser: bool) -> Callable[[], None]:

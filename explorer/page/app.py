@@ -12,6 +12,7 @@ from .panels.angles import AnglesPanel
 from .panels.budget import BudgetPanel
 from .panels.cautions import CautionsPanel
 from .panels.colours import ColoursPanel
+from .panels.cut import CutPanel
 from .panels.emitter import EmitterPanel
 from .panels.files import FilesPanel
 from .panels.headline import HeadlinePanel
@@ -41,7 +42,13 @@ class Explorer(Box):
                 _seat("top", HeadlinePanel(state), FilesPanel(state)),
                 _seat("left", WantedPanel(state), EmitterPanel(state), ValuesPanel(state)),
                 _seat("middle", MapPanel(state)),
-                _seat("right", BudgetPanel(state), AnglesPanel(state), ColoursPanel(state)),
+                _seat(
+                    "right",
+                    BudgetPanel(state),
+                    AnglesPanel(state),
+                    ColoursPanel(state),
+                    CutPanel(state),
+                ),
                 _seat("foot", CautionsPanel(state)),
             ]
         )

@@ -48,9 +48,16 @@ class Backdrop:
             return _NOTHING
         values = answer.values
         watched = (
-            "emission_wavelength", "fast_linewidth", "slow_linewidth", "spectrum",
-            "resonance_wavelength", "refractive_index", "medium_index", "mode_profile",
-            "mode_length", "pattern",
+            "emission_wavelength",
+            "fast_linewidth",
+            "slow_linewidth",
+            "spectrum",
+            "resonance_wavelength",
+            "refractive_index",
+            "medium_index",
+            "mode_profile",
+            "mode_length",
+            "pattern",
         )
         key = (
             question.x,

@@ -43,7 +43,9 @@ class InputRow(VBox):
             label = self.entry.label
         self.label = Label(label, tooltip=self.entry.meaning)
         self.label.add_class("x-name")
-        self.box = Text(continuous_update=False, tooltip=f"{self.entry.meaning} Typical: {self.entry.typical}")
+        self.box = Text(
+            continuous_update=False, tooltip=f"{self.entry.meaning} Typical: {self.entry.typical}"
+        )
         self.box.add_class("x-number")
         self.unit = Label("" if self.entry.shown == "1" else self.entry.shown)
         self.unit.add_class("x-unit")

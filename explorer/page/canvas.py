@@ -139,7 +139,7 @@ def pack(picture: Picture) -> bytes:
             raise ValueError(f"{name} has the shape {np.shape(mask)}, values {values.shape}")
         if mask is not None and np.any(mask):
             arrays[name] = _planes(np.asarray(mask).astype("u1"))
-    return _message(header, arrays | {"values": np.ascontiguousarray(values, "<f4")})
+    return message_of(header, arrays | {"values": np.ascontiguousarray(values, "<f4")})
 
 
 def unpack(message: bytes) -> tuple[dict[str, Any], dict[str, np.ndarray]]:
@@ -189,7 +189,8 @@ def _joined(lines: tuple[Line, ...]) -> tuple[list[dict[str, Any]], np.ndarray, 
     return rows, points, starts
 
 
-def _message(header: dict[str, Any], arrays: dict[str, np.ndarray]) -> bytes:
+def message_of(header: dict[str, Any], arrays: dict[str, np.ndarray]) -> bytes:
+    """Header and arrays in the layout that the module describes."""
     parts: list[Any] = []  # arrays are joined as they are: a copy less of the values
     places, offset = {}, 0
     for name, array in arrays.items():

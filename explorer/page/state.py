@@ -17,6 +17,9 @@ from ..domain import InputError
 from ..question import SLICE, Answer, Answers, Question
 from .records import point_of
 
+#: How long a hand must rest before a draft of the map gives way to the whole map [s].
+REST = 0.25
+
 Listener = Callable[[Answer], None]
 
 
@@ -145,6 +148,8 @@ class State:
                 if first and not newest.whole and _in_a_loop():
                     self._tell(newest)
                 first = False
+                if newest.rest and self._later(REST):
+                    break
                 if not newest.whole and time.perf_counter() > end and self._later():
                     break
         except InputError as error:  # an axis of the map reaches beyond what another input allows
@@ -163,10 +168,10 @@ class State:
         for listener in self._listeners:
             listener(answer)
 
-    def _later(self) -> bool:
+    def _later(self, delay: float = 0.001) -> bool:
         if not _in_a_loop():
             return False
-        self._handle = asyncio.get_running_loop().call_later(0.001, self._go_on)
+        self._handle = asyncio.get_running_loop().call_later(delay, self._go_on)
         return True
 
 

@@ -4,12 +4,11 @@ from __future__ import annotations
 
 import math
 
-from bqplot import Axis, Figure, LinearScale, Lines
 from ipywidgets import HTML, Label, VBox
 
 from ...curves import Colours
 from ...question import Answer
-from ..look import AMBER, INK, QUIET, RED
+from ..plot import Curve, Frame, Plot
 from ..state import State
 
 
@@ -22,57 +21,35 @@ class ColoursPanel(VBox):
         title.add_class("x-title")
         legend = HTML(
             '<span class="x-key x-emitter">emitter</span><span class="x-key x-resonator">resonator'
-            '</span><span class="x-key x-leaves">leaves the mode</span>'
+            '</span><span class="x-key x-leaves">leaves</span>'
         )
-        super().__init__([title, legend, self._figure()])
+        self.plot = Plot()
+        self.plot.add_class("x-plot")
+        super().__init__([title, legend, self.plot])
         self.add_class("panel-colours")
         state.on_answer(self._draw)
-
-    def _figure(self) -> Figure:
-        self.across = LinearScale(min=0.0, max=1.0)
-        scales = {"x": self.across, "y": LinearScale(min=0.0, max=1.06)}
-        self.emitter = Lines(
-            x=[0, 1], y=[0, 0], scales=scales, colors=[AMBER], fill="bottom",
-            fill_colors=[AMBER], fill_opacities=[0.18], stroke_width=2,
-        )
-        self.passed = Lines(
-            x=[0, 1], y=[0, 0], scales=scales, colors=[QUIET], fill="bottom",
-            fill_colors=[QUIET], fill_opacities=[0.25], stroke_width=0,
-        )
-        self.resonator = Lines(
-            x=[0, 1], y=[0, 0], scales=scales, colors=[INK], stroke_width=2, line_style="dashed"
-        )
-        self.leaving = Lines(x=[0, 1], y=[0, 0], scales=scales, colors=[RED], stroke_width=2.5)
-        self.axis = Axis(scale=self.across, grid_lines="none", color=INK, label="nm", label_offset="2.4em", label_color=INK)
-        return Figure(
-            marks=[self.passed, self.emitter, self.resonator, self.leaving], axes=[self.axis],
-            fig_margin={"top": 6, "bottom": 42, "left": 18, "right": 20}, animation_duration=0,
-        )
 
     def _draw(self, answer: Answer) -> None:
         seen = answer.colours
         if seen is self._drawn:
             return
         self._drawn = seen
-        nanometres = seen.wavelength * 1e9
-        # The limits first: new ones make the browser draw every curve again.
-        low, high, marks = limits(float(nanometres[0]), float(nanometres[-1]))
-        if (low, high) != (self.across.min, self.across.max):
-            self.axis.tick_values = marks
-            with self.across.hold_sync():
-                self.across.min, self.across.max = low, high
+        x = seen.wavelength * 1e9
+        low, high, marks = limits(float(x[0]), float(x[-1]))
         curves = [
-            (self.emitter, seen.emitter),
-            (self.resonator, seen.resonator),
-            (self.leaving, seen.leaving),
+            Curve(x, seen.emitter, "amber", 2.0, fill="base"),
+            Curve(x, seen.resonator, "ink", 2.0, dashed=True),
+            Curve(x, seen.leaving, "red"),
         ]
-        filtered = bool((seen.passed < 1).any())
-        self.passed.visible = filtered
-        if filtered:
-            curves.append((self.passed, seen.passed))
-        for mark, values in curves:
-            with mark.hold_sync():
-                mark.x, mark.y = nanometres, values
+        if (seen.passed < 1).any():
+            curves.insert(0, Curve(x, seen.passed, "quiet", 0.0, fill="base", opacity=0.22))
+        ticks = tuple((mark, f"{mark:.10g}") for mark in marks)
+        self.plot.show(
+            Frame((low, high), (0.0, 1.06), ticks, label="nm"),
+            curves,
+            f"Spectra from {low:g} to {high:g} nm: the emitter's own, the resonance, and what "
+            "leaves through the mode, each over its maximum.",
+        )
 
 
 def limits(low: float, high: float) -> tuple[float, float, list[float]]:

@@ -21,7 +21,9 @@ class EmitterPanel(VBox):
         self._syncing = False
         title = Label("Emitter")
         title.add_class("x-title")
-        self.sources = Button(description="sources", tooltip="Where the emitter's numbers come from")
+        self.sources = Button(
+            description="sources", tooltip="Where the emitter's numbers come from"
+        )
         self.sources.add_class("x-link")
         head = HBox([title, self.sources])
         head.add_class("x-head")
@@ -50,7 +52,9 @@ class EmitterPanel(VBox):
 
     def _draw(self, answer: Answer) -> None:
         self._syncing = True
-        self.menu.value = answer.question.design.emitter if answer.question.design.emitter in emitters() else ""
+        self.menu.value = (
+            answer.question.design.emitter if answer.question.design.emitter in emitters() else ""
+        )
         self._syncing = False
         self._write(answer)
 
@@ -69,4 +73,3 @@ class EmitterPanel(VBox):
             for row in EMITTER
         )
         self.text.value = f"{body}<ul>{rows}</ul>"
-

@@ -36,10 +36,14 @@ class FilesPanel(VBox):
         kind, name = content.get("kind"), str(content.get("name", ""))[:200]
         if kind == "save":
             design = self._state.question.design
-            self.files.send({"kind": "file", "name": file_name(design.name)}, [design_text(design).encode()])
+            self.files.send(
+                {"kind": "file", "name": file_name(design.name)}, [design_text(design).encode()]
+            )
         elif kind == "too large":
             size = float(content.get("size", 0)) / 1e6
-            self._state.refuse("", f"{name} has {size:.0f} MB; a design has at most {LARGEST / 1e6:.0f} MB")
+            self._state.refuse(
+                "", f"{name} has {size:.0f} MB; a design has at most {LARGEST / 1e6:.0f} MB"
+            )
         elif kind == "load" and buffers:
             try:
                 design = design_from(bytes(buffers[0]), name)

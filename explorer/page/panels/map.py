@@ -157,7 +157,11 @@ class MapPanel(VBox):
             cautioned=caution if caution is not None and caution.any() else None,
             caution_texts=("a caution holds",),
             holds=None if drawn.margin is None else drawn.margin >= 0,
-            lines=(*iso_lines(name, drawn, scale, layers), *frontiers(drawn, layers), *outline(border)),
+            lines=(
+                *iso_lines(name, drawn, scale, layers),
+                *frontiers(drawn, layers),
+                *outline(border),
+            ),
             labels=notes(border, drawn, answer),
             bands=back.bands if "all_bands" in layers else tuple(b for b in back.bands if b.own),
             marks=back.marks if "marks" in layers else (),
@@ -195,7 +199,9 @@ def colour_scale(name: str, drawn: Map) -> ColourScale:
     quantity = REGISTRY.quantities[name]
     unit = {"1": "", "rad": "°"}.get(quantity.unit, quantity.unit)
     if quantity.kind == "choice":
-        return ColourScale(quantity.label, 0, len(quantity.choices) - 1, categories=quantity.choices)
+        return ColourScale(
+            quantity.label, 0, len(quantity.choices) - 1, categories=quantity.choices
+        )
     if quantity.kind == "mask":
         return ColourScale(quantity.label, 0, 1, categories=("no", "yes"))
     values = coded(name, drawn.values[name])
@@ -305,5 +311,3 @@ def described(answer: Answer, drawn: Map) -> str:
         f"Map of {quantity.label} over {INPUTS[drawn.x.name].label} and {INPUTS[drawn.y.name].label}."
         f" At the design point: {here}.{region} Arrow keys move the point."
     )
-
-
