@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from .domain import InputError
 from .evaluate import Evaluation, voiding
-from .physics.photons import STREAMS
+from .physics.photons import STEPS, STREAMS
 
 if TYPE_CHECKING:
     import pandas
@@ -64,3 +64,6 @@ def budget(point: Mapping[str, Any]) -> pandas.DataFrame:
         columns=[*STREAMS, "total", "factor"],
     )
     return table.astype(float)
+
+
+__all__ = ["STEPS", "STREAMS", "Step", "budget", "budget_rows"]

@@ -44,7 +44,7 @@ def shown(value: float, entry: Input, digits: int = 12) -> str:
 
 def allowed_range(entry: Input, low: float, high: float, reason: str = "") -> str:
     left = "above" if entry.low_open else "from"
-    right = "below" if entry.high_open else "to"
+    right = "to below" if entry.high_open else "to"
     text = f"{left} {shown(low, entry)} {right} {shown(high, entry)}"
     return text + (" or ∞" if entry.infinite else "") + reason
 

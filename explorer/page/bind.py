@@ -104,6 +104,7 @@ class InputRow(VBox):
 
     def _complain(self) -> None:
         text = self._state.problems.get(self.entry.name, "")
+        text = text.removeprefix(f"{self.entry.name} = ")  # its label stands above
         if text != self.wrong.value:
             self.wrong.value = text
         if text:  # a slider that was pulled to where it may not be goes back

@@ -12,7 +12,7 @@ from ..registry import part, quantity, variant
 #: The steps of the budget, in order; each is a total of photons (or pulses, or decays) per second.
 STEPS = (
     ("emitter on", "pulses or decays offered while the emitter is on"),
-    ("excited and decayed", "decays of exciton and biexciton"),
+    ("excited and decayed", "decays of exciton and biexciton: one pulse can start both"),
     ("photon emitted", "not lost in the emitter or to quenching"),
     ("escaped the resonator", "not absorbed in the resonator"),
     ("towards the optic", "not downwards or trapped"),

@@ -8,10 +8,13 @@ from html import escape
 
 from ipywidgets import HTML, Label, VBox
 
-from ...budget import Step
+from ...budget import STEPS, Step
 from ...question import Answer
 from ...units import text
 from ..state import State
+
+#: What each step counts.
+MEANINGS = dict(STEPS)
 
 #: Decades below the first step that a bar shows.
 DECADES = 3.0
@@ -58,7 +61,7 @@ def _line(row: Step, before: float, first: float, worst: float) -> str:
     factor = "" if row.factor is None else _factor(row.factor)
     strong = ' class="x-worst"' if row.factor is not None and row.factor <= worst < 0.995 else ""
     return (
-        f"<tr{strong}><th scope=row>{escape(row.step)}</th>"
+        f'<tr{strong}><th scope=row title="{escape(MEANINGS[row.step])}">{escape(row.step)}</th>'
         f'<td class="x-bar"><i style="width:{was:.1f}%"></i><b style="width:{left:.1f}%"></b>'
         f'<span class="{"x-in" if left > 48 else "x-out"}" style="--at:{max(was, left):.1f}%">'
         f"{escape(text(row.total, '1/s'))}</span></td>"
