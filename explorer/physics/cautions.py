@@ -10,6 +10,9 @@ from ..registry import caution, part, variant
 from ..whole import Lines, Pattern, Samples
 from .coupling import CIRCLE, angular_width
 
+#: Above 1 by more than rounding: an uncoupled emitter at the defaults lasts just a fifth of a period.
+HARDLY = 1 + 1e-6
+
 
 @caution(
     "The coupling exceeds the resonance frequency: the model has no number here.",
@@ -314,7 +317,7 @@ def continuous_beyond(*, mode_rate: Any, resonator_linewidth: Any, saturation: A
 )
 def mean_rates_used(*, slow_linewidth: Any, repetition_rate: Any, device_lifetime: Any) -> Any:
     """Slow wandering with a period under five lifetimes."""
-    return (slow_linewidth > 0) & (5 * repetition_rate * device_lifetime > 1)
+    return (slow_linewidth > 0) & (5 * repetition_rate * device_lifetime > HARDLY)
 
 
 @variant("mean_rates_used", pumping="continuous")
@@ -330,7 +333,7 @@ def mean_rates_used_continuous(*, slow_linewidth: Any) -> Any:
 )
 def overlapping_pulses(*, repetition_rate: Any, device_lifetime: Any) -> Any:
     """Period under five lifetimes in the device."""
-    return 5 * repetition_rate * device_lifetime > 1
+    return 5 * repetition_rate * device_lifetime > HARDLY
 
 
 @variant("overlapping_pulses", pumping="continuous")
