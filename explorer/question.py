@@ -28,10 +28,10 @@ from .sentence import Sentence, next_step, sentence
 SLICE = 0.04
 
 #: Longest that a map may take while a hand moves [s]; a slower one is drawn in fewer cells first.
-DRAFT = 0.007
+DRAFT = 0.003
 
 #: Cells along each axis of a draft.
-COARSER = (192, 160, 128, 96, 64)
+COARSER = (160, 128, 96, 64)
 
 #: Quantities that a page always reads out.
 READ_OUT = (

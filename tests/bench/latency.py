@@ -178,6 +178,7 @@ def steps(windows: Windows, presses: int = 40) -> dict[str, Steps]:
             for kind in kinds:
                 kind.times.clear()
     windows.take_point()
+    time.sleep(1)  # a map drawn in fewer cells while the sliders moved is drawn whole meanwhile
     before = windows.frame()
     for number in range(presses):
         bare.take(number)
