@@ -30,6 +30,9 @@ SLICE = 0.04
 #: Longest that a map may take while a hand moves [s]; a slower one is drawn in fewer cells first.
 DRAFT = 0.003
 
+#: Longest band of rows of the whole map [s]: a key pressed meanwhile waits no longer.
+BAND = 0.01
+
 #: Cells along each axis of a draft.
 COARSER = (160, 128, 96, 64)
 
@@ -191,9 +194,9 @@ class Answers:
         )
 
     def _bands(self, question: Question) -> Iterator[Map | None]:
-        """The whole map in bands of rows of at most about SLICE seconds; None between two."""
+        """The whole map in bands of rows of at most about BAND seconds; None between two."""
         x, y = question.x, question.y
-        rows = int(np.clip(SLICE / max(self._pace * x.count, 1e-12), 2, y.count))
+        rows = int(np.clip(BAND / max(self._pace * x.count, 1e-12), 2, y.count))
         edges = [*range(0, y.count - 1, rows), y.count]
         if y.count - edges[-2] < 2:  # no band of a single row
             edges[-2] -= 1

@@ -14,11 +14,11 @@ from typing import Any
 
 from ..design import Design
 from ..domain import InputError
-from ..question import SLICE, Answer, Answers, Question
+from ..question import BAND, SLICE, Answer, Answers, Question
 from .records import point_of
 
 #: How long a hand must rest before a draft of the map gives way to the whole map [s].
-REST = 0.25
+REST = 0.3
 
 Listener = Callable[[Answer], None]
 
@@ -141,7 +141,7 @@ class State:
         The first part goes out before the map is begun: the browser draws it meanwhile.
         """
         self._handle = None
-        end = time.perf_counter() + SLICE
+        end = time.perf_counter() + (SLICE if first else BAND)
         newest: Answer | None = None
         try:
             for newest in self._work or ():
