@@ -120,12 +120,14 @@ class Windows:
         self.use(self.bare)
         return self.timed({"target": ".noUi-handle", "key": "ArrowRight"}, ".bare")
 
-    def whole_key(self, name: str, drawn: str) -> Callable[[int], float | None]:
+    def whole_key(
+        self, name: str, drawn: str, keys: tuple[str, str] = ("ArrowRight", "ArrowLeft")
+    ) -> Callable[[int], float | None]:
         """Steps of one slider, to and fro, so that no end is reached."""
 
         def act(number: int) -> float | None:
             self.use(self.whole)
-            key = "ArrowLeft" if number // 10 % 2 else "ArrowRight"
+            key = keys[number // 10 % 2]
             return self.timed({"target": f".input-{name} .noUi-handle", "key": key}, READOUT, drawn)
 
         return act
@@ -166,7 +168,8 @@ def steps(windows: Windows, presses: int = 40) -> dict[str, Steps]:
     kinds = [
         Steps("label", windows.bare_key),
         Steps("linewidth", windows.whole_key("fast_linewidth", MAP)),
-        Steps("aperture", windows.whole_key("numerical_aperture", MAP)),
+        # Five stops at a time: a single one often changes no digit that is read out.
+        Steps("aperture", windows.whole_key("numerical_aperture", MAP, ("PageUp", "PageDown"))),
         Steps("quality factor", windows.whole_key("quality_factor", "")),
     ]
     bare = Steps("label beside drag", windows.bare_key)
