@@ -7,6 +7,7 @@ Importing this package loads no widget library and no pandas.
 from __future__ import annotations
 
 from . import physics as _physics
+from .broadening import Broadening
 from .budget import budget
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
 from .domain import InputError
@@ -33,6 +34,7 @@ __all__ = [
     "INPUTS",
     "QUANTITIES",
     "Axis",
+    "Broadening",
     "Decision",
     "Design",
     "InputError",

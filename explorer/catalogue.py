@@ -16,13 +16,17 @@ from importlib.resources.abc import Traversable
 from types import MappingProxyType
 from typing import Any, Final
 
+from scipy import constants
+
 from . import units
+from .broadening import Broadening
 from .inputs import INPUTS, slider_holds
 from .published import (
     COMMON,
     DECIDING,
     OTHER_VALUES,
     Enhancement,
+    Law,
     Line,
     Record,
     Reference,
@@ -124,18 +128,63 @@ def _record(kind: str, key: str, table: Mapping[str, Any]) -> Record:
         lines=tuple(_line(entry, values) for entry in table.get("line", ())),
         choices=MappingProxyType(dict(table.get("choices", {}))),
         enhancement=Enhancement(_value("enhancement", boost), boost["meaning"]) if boost else None,
+        law=_law(table["broadening"]) if "broadening" in table else None,
+        device=MappingProxyType(_values(table.get("device", {}), values)),
     )
 
 
-def _values(tables: Mapping[str, Any]) -> dict[str, Value]:
-    """Values in the order of the file; wavelength and index first, since the others convert by them."""
+def _law(table: Mapping[str, Any]) -> Law:
+    """A published broadening law; its terms in Hz and eV."""
+    missing = [
+        part for part in ("source", "where", "checked", "low", "high", "term") if part not in table
+    ]
+    if missing:
+        raise ValueError(f"broadening has no {missing[0]}")
+    terms = [_term(entry) for entry in table["term"]]
+    checked, source, reference = _cited("broadening", table)
+    cited = reference.text if reference else f"{COMMON}, no source"
+    shown = " + ".join(str(entry["printed"]) for entry in table["term"])
+    details = ", ".join(str(table[part]) for part in ("where", "conditions") if table.get(part))
+    return Law(
+        Broadening([term for term in terms if term], table["low"], table["high"]),
+        checked,
+        source,
+        f"{shown}, {table['low']:g}–{table['high']:g} K: {cited} ({details}); {checked}",
+        reference,
+    )
+
+
+def _term(entry: Mapping[str, Any]) -> tuple[str, float, float]:
+    """One term: form, coefficient [Hz], exponent or energy [eV]; 'printed' is as its source has it."""
+    if "printed" not in entry:
+        raise ValueError("a term of broadening does not say how it is printed")
+    size = units.to_si(float(entry["coefficient"]), str(entry["unit"]))
+    if units.si_unit(str(entry["unit"])) == "eV":
+        size *= constants.e / constants.h
+    elif units.si_unit(str(entry["unit"])) != "1/s":
+        raise ValueError(f"broadening: {entry['unit']!r} is no unit of a width")
+    if entry["form"] == "power":
+        return "power", size, float(entry["exponent"])
+    energy = units.to_si(float(entry["energy"]), str(entry.get("energy_unit", "meV")))
+    return str(entry["form"]), size, energy
+
+
+def _values(
+    tables: Mapping[str, Any], beside: Mapping[str, Value] | None = None
+) -> dict[str, Value]:
+    """Values in the order of the file; wavelength and index first, since the others convert by them.
+
+    beside: values that give wavelength and index where the tables do not.
+    """
+    beside = beside or {}
     unknown = [name for name in tables if name not in INPUTS and name not in OTHER_VALUES]
     if unknown:
         raise ValueError(f"values.{unknown[0]} is no input of a point")
     first = ("emission_wavelength", "resonance_wavelength", "refractive_index")
     known = {name: _value(name, tables[name]) for name in first if name in tables}
-    given = known.get("emission_wavelength") or known.get("resonance_wavelength")
-    index = known.get("refractive_index")
+    at = {**{name: beside[name] for name in first if name in beside}, **known}
+    given = at.get("emission_wavelength") or at.get("resonance_wavelength")
+    index = at.get("refractive_index")
     for name, table in tables.items():
         if name not in known:
             known[name] = _value(
@@ -154,7 +203,10 @@ def _line(entry: Mapping[str, Any], values: Mapping[str, Value]) -> Line:
     centre = _value("emission_wavelength", entry["centre"]) if "centre" in entry else None
     at = centre or values["emission_wavelength"]
     width = _value("width", entry["width"], wavelength=at.value_si) if "width" in entry else None
-    return Line(entry["role"], _value("share", entry["share"]), centre, width)
+    follows = bool(entry.get("follows", False))
+    if follows and "fast_linewidth" not in values:
+        raise ValueError("a line follows fast_linewidth, which is not given")
+    return Line(entry["role"], _value("share", entry["share"]), centre, width, follows)
 
 
 def _value(
@@ -167,10 +219,7 @@ def _value(
     missing = [part for part in NEEDED if part not in table]
     if missing:
         raise ValueError(f"{name} has no {missing[0]}")
-    if table["checked"] not in CHECKED:
-        raise ValueError(f"{name}: checked is {table['checked']!r}, not 'seen' or 'from memory'")
-    if table["source"] != COMMON and table["source"] not in references():
-        raise ValueError(f"{name}: no source {table['source']!r} in references.toml")
+    _, _, reference = _cited(name, table)
     unit = str(table["unit"])
     converted = {
         part: _converted(name, float(table[part]), unit, wavelength, refractive_index)
@@ -183,9 +232,20 @@ def _value(
         high_si=converted.get("high"),
         shown=_shown(table, unit),
         unit=unit,
-        reference=None if table["source"] == COMMON else references()[table["source"]],
+        reference=reference,
         **{part: str(table.get(part, "")) for part in TEXTS},
     )
+
+
+def _cited(name: str, table: Mapping[str, Any]) -> tuple[str, str, Reference | None]:
+    """How a number was checked, the key of its source, and the source (None: common practice)."""
+    if table["checked"] not in CHECKED:
+        raise ValueError(f"{name}: checked is {table['checked']!r}, not 'seen' or 'from memory'")
+    if table["source"] == COMMON:
+        return table["checked"], COMMON, None
+    if table["source"] not in references():
+        raise ValueError(f"{name}: no source {table['source']!r} in references.toml")
+    return table["checked"], table["source"], references()[table["source"]]
 
 
 def _converted(
@@ -231,11 +291,13 @@ def check_records() -> list[str]:
 
 
 def _faults(record: Record) -> list[str]:
-    faults = [
-        f"no {name}" for name in DECIDING.get(record.kind, ()) if name not in record.deciding()
-    ]
-    if record.kind == "resonators" and record.gaussian_beam is None:
-        faults.append("gaussian_beam is missing")
+    missing = [name for name in DECIDING.get(record.kind, ()) if name not in record.deciding()]
+    if record.kind == "resonators":  # without Q and V it is listed, not placed
+        listed = record.enhancement is not None or len(missing) < len(DECIDING["resonators"])
+        missing = [] if listed else missing
+        if record.gaussian_beam is None:
+            missing.append("gaussian_beam")
+    faults = [f"no {name}" for name in missing]
     if not record.doubts and any(value.checked != "seen" for value in record.every_value()):
         faults.append("values from memory, but doubts is empty")
     for value in record.every_value():

@@ -10,6 +10,8 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, fields, replace
 from typing import Any
 
+import numpy as np
+
 from .domain import InputError, quoted, shown
 from .evaluate import Evaluation, evaluated
 from .inputs import INPUTS
@@ -237,14 +239,10 @@ class Design:
                 if attribute != "origins" and INPUTS[name].whole:
                     raise InputError(f"{name} is no number, so it has no {attribute}", name)
         for name, unknown in self.unknowns.items():
-            for end in (unknown.low, unknown.high):
-                Evaluation({**self._without(name), name: end})
+            self.evaluation.changed({name: np.array([unknown.low, unknown.high])})
         for requirement in self.requirements:
             if not isinstance(requirement, Requirement):
                 raise InputError(f"{quoted(requirement)} is no Requirement")
-
-    def _without(self, name: str) -> dict[str, Any]:
-        return {key: value for key, value in self.point.items() if key != name}
 
     def _check_correlation(self) -> None:
         for pair, value in self.correlation.items():
@@ -273,15 +271,22 @@ class Design:
         return _made, ({f.name: getattr(self, f.name) for f in fields(self) if f.init},)
 
     def with_values(self, **values: Any) -> Design:
-        """The same design with some inputs given, as typed by a person."""
+        """The same design with some inputs given, as typed by a person: they count as known."""
         origins = {name: Origin("typed") for name in values}
-        return replace(self, point=self.point | values, origins=self.origins | origins)  # type: ignore[operator]  # Frozen after __post_init__
+        unknowns = {key: range_ for key, range_ in self.unknowns.items() if key not in values}
+        return replace(
+            self,
+            point=self.point | values,  # type: ignore[operator]  # Frozen after __post_init__
+            origins=self.origins | origins,  # type: ignore[operator]
+            unknowns=unknowns,
+        )
 
     def without_values(self, *names: str) -> Design:
         """The same design with some inputs back at their defaults."""
         keep = {key: value for key, value in self.point.items() if key not in names}
         origins = {key: value for key, value in self.origins.items() if key not in names}
-        return replace(self, point=keep, origins=origins)
+        unknowns = {key: range_ for key, range_ in self.unknowns.items() if key not in names}
+        return replace(self, point=keep, origins=origins, unknowns=unknowns)
 
     def outcome(self, wanted: Any = None) -> dict[str, Any]:
         """Quantities of the design by name; all of them unless `wanted` names some."""

@@ -42,14 +42,47 @@ class Evaluation:
         self._values: dict[str, Any] = {}
         self._steps: dict[str, tuple[Formula, tuple[tuple[str, str], ...]]] = {}
         self._names(point)
-        for name, given in point.items():
+        self.given = frozenset(point)
+        self._take(point, list(point))
+
+    def changed(self, entries: Mapping[str, Any], without: Iterable[str] = ()) -> Evaluation:
+        """The evaluation of the same point with some entries given anew and others left out.
+
+        What was worked out and depends on none of them is kept. Raises InputError.
+        """
+        self._names(entries)
+        dropped = frozenset(without) - entries.keys()
+        touched = dropped | entries.keys()
+        work = object.__new__(Evaluation)
+        work.given = (self.given - dropped) | entries.keys()
+        work._values = {
+            name: value
+            for name, value in self._values.items()
+            if dependencies(name).isdisjoint(touched)
+            or (
+                name in self.given and name not in touched  # its default does not matter
+            )
+        }
+        work._steps = {
+            name: step
+            for name, step in self._steps.items()
+            if dependencies(name).isdisjoint(touched)
+        }
+        # A given input whose domain follows one that changed is checked again.
+        again = [name for name in work.given if not limits_of(name).isdisjoint(touched)]
+        work._take(entries, [*again, *(name for name in entries if name not in again)])
+        return work
+
+    def _take(self, entries: Mapping[str, Any], checked: Iterable[str]) -> None:
+        for name, given in entries.items():
             entry = INPUTS[name]
             self._values[name] = whole_of(entry, given) if entry.whole else number_of(entry, given)
-        self.given = frozenset(point)
         self.shape = self._common_shape()
         with np.errstate(all="ignore"):
-            for name in point:
+            for name in checked:
                 self._check_domain(INPUTS[name])
+            if "broadening" in self.given and "fast_linewidth" not in self.given:
+                self._check_law()
             self._check_side()
             self._check_spectrum()
 
@@ -67,7 +100,7 @@ class Evaluation:
         shape: tuple[int, ...] = ()
         origin = ""
         for name, value in self._values.items():
-            if INPUTS[name].whole:
+            if name not in self.given or INPUTS[name].whole:
                 continue
             try:
                 shape = np.broadcast_shapes(shape, value.shape)
@@ -88,10 +121,18 @@ class Evaluation:
         reason = f" (the limit comes from {' and '.join(names)})"
         return end(**{name: self.value(name) for name in names}), reason
 
-    def _check_domain(self, entry: Input) -> None:
+    def _check_law(self) -> None:
+        """The width that a broadening law gives is one that may be given."""
+        width = self.value("fast_linewidth")
+        self._check_domain(
+            INPUTS["fast_linewidth"], width, ", as broadening and temperature give it"
+        )
+
+    def _check_domain(self, entry: Input, value: Any = None, origin: str = "") -> None:
         if entry.whole:
             return
-        value = self._values[entry.name]
+        if value is None:
+            value = self._values[entry.name]
         low, why_low = self._end(entry.low, -FARTHEST)
         high, why_high = self._end(entry.high, FARTHEST)
         under = value <= low if entry.low_open else value < low
@@ -99,7 +140,7 @@ class Evaluation:
         finite = np.isfinite(value) | (entry.infinite & (value == np.inf))
         for bad in (~finite, under, over):
             if bad.any():
-                refuse_first(entry, value, bad, low, high, why_low + why_high)
+                refuse_first(entry, value, bad, low, high, why_low + why_high + origin)
         if entry.low_open and (value < 1 / FARTHEST).any():
             least = f", at least {shown(1 / FARTHEST, entry)}"
             refuse_first(entry, value, value < 1 / FARTHEST, low, high, least)
@@ -121,7 +162,7 @@ class Evaluation:
         if spectrum is None or not np.size(wavelength):
             return
         centre = float(np.min(wavelength))
-        rows = (
+        rows: Any = (
             [(1.0, spectrum.offsets[end], 0.0) for end in (0, -1)]
             if isinstance(spectrum, Samples)
             else spectrum.lines
@@ -132,6 +173,8 @@ class Evaluation:
         nearest, farthest = (factor * centre for factor in SPECTRUM_REACH)
         for _, offset, width in rows:
             own = centre + offset
+            if width is None:
+                width = float(np.max(self.value("fast_linewidth")))  # noqa: PLW2901  # the row's own
             refuse_part(
                 "an offset", offset, nearest <= own <= farthest, nearest - centre, farthest - centre
             )
@@ -194,6 +237,13 @@ class Evaluation:
                     empty, "" if np.asarray(value).dtype.kind == "U" else np.nan, value
                 )
         return value
+
+
+@cache
+def limits_of(name: str) -> frozenset[str]:
+    """Inputs that the domain of an input follows."""
+    ends = (INPUTS[name].low, INPUTS[name].high)
+    return frozenset(key for end in ends if callable(end) for key in parameters(end))
 
 
 @cache

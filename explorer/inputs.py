@@ -12,6 +12,7 @@ from typing import Any
 
 import numpy as np
 
+from .broadening import Broadening
 from .registry import REGISTRY, Input, add_input
 from .whole import Lines, Pattern, Samples
 
@@ -26,6 +27,10 @@ BROADEST = 0.6
 
 def _broadest(*, emission_wavelength: Any) -> Any:
     return BROADEST * emission_wavelength
+
+
+def _law_width(*, law_width: Any) -> Any:
+    return law_width
 
 
 def _half_below(*, emission_wavelength: Any) -> Any:
@@ -83,8 +88,8 @@ EMITTER = (
     Input(
         "fast_linewidth", "Linewidth, fast", "Δf", "emitter",
         "FWHM of the homogeneous Lorentzian line: dephasing fast against the decay; "
-        "0 means limited by the lifetime.",
-        unit="m", shown="nm", default=20e-9, low=0.0, high=_broadest, high_open=True,
+        "0 means limited by the lifetime. Follows the temperature where a law is known.",
+        unit="m", shown="nm", default=_law_width, low=0.0, high=_broadest, high_open=True,
         slider=(1e-14, 150e-9), scale="log or zero", typical="cold 0.1 pm – room temperature 100 nm",
     ),
     Input(
@@ -97,6 +102,18 @@ EMITTER = (
         "spectrum", "Emission spectrum", "s", "emitter",
         "Several lines (`Lines`) or a measured spectrum (`Samples`) in place of the single line.",
         types=(Lines, Samples), scale="choice",
+    ),
+    Input(
+        "temperature", "Temperature", "T", "emitter",
+        "Temperature of the emitter. It sets the fast linewidth where a published law is given, and "
+        "nothing else: lifetime, yield and wavelength stay.",
+        unit="K", shown="K", default=295.0, low=0.01, high=1000.0,
+        slider=(1.0, 400.0), scale="log", typical="4–300 K",
+    ),
+    Input(
+        "broadening", "Broadening law", "Γ(T)", "emitter",
+        "A published law (`Broadening`) from which the fast linewidth follows unless it is given.",
+        types=(Broadening,), scale="choice",
     ),
     Input(
         "dipole_alignment", "Dipole alignment", "ξ", "emitter",
@@ -222,7 +239,7 @@ COLLECTION = (
         "numerical_aperture", "Numerical aperture", "NA", "collection",
         "Numerical aperture of the collecting optic; below the index of the medium.",
         default=0.5, low=0.0, low_open=True, high=_medium, high_open=True,
-        slider=(0.05, 0.99), typical="0.4–0.9",
+        slider=(0.05, 1.49), typical="0.4–0.9; above 1 in oil",
     ),
     Input(
         "medium_index", "Medium index", "nm", "collection",

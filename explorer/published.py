@@ -7,12 +7,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any, Final
 
 from scipy import constants
 
 from . import units
+from .broadening import Broadening
 from .inputs import INPUTS
 from .whole import Lines
 
@@ -111,6 +112,13 @@ class Value:
     reference: Reference | None
 
     @property
+    def ends(self) -> tuple[float, float] | None:
+        """(low, high), SI, an open end at the value itself; None where no range is published."""
+        low = self.value_si if self.low_si is None else self.low_si
+        high = self.value_si if self.high_si is None else self.high_si
+        return (low, high) if low < high else None
+
+    @property
     def origin(self) -> str:
         """Where the number comes from, in one sentence."""
         source = self.reference.text if self.reference else f"{COMMON}, no source"
@@ -126,6 +134,19 @@ class Line:
     share: Value
     centre: Value | None
     width: Value | None
+    #: Its width is the record's `fast_linewidth`, and so that of its broadening law.
+    follows: bool = False
+
+
+@dataclass(frozen=True)
+class Law:
+    """A published broadening law: the whole value, and the source as a sentence."""
+
+    broadening: Broadening
+    checked: str
+    source: str
+    origin: str
+    reference: Reference | None
 
 
 @dataclass(frozen=True)
@@ -154,10 +175,14 @@ class Record:
     lines: tuple[Line, ...]
     choices: Mapping[str, str]
     enhancement: Enhancement | None
+    law: Law | None = None
+    #: What a prediction of the device needs to know besides: its emitter, its surroundings.
+    device: Mapping[str, Value] = field(default_factory=dict)
 
     def inputs(self, *, own_wavelength: bool = True) -> dict[str, Any]:
         """The record as entries of a point, in SI; a composite spectrum as `Lines`.
 
+        With a broadening law the fast linewidth is left out, since it follows from it.
         own_wavelength False leaves `resonance_wavelength` out, so that the resonance follows the
         emission: the same resonator, scaled to another wavelength.
         """
@@ -171,11 +196,27 @@ class Record:
             centre = self.values["emission_wavelength"].value_si
             point["spectrum"] = Lines(
                 [
-                    (share.value_si, at.value_si - centre, width.value_si)
+                    (share.value_si, at.value_si - centre, width and width.value_si)
                     for share, at, width in placed
                 ]
             )
+        if self.law is not None:
+            point["broadening"] = self.law.broadening
+            point.pop("fast_linewidth", None)  # it follows from the law and the temperature
         return point | dict(self.choices)
+
+    @property
+    def placed(self) -> bool:
+        """Whether the record says all that decides: a resonator its Q and V."""
+        return set(DECIDING.get(self.kind, ())) <= self.deciding().keys()
+
+    def ranges(self) -> dict[str, tuple[float, float]]:
+        """Input name -> published (low, high), SI, where the value is a range."""
+        return {
+            name: ends
+            for name, value in self.values.items()
+            if name in INPUTS and (ends := value.ends) is not None
+        }
 
     def origins(self) -> dict[str, tuple[str, str]]:
         """Where each entry of `inputs()` comes from: ('seen' or 'from memory', a sentence)."""
@@ -184,7 +225,9 @@ class Record:
             for name, value in self.values.items()
             if name in INPUTS
         }
-        used = [value for line in self._placed_lines() for value in line]
+        if self.law is not None:
+            found["broadening"] = (self.law.checked, self.law.origin)
+        used = [value for line in self._placed_lines() for value in line if value is not None]
         if used:
             seen = all(value.checked == "seen" for value in used)
             texts = dict.fromkeys(value.origin for value in used)
@@ -194,13 +237,16 @@ class Record:
     def references(self) -> tuple[Reference, ...]:
         """The sources of every number of the record, each once."""
         found = {value.source: value.reference for value in self.every_value()}
+        if self.law is not None:
+            found[self.law.source] = self.law.reference
         return tuple(reference for reference in found.values() if reference is not None)
 
     def every_value(self) -> tuple[Value, ...]:
         """All numbers of the record, those of lines and of the enhancement too."""
         lines = [part for line in self.lines for part in (line.share, line.centre, line.width)]
         more = [self.enhancement.value] if self.enhancement else []
-        return tuple(value for value in (*self.values.values(), *lines, *more) if value is not None)
+        every = (*self.values.values(), *lines, *more, *self.device.values())
+        return tuple(value for value in every if value is not None)
 
     def deciding(self) -> dict[str, Value]:
         """The values that decide where the record lies on the map; a composite's strongest width."""
@@ -214,9 +260,9 @@ class Record:
             found["fast_linewidth"] = max(widths, key=lambda pair: pair[0])[1]
         return found
 
-    def _placed_lines(self) -> list[tuple[Value, Value, Value]]:
+    def _placed_lines(self) -> list[tuple[Value, Value, Value | None]]:
         return [
-            (line.share, line.centre, line.width)
+            (line.share, line.centre, None if line.follows else line.width)
             for line in self.lines
-            if line.centre is not None and line.width is not None
+            if line.centre is not None and (line.follows or line.width is not None)
         ]

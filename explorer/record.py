@@ -13,13 +13,14 @@ from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
+from .broadening import Broadening
 from .budget import budget_rows
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
 from .domain import InputError, quoted
 from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
 from .registry import REGISTRY
-from .schema import FORMAT, VERSION, problems
+from .schema import FOLLOWS, FORMAT, VERSION, problems
 from .units import text
 from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
@@ -38,7 +39,11 @@ def _whole(value: Any) -> Any:
     """A whole value in JSON: a word, or a table with its units."""
     if isinstance(value, Lines):
         rows = [
-            [number_in(share, "1"), number_in(offset, "nm"), number_in(width, "nm")]
+            [
+                number_in(share, "1"),
+                number_in(offset, "nm"),
+                FOLLOWS if width is None else number_in(width, "nm"),
+            ]
             for share, offset, width in value.lines
         ]
         return {"kind": "lines", "units": ["1", "nm", "nm"], "rows": rows}
@@ -54,6 +59,12 @@ def _whole(value: Any) -> Any:
             for angle, power in zip(value.angles.tolist(), value.powers.tolist(), strict=True)
         ]
         return {"kind": "pattern", "units": ["rad", "1/sr"], "rows": rows}
+    if isinstance(value, Broadening):
+        rows = [
+            [form, number_in(size, "1"), number_in(more, "1")] for form, size, more in value.terms
+        ]
+        ends = {end: _number(getattr(value, end), "K") for end in ("low", "high")}
+        return {"kind": "broadening", "units": ["", "Hz", ""], "rows": rows, **ends}
     return value
 
 
@@ -269,7 +280,20 @@ def _read_whole(entry: Any) -> Any:
     rows = entry["rows"]
     first, second = entry["units"][0], entry["units"][1]
     if entry["kind"] == "lines":
-        return Lines([(value_of(a, "1"), value_of(b, "nm"), value_of(c, "nm")) for a, b, c in rows])
+        return Lines(
+            [
+                (
+                    value_of(share, "1"),
+                    value_of(offset, "nm"),
+                    None if width == FOLLOWS else value_of(width, "nm"),
+                )
+                for share, offset, width in rows
+            ]
+        )
+    if entry["kind"] == "broadening":
+        terms = [(form, value_of(size, "1"), value_of(more, "1")) for form, size, more in rows]
+        ends = (_si(entry[end], f"the {end} end of a broadening", "K") for end in ("low", "high"))
+        return Broadening(terms, *ends)
     kind = Samples if entry["kind"] == "samples" else Pattern
     unit = first if entry["kind"] == "pattern" else "nm"
     del second

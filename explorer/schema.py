@@ -12,6 +12,7 @@ from itertools import islice
 from pathlib import Path
 from typing import Any
 
+from .broadening import FORMS, Broadening
 from .design import LONGEST_TEXT, ORIGINS, SPREADS
 from .inputs import INPUTS
 from .registry import REGISTRY, Input
@@ -20,6 +21,9 @@ from .whole import MOST_SAMPLES, Lines, Pattern
 
 FORMAT = "emitter and resonator design"
 VERSION = 1
+
+#: In place of a line's width: it is the point's own fast linewidth.
+FOLLOWS = "fast_linewidth"
 
 Json = dict[str, Any]
 
@@ -71,8 +75,9 @@ def _families() -> Json:
     return found
 
 
-def _rows(kind: str, units: list[str], most: int) -> Json:
-    row = {"type": "array", "items": _NUMBER, "minItems": len(units), "maxItems": len(units)}
+def _rows(kind: str, units: list[str], most: int, columns: list[Json] | None = None) -> Json:
+    row: Json = {"type": "array", "minItems": len(units), "maxItems": len(units)}
+    row |= {"prefixItems": columns} if columns else {"items": _NUMBER}
     return _object(
         {
             "kind": {"const": kind},
@@ -88,8 +93,16 @@ def _input_value(entry: Input) -> Json:
     if Pattern in entry.types:
         value = _rows("pattern", ["rad", "1/sr"], MOST_SAMPLES)
         return _object({"value": value}, description=entry.meaning)
+    if Broadening in entry.types:
+        columns = [{"enum": list(FORMS)}, _NUMBER, _NUMBER]
+        value = _rows("broadening", ["", "Hz", ""], 10, columns)
+        for end in ("low", "high"):
+            value["properties"][end] = _with_unit("K")
+            value["required"].append(end)
+        return _object({"value": value}, description=entry.meaning)
     if Lines in entry.types:
-        lines = _rows("lines", ["1", "nm", "nm"], 50)
+        width = {"oneOf": [{"type": "number"}, {"enum": ["infinite", "none", FOLLOWS]}]}
+        lines = _rows("lines", ["1", "nm", "nm"], 50, [_NUMBER, _NUMBER, width])
         samples = _rows("samples", ["nm", "1/nm"], MOST_SAMPLES)
         return _object({"value": {"oneOf": [lines, samples]}}, description=entry.meaning)
     return {**_with_unit(entry.shown), "description": entry.meaning}

@@ -57,26 +57,26 @@ class Lines:
 
     lines: a sequence of (share, offset, fast width): the share of the photons [1], > 0; the
     wavelength of the line minus `emission_wavelength` [m]; its FWHM [m], taken at its own
-    wavelength, 0 = lifetime limited. Shares sum to at most 1; what is missing is light at an
-    unknown wavelength: it overlaps nothing, and any finite filter stops it.
-    Raises WholeError.
+    wavelength, 0 = lifetime limited, None = the point's `fast_linewidth` (and so its temperature).
+    Shares sum to at most 1; what is missing is light at an unknown wavelength: it overlaps nothing,
+    and any finite filter stops it. Raises WholeError.
     """
 
-    lines: tuple[tuple[float, float, float], ...]
+    lines: tuple[tuple[float, float, float | None], ...]
 
-    def __init__(self, lines: Sequence[Sequence[float]]) -> None:
+    def __init__(self, lines: Sequence[Sequence[float | None]]) -> None:
         try:
-            rows = tuple(tuple(float(value) for value in line) for line in lines)
+            rows = tuple(_row(line) for line in lines)
         except (TypeError, ValueError) as error:
             raise WholeError("each line is three numbers: share, offset, fast width") from error
-        if not rows or any(len(row) != 3 for row in rows):
+        if not rows:
             raise WholeError("each line is three numbers: share, offset, fast width")
         if len(rows) > 50:
             raise WholeError(f"{len(rows)} lines are more than the 50 allowed; use Samples")
         for index, row in enumerate(rows):
-            if not np.all(np.isfinite(row)):
+            if not all(np.isfinite(value) for value in row if value is not None):
                 raise WholeError(f"line {index} holds a number that is not finite: {row}")
-            if row[0] < LEAST or row[2] < 0:
+            if row[0] < LEAST or (row[2] is not None and row[2] < 0):
                 raise WholeError(
                     f"line {index}: the share must be at least {LEAST:g}, the width not below 0; got {row}"
                 )
@@ -90,9 +90,21 @@ class Lines:
         return min(1.0, sum(line[0] for line in self.lines))
 
     @property
-    def strongest(self) -> tuple[float, float, float]:
-        """The line with the largest share."""
-        return max(self.lines, key=lambda line: line[0])
+    def strongest(self) -> int:
+        """Index of the line with the largest share."""
+        return max(range(len(self.lines)), key=lambda index: self.lines[index][0])
+
+    @property
+    def follows(self) -> bool:
+        """Whether a line takes the point's `fast_linewidth`."""
+        return any(line[2] is None for line in self.lines)
+
+
+def _row(line: Sequence[float | None]) -> tuple[float, float, float | None]:
+    share, offset, width = line
+    if share is None or offset is None:
+        raise TypeError("share and offset are numbers")
+    return float(share), float(offset), None if width is None else float(width)
 
 
 class _Sampled:

@@ -15,6 +15,7 @@ import numpy as np
 from hypothesis import HealthCheck, Phase, settings
 from hypothesis import strategies as st
 
+from explorer.broadening import FORMS, Broadening
 from explorer.evaluate import Evaluation
 from explorer.inputs import INPUTS
 from explorer.registry import Input, parameters
@@ -145,7 +146,12 @@ def lines() -> st.SearchStrategy[Lines]:
                 (
                     share / total,
                     (at - 0.5) * 150e-9,
-                    0.0 if w < 0.1 else 1e-18 * (2e-8 / 1e-18) ** w,
+                    # Towards the red any width of the point fits: it may be the point's own.
+                    None
+                    if w > 0.8 and at >= 0.5
+                    else 0.0
+                    if w < 0.1
+                    else 1e-18 * (2e-8 / 1e-18) ** w,
                 )
                 for share, at, w in rows
             ]
@@ -167,6 +173,23 @@ def samples() -> st.SearchStrategy[Samples]:
     )
 
 
+def broadenings() -> st.SearchStrategy[Broadening]:
+    """A law of one to three terms, each at most 3 THz at 1000 K."""
+
+    def term(form: str, size: float, more: float) -> tuple[str, float, float]:
+        if form == "power":
+            exponent = 7 * more
+            return form, 3e12 * 1e-9**size / 1000**exponent, exponent
+        return form, 3e10 * 1e-9**size, 0.001 + 0.3 * more
+
+    def build(rows: list[tuple[str, float, float]], low: float, high: float) -> Broadening:
+        first = 0.1 * 3000**low
+        return Broadening([term(*row) for row in rows], first, first * (1 + 100 * high))
+
+    row = st.tuples(st.sampled_from(tuple(FORMS)), fractions, fractions)
+    return st.builds(build, st.lists(row, min_size=1, max_size=3), fractions, fractions)
+
+
 def patterns() -> st.SearchStrategy[Pattern]:
     """A given pattern of two to eight angles."""
 
@@ -183,6 +206,7 @@ def wholes() -> st.SearchStrategy[Point]:
         Lines: lines,
         Samples: samples,
         Pattern: patterns,
+        Broadening: broadenings,
     }
     chosen: dict[str, st.SearchStrategy[Any]] = {}
     for name, entry in INPUTS.items():

@@ -13,13 +13,13 @@ PACKAGE = Path(__file__).resolve().parent.parent / "explorer"
 #: From the ground up. A module imports from the lines above its own, never from its own or below.
 LAYERS = (
     ("units", "whole", "version"),
-    ("registry", "exact"),
+    ("registry", "exact", "broadening", "keyrate"),
     ("inputs", "physics", "domain"),
     ("evaluate",),
     ("design", "budget", "published", "reading"),
     ("catalogue",),
-    ("maps", "sampling", "limits", "measured", "sweep", "advice"),
-    ("curves", "sentence"),
+    ("maps", "sampling", "combine", "limits", "measured", "sweep", "advice"),
+    ("candidates", "curves", "sentence"),
     ("question",),
     ("schema",),
     ("record", "scenario"),
@@ -30,7 +30,7 @@ LAYERS = (
 )
 
 #: What a formula may import besides the standard library and its own package.
-FORMULA_IMPORTS = {"numpy", "scipy", "explorer.registry", "explorer.whole"}
+FORMULA_IMPORTS = {"numpy", "scipy", "explorer.registry", "explorer.whole", "explorer.broadening"}
 
 #: What loads slowly or draws: nothing below the page may import it at the top of a module.
 WIDGETS = {"ipywidgets", "bqplot", "anywidget", "traitlets", "tornado", "voila", "IPython"}

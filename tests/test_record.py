@@ -25,6 +25,7 @@ from explorer import (
     CAUTIONS,
     INPUTS,
     QUANTITIES,
+    Broadening,
     Decision,
     Design,
     InputError,
@@ -62,7 +63,8 @@ def full() -> Design:
             "lifetime": 3.3e-9,
             "filter_width": math.inf,
             "destination": "fibre",
-            "spectrum": Lines([(0.6, 0.1e-9, 2e-9), (0.3, -9e-9, 0.0)]),
+            "spectrum": Lines([(0.6, 0.1e-9, 2e-9), (0.2, -9e-9, 0.0), (0.1, 3e-9, None)]),
+            "broadening": Broadening([("power", 1e5, 3), ("phonon", 2e11, 0.015)], 4, 300),
             "pattern": Pattern([0.0, 0.1, 1.0], [3.0, 1.0, 0.0]),
         },
         requirements=(
@@ -100,8 +102,12 @@ def assert_same_bits(one: Any, other: Any) -> None:
     if isinstance(one, float):
         assert bits(one) == bits(other)
     elif isinstance(one, Lines):
-        assert [bits(n) for row in one.lines for n in row] == [
-            bits(n) for row in other.lines for n in row
+        assert [n if n is None else bits(n) for row in one.lines for n in row] == [
+            n if n is None else bits(n) for row in other.lines for n in row
+        ]
+    elif isinstance(one, Broadening):
+        assert [bits(n) for row in one.terms for n in row[1:]] == [
+            bits(n) for row in other.terms for n in row[1:]
         ]
     elif isinstance(one, Samples):
         assert (
@@ -240,7 +246,7 @@ def test_every_value_has_the_unit_that_the_page_shows() -> None:
     assert record["inputs"]["defaults"]["resonance_wavelength"] == {"value": 650, "unit": "nm"}
     rows = record["inputs"]["given"]["spectrum"]["value"]
     assert rows["units"] == ["1", "nm", "nm"]
-    assert rows["rows"] == [[0.6, 0.1, 2], [0.3, -9, 0]]
+    assert rows["rows"] == [[0.6, 0.1, 2], [0.2, -9, 0], [0.1, 3, "fast_linewidth"]]
     for group in record["inputs"].values():
         for name, entry in group.items():
             assert INPUTS[name].whole or entry["unit"] == INPUTS[name].shown

@@ -6,6 +6,7 @@ from typing import Any
 
 import numpy as np
 
+from ..broadening import Broadening
 from ..registry import caution, part, variant
 from ..whole import Lines, Pattern, Samples
 from .coupling import CIRCLE, angular_width
@@ -167,6 +168,22 @@ def compact_resonances() -> Any:
     return False
 
 
+@caution(
+    "The temperature is outside the range over which the emitter's broadening law was measured.",
+    label="outside the broadening law",
+    about=("spectral_overlap", "exchange_rate", "indistinguishability"),
+)
+def outside_law() -> Any:
+    """A law is given, and the temperature is beyond its range."""
+    return False
+
+
+@variant("outside_law", broadening=Broadening)
+def outside_its_range(*, broadening: Any, temperature: Any) -> Any:
+    """Below the lowest or above the highest temperature of the law."""
+    return (temperature < broadening.low) | (temperature > broadening.high)
+
+
 @part
 def emission_width(*, fast_linewidth: Any, slow_linewidth: Any) -> Any:
     """Width of the emission [m]."""
@@ -174,10 +191,10 @@ def emission_width(*, fast_linewidth: Any, slow_linewidth: Any) -> Any:
 
 
 @variant("emission_width", spectrum=Lines)
-def width_of_lines(*, spectrum: Any, slow_linewidth: Any) -> Any:
+def width_of_lines(*, spectrum: Any, line_widths: Any, slow_linewidth: Any) -> Any:
     """From the bluest to the reddest line [m]."""
     offsets = [line[1] for line in spectrum.lines]
-    return max(offsets) - min(offsets) + spectrum.strongest[2] + slow_linewidth
+    return max(offsets) - min(offsets) + line_widths[spectrum.strongest] + slow_linewidth
 
 
 @variant("emission_width", spectrum=Samples)

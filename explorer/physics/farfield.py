@@ -208,7 +208,7 @@ def pupil_overlap(b1: Any, b2: Any, sine: Any, tilt: Any) -> Any:
         return np.exp(-(b1 + b2) * t2) * np.sqrt((2 - t2) / 2) * bessel * 2 * c**2
 
     # A tilted pupil oscillates with t, the root of x: more panels the more periods, even in t.
-    count = 4 + min(int(np.max(tilt * np.sqrt(farthest), initial=0.0) / 25), 400)
+    count = 4 + min(int(np.max(np.abs(tilt) * np.sqrt(farthest), initial=0.0) / 25), 400)
     rule = panels(tuple((np.linspace(0.0, 1.0, count + 1) ** 2).tolist()), 24)
     shape = np.broadcast_shapes(*(np.shape(value) for value in (b1, b2, sine, tilt)))
     zero = np.zeros(shape)

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 
+from ..broadening import Broadening
 from ..registry import part, quantity, variant
 from ..whole import Lines, Samples
 from .coupling import CIRCLE, angular_width
@@ -49,10 +50,33 @@ def measured_line(spectrum: Samples, wavelength: float) -> SampledLine:
 
 
 @part
-def line_table(*, spectrum: Any, emission_wavelength: Any, lifetime: Any) -> Any:
+def law_width() -> Any:
+    """Fast linewidth [m] where no broadening law is given: a usual one at room temperature."""
+    return np.float64(20e-9)
+
+
+@variant("law_width", broadening=Broadening)
+def width_at_temperature(*, broadening: Any, temperature: Any, emission_wavelength: Any) -> Any:
+    """Fast linewidth [m] of a published law at the temperature.
+
+    A FWHM Δ at λ is the angular width 2πcΔ/(λ² − Δ²/4); this is its inverse, written without a
+    difference of near numbers.
+    """
+    path = CIRCLE / (2 * np.pi * broadening.width(temperature))
+    return 2 * emission_wavelength**2 / (path + np.hypot(path, emission_wavelength))
+
+
+@part
+def line_widths(*, spectrum: Any, fast_linewidth: Any) -> Any:
+    """Of several lines: the fast width of each [m], its own or that of the point."""
+    return tuple(fast_linewidth if width is None else width for _, _, width in spectrum.lines)
+
+
+@part
+def line_table(*, spectrum: Any, line_widths: Any, emission_wavelength: Any, lifetime: Any) -> Any:
     """Of several lines: (share, shift from the centre [rad/s], pure dephasing [rad/s]) each."""
     rows = []
-    for share, offset, width in spectrum.lines:
+    for (share, offset, _), width in zip(spectrum.lines, line_widths, strict=True):
         own = emission_wavelength + offset
         shift = -CIRCLE * offset / (emission_wavelength * own)
         rows.append((share, shift, np.maximum(angular_width(width, own) - 1 / lifetime, 0)))
@@ -68,7 +92,7 @@ def line_dephasing(*, pure_dephasing: Any) -> Any:
 @variant("line_dephasing", spectrum=Lines)
 def strongest_line_dephasing(*, spectrum: Any, line_table: Any) -> Any:
     """Pure dephasing of the strongest of several lines [rad/s]."""
-    return line_table[spectrum.lines.index(spectrum.strongest)][2]
+    return line_table[spectrum.strongest][2]
 
 
 @variant("line_dephasing", spectrum=Samples)
