@@ -9,15 +9,19 @@ from __future__ import annotations
 from . import physics as _physics
 from .broadening import Broadening
 from .budget import budget
+from .candidates import candidates
+from .combine import combined, with_record
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
 from .domain import InputError
 from .evaluate import evaluate
 from .exact import RecordError
 from .inputs import INPUTS
 from .maps import Axis, Map, make_map, mesh
+from .prediction import prediction_table
 from .record import design_text, load_design, save_design
 from .registry import REGISTRY as _REGISTRY
 from .registry import check as _check
+from .sampling import Influence, Range, influences, ranges
 from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
 
@@ -37,11 +41,13 @@ __all__ = [
     "Broadening",
     "Decision",
     "Design",
+    "Influence",
     "InputError",
     "Lines",
     "Map",
     "Origin",
     "Pattern",
+    "Range",
     "RecordError",
     "Requirement",
     "Samples",
@@ -50,12 +56,18 @@ __all__ = [
     "WholeError",
     "__version__",
     "budget",
+    "candidates",
+    "combined",
     "design_text",
     "evaluate",
+    "influences",
     "load_design",
     "make_map",
     "mesh",
+    "prediction_table",
+    "ranges",
     "save_design",
+    "with_record",
 ]
 
 del _physics

@@ -12,10 +12,11 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .advice import record_cautions
 from .combine import PARTS, origins_of, records_of
-from .design import Design
+from .design import Design, Requirement
 from .evaluate import Evaluation
 from .inputs import INPUTS
 from .maps import margins
@@ -24,6 +25,8 @@ from .registry import REGISTRY
 
 if TYPE_CHECKING:
     import pandas as pd
+
+Array = NDArray[np.float64]
 
 #: Kinds of record in the order of the axes.
 KINDS: Final = ("emitter", "resonator", "optic")
@@ -46,6 +49,7 @@ class Part:
     kind: str
     key: str
     name: str
+    temperature: str
     inputs: Mapping[str, Any]
     memory: int
     assumed: int
@@ -85,22 +89,26 @@ def _part(design: Design, kind: str, key: str, scaled: bool) -> Part:
     if key:
         record = records_of(kind)[key]
         values = record.inputs(own_wavelength=not scaled)
-        name, origins = record.name, origins_of(record)
+        name, warmth, origins = record.name, record.temperature, origins_of(record)
         words = record_cautions(Design(**{kind: key}))  # type: ignore[arg-type]  # kind names a text
     else:
         values = {name: value for name, value in design.point.items() if name in PARTS[kind]}
+        warmth = f"{design.evaluation.value('temperature'):g} K"
         name, origins = f"own {kind}", {entry: design.origin(entry) for entry in values}
         words = ()
     memory = sum(origins[entry].kind == "from memory" for entry in values if entry in origins)
     given = {*values, *(("fast_linewidth",) if {"spectrum", "broadening"} & values.keys() else ())}
     assumed = sum(entry not in given for entry in NEEDED[kind])
-    return Part(kind, key, name, values, memory, assumed, tuple(caution for caution, _ in words))
+    return Part(
+        kind, key, name, warmth, values, memory, assumed, tuple(caution for caution, _ in words)
+    )
 
 
-def _grouped(found: Sequence[Part]) -> list[list[Part]]:
-    groups: dict[tuple[Any, ...], list[Part]] = {}
-    for entry in found:
-        groups.setdefault(entry.same(), []).append(entry)
+def _grouped(found: Sequence[Part]) -> list[list[int]]:
+    """Indices of the parts that can be evaluated together."""
+    groups: dict[tuple[Any, ...], list[int]] = {}
+    for index, entry in enumerate(found):
+        groups.setdefault(entry.same(), []).append(index)
     return list(groups.values())
 
 
@@ -122,51 +130,74 @@ def _entries(group: Sequence[Part], axis: int) -> dict[str, Any]:
 
 @dataclass(frozen=True)
 class Batch:
-    """Candidates of one evaluation: their parts along three axes, quantities and margins."""
+    """All candidates: their parts along three axes, and numbers in the shape of the three.
+
+    found: quantities, SI; margins: of each requirement (see `maps.margins`); marks: bit k of each
+    candidate is caution k of the registry.
+    """
 
     parts: tuple[list[Part], list[Part], list[Part]]
-    found: Mapping[str, np.ndarray[Any, Any]]
-    margins: list[np.ndarray[Any, Any]]
-    cautions: Mapping[str, np.ndarray[Any, Any]]
-
-    @property
-    def shape(self) -> tuple[int, ...]:
-        return tuple(len(group) for group in self.parts)
+    found: Mapping[str, Array]
+    margins: tuple[Array, ...]
+    marks: NDArray[np.int64]
 
 
-def batches(
+def batch(
     design: Design,
     *,
     emitters: Iterable[str] | None = None,
     resonators: Iterable[str] | None = None,
     optics: Iterable[str] | None = None,
     scaled: bool = False,
-) -> Iterator[Batch]:
-    """The candidates of a design, evaluated batch by batch (see `candidates`)."""
+) -> Batch:
+    """The candidates of a design as arrays (see `candidates`). Raises InputError, KeyError."""
     chosen = (emitters, resonators, optics)
-    groups = [
-        _grouped(parts(design, kind, keys, scaled=scaled))
-        for kind, keys in zip(KINDS, chosen, strict=True)
+    every = [
+        parts(design, kind, keys, scaled=scaled) for kind, keys in zip(KINDS, chosen, strict=True)
     ]
+    shape = tuple(len(entries) for entries in every)
+    needed = dict.fromkeys([*SHOWN, *(entry.quantity for entry in design.requirements)])
+    found = {name: np.full(shape, np.nan) for name in needed}
+    marks = np.zeros(shape, dtype=np.int64)
+    for place, work in _evaluations(design, every):
+        for name in needed:
+            found[name][place] = work.result(name)
+        bits: Any = 0
+        for index, name in enumerate(REGISTRY.cautions):
+            holds = work.value(name)
+            if np.any(holds):
+                bits = bits | (np.asarray(holds, dtype=np.int64) << index)
+        marks[place] = bits
+    margin = [np.broadcast_to(one, shape) for one in margins(found, design.requirements)]
+    return Batch((every[0], every[1], every[2]), found, tuple(margin), marks)
+
+
+def _evaluations(
+    design: Design, every: Sequence[Sequence[Part]]
+) -> Iterator[tuple[Any, Evaluation]]:
+    """The evaluation of each set of parts that share their whole values, and where it belongs."""
     taken = {name for names in PARTS.values() for name in names}
     rest = {name: value for name, value in design.point.items() if name not in taken}
-    needed = [*SHOWN, *(entry.quantity for entry in design.requirements)]
-    work: Evaluation | None = None
-    for light in groups[0]:
-        for mode in groups[1]:
-            for optic in groups[2]:
-                if work is None or optic is groups[2][0]:
-                    entries = _entries(light, 0) | _entries(mode, 1) | _entries(optic, 2)
+    lights, modes, optics = (_grouped(entries) for entries in every)
+    for mode in modes:
+        # What the emitter does not touch is worked out once an optic, what the optic does not
+        # touch once an emitter.
+        known: list[Evaluation] = []
+        for light in lights:
+            work: Evaluation | None = None
+            for index, optic in enumerate(optics):
+                entries = _entries([every[2][place] for place in optic], 2)
+                if work is not None:
+                    work = work.changed(entries, without=PARTS["optic"])
+                else:
+                    entries |= _entries([every[0][place] for place in light], 0)
+                    entries |= _entries([every[1][place] for place in mode], 1)
                     work = Evaluation(rest | entries)
-                else:  # what the optic does not touch is not worked out again
-                    work = work.changed(_entries(optic, 2), without=PARTS["optic"])
-                values = {name: work.result(name) for name in dict.fromkeys(needed)}
-                yield Batch(
-                    (light, mode, optic),
-                    values,
-                    margins(values, design.requirements),
-                    {name: work.value(name) for name in REGISTRY.cautions},
-                )
+                if index < len(known):
+                    work.adopt(known[index], apart=PARTS["emitter"])
+                yield np.ix_(light, mode, optic), work
+                if index == len(known):
+                    known.append(work)
 
 
 def candidates(
@@ -184,80 +215,78 @@ def candidates(
     nobody published; else each stays at its own.
 
     Returns a table, best first, one row a candidate: `emitter`, `resonator`, `optic` (keys) and
-    their names; the wanted quantities, SI; `meets_<quantity>_<side>` for each requirement; `meets_all`;
-    `margin` of the requirement that is met worst (above 0 met; natural logarithm of the ratio) and
-    which it is, `held_back_by`; `from_memory` and `assumed`, counts of inputs written down from
-    memory and at their defaults; `cautions`, their names; `scaled`. Raises InputError, KeyError.
+    their names; `temperature` of the emitter in words; the wanted quantities, SI;
+    `meets_<quantity>_<side>` for each requirement; `meets_all`; `margin` of the requirement that is
+    met worst (above 0 met; natural logarithm of the ratio) and which it is, `held_back_by`;
+    `from_memory` and `assumed`, counts of inputs written down from memory and at their defaults;
+    `cautions`, their names; `scaled`. Raises InputError, KeyError.
     """
     import pandas as pd
 
-    found = [
-        _columns(batch, design)
-        for batch in batches(
-            design, emitters=emitters, resonators=resonators, optics=optics, scaled=scaled
-        )
-    ]
-    if not found:
-        return pd.DataFrame()
-    joined = {name: np.concatenate([columns[name] for columns in found]) for name in found[0]}
-    best = np.lexsort((-np.nan_to_num(joined["margin"], nan=-np.inf), ~joined["meets_all"]))
-    table = pd.DataFrame({name: column[best] for name, column in joined.items()})
+    made = batch(design, emitters=emitters, resonators=resonators, optics=optics, scaled=scaled)
+    columns = _columns(made, design)
+    order = np.lexsort((-np.nan_to_num(columns["margin"], nan=-np.inf), ~columns["meets_all"]))
+    table = pd.DataFrame({name: column[order] for name, column in columns.items()})
     table["scaled"] = scaled
     return table
 
 
-def side_name(requirement: Any) -> str:
+def side_name(requirement: Requirement) -> str:
     """'rate_in_fibre_at_least': the quantity and side of a requirement, for a column."""
     return f"{requirement.quantity}_{'at_most' if requirement.at_least is None else 'at_least'}"
 
 
-def _columns(batch: Batch, design: Design) -> dict[str, Any]:
-    """The columns of the table for the candidates of one batch."""
-    shape = batch.shape
-    places = np.indices(shape).reshape(len(KINDS), -1)
+def worst(made: Batch) -> tuple[Array, NDArray[np.int64]]:
+    """The smallest margin of each candidate, and the index of its requirement (-1: none wanted)."""
+    shape = made.marks.shape
+    margin, which = np.full(shape, np.inf), np.full(shape, -1)
+    for index, here in enumerate(made.margins):
+        worse = ~(here >= margin)
+        which, margin = np.where(worse, index, which), np.where(worse, here, margin)
+    return margin, which
+
+
+def _columns(made: Batch, design: Design) -> dict[str, Any]:
+    """The columns of the table, emitters slowest."""
+    shape = made.marks.shape
     columns: dict[str, Any] = {}
     for axis, kind in enumerate(KINDS):
-        group = batch.parts[axis]
-        columns[kind] = np.array([entry.key for entry in group], dtype=object)[places[axis]]
-        columns[f"{kind}_name"] = np.array([entry.name for entry in group], dtype=object)[
-            places[axis]
-        ]
-    for name, value in batch.found.items():
-        columns[name] = np.broadcast_to(value, shape).ravel()
-    margin = np.full(shape, np.inf)
-    worst = np.full(shape, -1)
-    for index, (entry, found) in enumerate(zip(design.requirements, batch.margins, strict=True)):
-        here = np.broadcast_to(found, shape)
-        columns[f"meets_{side_name(entry)}"] = (here >= 0).ravel()
-        worse = ~(here >= margin)
-        worst, margin = np.where(worse, index, worst), np.where(worse, here, margin)
+        for name, words in ((kind, "key"), (f"{kind}_name", "name")):
+            columns[name] = _along(made, axis, words, object).ravel()
+    columns["temperature"] = _along(made, 0, "temperature", object).ravel()
+    columns |= {name: value.ravel() for name, value in made.found.items()}
+    for entry, margin in zip(design.requirements, made.margins, strict=True):
+        columns[f"meets_{side_name(entry)}"] = (margin >= 0).ravel()
+    margin, which = worst(made)
     columns["meets_all"] = (margin >= 0).ravel()
     columns["margin"] = np.where(np.isinf(margin), 0.0, margin).ravel()
     names = np.array([*(entry.quantity for entry in design.requirements), ""], dtype=object)
-    columns["held_back_by"] = names[worst.ravel()]
-    for name in ("from_memory", "assumed"):
-        counts = [
-            np.array(
-                [getattr(entry, "memory" if name == "from_memory" else name) for entry in group]
-            )
-            for group in batch.parts
-        ]
-        columns[name] = sum(count[places[axis]] for axis, count in enumerate(counts))
-    columns["cautions"] = _cautions(batch, places)
+    columns["held_back_by"] = names[which.ravel()]
+    for name, counted in (("from_memory", "memory"), ("assumed", "assumed")):
+        columns[name] = sum(_along(made, axis, counted, np.int64) for axis in range(3)).ravel()  # type: ignore[union-attr]  # three arrays
+    columns["cautions"] = _cautions(made).ravel()
+    assert all(column.size == np.prod(shape) for column in columns.values())
     return columns
 
 
-def _cautions(batch: Batch, places: np.ndarray[Any, Any]) -> np.ndarray[Any, Any]:
+def _along(made: Batch, axis: int, attribute: str, kind: Any) -> NDArray[Any]:
+    """Something of the parts along one axis, in the shape of all candidates."""
+    column = np.empty(len(made.parts[axis]), dtype=kind)
+    column[:] = [getattr(entry, attribute) for entry in made.parts[axis]]
+    shape = [1, 1, 1]
+    shape[axis] = column.size
+    return np.broadcast_to(column.reshape(shape), made.marks.shape)
+
+
+def _cautions(made: Batch) -> NDArray[Any]:
     """Names of the cautions of each candidate: the model's, then those of its records."""
-    shape = batch.shape
-    rows: list[list[str]] = [[] for _ in range(places.shape[1])]
-    for name, mask in batch.cautions.items():
-        if np.any(mask):
-            for index in np.flatnonzero(np.broadcast_to(mask, shape).ravel()):
-                rows[index].append(name)
-    for axis, group in enumerate(batch.parts):
-        for index, place in enumerate(places[axis]):
-            rows[index].extend(group[place].cautions)
-    found = np.empty(len(rows), dtype=object)
-    found[:] = [tuple(row) for row in rows]
-    return found
+    own = [_along(made, axis, "cautions", object).ravel() for axis in range(3)]
+    names = list(REGISTRY.cautions)
+    known: dict[Any, tuple[str, ...]] = {}
+    found = np.empty(made.marks.size, dtype=object)
+    for index, key in enumerate(zip(made.marks.ravel().tolist(), *own, strict=True)):
+        if key not in known:
+            model = [name for bit, name in enumerate(names) if key[0] >> bit & 1]
+            known[key] = (*model, *key[1], *key[2], *key[3])
+        found[index] = known[key]
+    return found.reshape(made.marks.shape)

@@ -127,26 +127,33 @@ def _record(kind: str, key: str, table: Mapping[str, Any]) -> Record:
         values=MappingProxyType(values),
         lines=tuple(_line(entry, values) for entry in table.get("line", ())),
         choices=MappingProxyType(dict(table.get("choices", {}))),
-        enhancement=Enhancement(_value("enhancement", boost), boost["meaning"]) if boost else None,
-        law=_law(table["broadening"]) if "broadening" in table else None,
+        enhancement=_enhancement(boost) if boost else None,
+        law=_law(table["broadening"], values) if "broadening" in table else None,
         device=MappingProxyType(_values(table.get("device", {}), values)),
     )
 
 
-def _law(table: Mapping[str, Any]) -> Law:
+def _enhancement(table: Mapping[str, Any]) -> Enhancement:
+    value = _value("enhancement", table)
+    miss, at_least = str(table.get("miss", "")), bool(table.get("at_least", False))
+    return Enhancement(value, str(table["meaning"]), miss, at_least)
+
+
+def _law(table: Mapping[str, Any], values: Mapping[str, Value]) -> Law:
     """A published broadening law; its terms in Hz and eV."""
     missing = [
         part for part in ("source", "where", "checked", "low", "high", "term") if part not in table
     ]
     if missing:
         raise ValueError(f"broadening has no {missing[0]}")
-    terms = [_term(entry) for entry in table["term"]]
+    wavelength = values["emission_wavelength"].value_si
+    terms = [_term(entry, wavelength) for entry in table["term"]]
     checked, source, reference = _cited("broadening", table)
     cited = reference.text if reference else f"{COMMON}, no source"
     shown = " + ".join(str(entry["printed"]) for entry in table["term"])
     details = ", ".join(str(table[part]) for part in ("where", "conditions") if table.get(part))
     return Law(
-        Broadening([term for term in terms if term], table["low"], table["high"]),
+        Broadening(terms, table["low"], table["high"]),
         checked,
         source,
         f"{shown}, {table['low']:g}–{table['high']:g} K: {cited} ({details}); {checked}",
@@ -154,19 +161,30 @@ def _law(table: Mapping[str, Any]) -> Law:
     )
 
 
-def _term(entry: Mapping[str, Any]) -> tuple[str, float, float]:
-    """One term: form, coefficient [Hz], exponent or energy [eV]; 'printed' is as its source has it."""
+def _term(entry: Mapping[str, Any], wavelength: float) -> tuple[str, float, float]:
+    """One term: form, coefficient [Hz], exponent or energy [eV]; 'printed' is as its source has it.
+
+    Either its coefficient is given, or a width at a temperature [K] through which it goes.
+    """
     if "printed" not in entry:
         raise ValueError("a term of broadening does not say how it is printed")
-    size = units.to_si(float(entry["coefficient"]), str(entry["unit"]))
-    if units.si_unit(str(entry["unit"])) == "eV":
-        size *= constants.e / constants.h
-    elif units.si_unit(str(entry["unit"])) != "1/s":
-        raise ValueError(f"broadening: {entry['unit']!r} is no unit of a width")
-    if entry["form"] == "power":
-        return "power", size, float(entry["exponent"])
-    energy = units.to_si(float(entry["energy"]), str(entry.get("energy_unit", "meV")))
-    return str(entry["form"]), size, energy
+    power = entry["form"] == "power"
+    more = (
+        float(entry["exponent"])
+        if power
+        else units.to_si(float(entry["energy"]), str(entry.get("energy_unit", "meV")))
+    )
+    through = "at" in entry
+    width = spectral_width(
+        float(entry["width" if through else "coefficient"]),
+        str(entry["unit"]),
+        wavelength=wavelength,
+    )
+    size = constants.c * width / (wavelength**2 - width**2 / 4)
+    if through:
+        shape = Broadening([(entry["form"], 1.0, more)], 1, 1)
+        size /= float(shape.width(float(entry["at"])))
+    return str(entry["form"]), size, more
 
 
 def _values(

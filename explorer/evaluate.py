@@ -29,6 +29,9 @@ from .inputs import BROADEST, INPUTS
 from .registry import REGISTRY, Formula, Input, dependencies, parameters, split_view
 from .whole import Samples
 
+#: Inputs whose default follows others.
+FOLLOWING = frozenset(name for name, entry in INPUTS.items() if callable(entry.default))
+
 
 class Evaluation:
     """The values of one point, worked out as they are asked for.
@@ -52,26 +55,23 @@ class Evaluation:
         """
         self._names(entries)
         dropped = frozenset(without) - entries.keys()
-        touched = dropped | entries.keys()
+        touched = frozenset({*dropped, *entries})
         work = object.__new__(Evaluation)
-        work.given = (self.given - dropped) | entries.keys()
-        work._values = {
-            name: value
-            for name, value in self._values.items()
-            if dependencies(name).isdisjoint(touched)
-            or (
-                name in self.given and name not in touched  # its default does not matter
-            )
-        }
-        work._steps = {
-            name: step
-            for name, step in self._steps.items()
-            if dependencies(name).isdisjoint(touched)
-        }
+        work.given = frozenset({*(self.given - dropped), *entries})
+        fixed = work.given & self.given & FOLLOWING
+        work._values = _apart(self._values, touched, fixed)
+        work._steps = _apart(self._steps, touched, fixed)
         # A given input whose domain follows one that changed is checked again.
         again = [name for name in work.given if not limits_of(name).isdisjoint(touched)]
         work._take(entries, [*again, *(name for name in entries if name not in again)])
         return work
+
+    def adopt(self, other: Evaluation, apart: Iterable[str]) -> None:
+        """Take over what another evaluation worked out; the two points may differ in `apart` only."""
+        unlike = frozenset(apart)
+        fixed = self.given & other.given & FOLLOWING
+        self._values = _apart(other._values, unlike, fixed) | self._values
+        self._steps = _apart(other._steps, unlike, fixed) | self._steps
 
     def _take(self, entries: Mapping[str, Any], checked: Iterable[str]) -> None:
         for name, given in entries.items():
@@ -237,6 +237,15 @@ class Evaluation:
                     empty, "" if np.asarray(value).dtype.kind == "U" else np.nan, value
                 )
         return value
+
+
+def _apart(known: dict[str, Any], touched: frozenset[str], fixed: frozenset[str]) -> dict[str, Any]:
+    """What was worked out and reaches none of the touched inputs; `fixed`: no default is followed."""
+    return {
+        name: entry
+        for name, entry in known.items()
+        if dependencies(name, fixed).isdisjoint(touched)
+    }
 
 
 @cache

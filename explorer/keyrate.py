@@ -240,4 +240,4 @@ def air_loss(length: float, visibility: float, wavelength: float) -> float:
     else:
         q = max(far - 0.5, 0.0)
     per_kilometre = _DECIBEL * _CONTRAST / far * (wavelength / 550e-9) ** -q
-    return length / 1000 * per_kilometre
+    return float(length / 1000 * per_kilometre)

@@ -155,6 +155,10 @@ class Enhancement:
 
     value: Value
     meaning: str
+    #: The likely reason where the model misses it.
+    miss: str = ""
+    #: Printed as a lower bound.
+    at_least: bool = False
 
 
 @dataclass(frozen=True, eq=False)
@@ -196,7 +200,7 @@ class Record:
             centre = self.values["emission_wavelength"].value_si
             point["spectrum"] = Lines(
                 [
-                    (share.value_si, at.value_si - centre, width and width.value_si)
+                    (share.value_si, at.value_si - centre, width.value_si if width else None)
                     for share, at, width in placed
                 ]
             )

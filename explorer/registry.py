@@ -246,15 +246,19 @@ def formula_parameters(name: str) -> set[str]:
 
 
 @cache
-def dependencies(name: str) -> frozenset[str]:
-    """All inputs and formulas that a formula (or a default) can depend on, itself included."""
+def dependencies(name: str, given: frozenset[str] = frozenset()) -> frozenset[str]:
+    """All inputs and formulas that a formula (or a default) can depend on, itself included.
+
+    given: inputs that have a value, so that nothing reaches through their defaults.
+    """
     found: set[str] = set()
     stack = [name]
     while stack:
         current = stack.pop()
         if current not in found:
             found.add(current)
-            stack.extend(formula_parameters(current))
+            if current not in given:
+                stack.extend(formula_parameters(current))
     return frozenset(found)
 
 

@@ -23,7 +23,7 @@ from .registry import REGISTRY, dependencies
 Array = NDArray[np.float64]
 
 #: Draws for a range; a power of two, as the sequence wants.
-DRAWS = 256
+DRAWS = 1024
 
 #: A range holds this share of the draws, the same number left out at either end.
 INSIDE = 0.9
@@ -170,8 +170,8 @@ def _total_indices(design: Design, quantity: str, names: list[str], base: int) -
             value = np.where(empty, 0.0 if empty.all() else np.nanmean(value), value)
         return (np.log(np.maximum(value, 1e-300)) if log else np.asarray(value))[None]
 
-    dists = [stats.uniform()] * len(names)
+    dists: Any = [stats.uniform()] * len(names)
     with np.errstate(divide="ignore", invalid="ignore"):
         found = stats.sobol_indices(func=outcome, n=base, dists=dists, rng=SEED)
     shares = np.atleast_2d(found.total_order)[0]
-    return np.clip(np.nan_to_num(shares, nan=0.0), 0.0, 1.0)
+    return np.asarray(np.clip(np.nan_to_num(shares, nan=0.0), 0.0, 1.0))

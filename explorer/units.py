@@ -8,6 +8,7 @@ exponent of the shortest text that names the number, never by a multiplication: 
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 from decimal import Decimal
 from typing import Final
 
@@ -20,6 +21,7 @@ EXPONENTS: Final[dict[str, tuple[str, int]]] = {
     "µm": ("m", -6),
     "nm": ("m", -9),
     "pm": ("m", -12),
+    "fm": ("m", -15),
     "s": ("s", 0),
     "ms": ("s", -3),
     "µs": ("s", -6),
@@ -30,11 +32,14 @@ EXPONENTS: Final[dict[str, tuple[str, int]]] = {
     "k/s": ("1/s", 3),
     "M/s": ("1/s", 6),
     "G/s": ("1/s", 9),
+    "T/s": ("1/s", 12),
+    "P/s": ("1/s", 15),
     "Hz": ("1/s", 0),
     "kHz": ("1/s", 3),
     "MHz": ("1/s", 6),
     "GHz": ("1/s", 9),
     "THz": ("1/s", 12),
+    "PHz": ("1/s", 15),
     "rad/s": ("rad/s", 0),
     "rad": ("rad", 0),
     "mrad": ("rad", -3),
@@ -62,19 +67,14 @@ SPELLINGS: Final[dict[str, str]] = {
     "/s": "1/s",
 }
 
-_PREFIXES: Final[dict[int, str]] = {
-    -18: "a",
-    -15: "f",
-    -12: "p",
-    -9: "n",
-    -6: "µ",
-    -3: "m",
-    0: "",
-    3: "k",
-    6: "M",
-    9: "G",
-    12: "T",
-    15: "P",
+#: Units that a number chooses from when it is written, by power of ten: all of them can be read back.
+#: None is below a rate of 1/s: "m/s" would be read as metres a second.
+_LADDERS: Final[dict[str, dict[int, str]]] = {
+    "m": {-15: "fm", -12: "pm", -9: "nm", -6: "µm", -3: "mm", 0: "m"},
+    "s": {-15: "fs", -12: "ps", -9: "ns", -6: "µs", -3: "ms", 0: "s"},
+    "eV": {-6: "µeV", -3: "meV", 0: "eV"},
+    "1/s": {0: "/s", 3: "k/s", 6: "M/s", 9: "G/s", 12: "T/s", 15: "P/s"},
+    "Hz": {0: "Hz", 3: "kHz", 6: "MHz", 9: "GHz", 12: "THz", 15: "PHz"},
 }
 
 
@@ -126,11 +126,12 @@ def _digits(value: float, count: int) -> str:
     return f"{rounded:.{places}f}"
 
 
-def _prefixed(value: float, unit: str, count: int, joiner: str = "") -> str:
+def _prefixed(value: float, ladder: Mapping[int, str], count: int) -> str:
+    """`value` in the unit of a ladder that suits its size."""
     rounded = float(f"{value:.{count - 1}e}")
     power = 3 * math.floor(math.log10(abs(rounded)) / 3)
-    power = min(max(power, min(_PREFIXES)), max(_PREFIXES))
-    return f"{_digits(_shifted(rounded, -power), count)} {_PREFIXES[power]}{joiner}{unit}"
+    power = min(max(power, min(ladder)), max(ladder))
+    return f"{_digits(_shifted(rounded, -power), count)} {ladder[power]}"
 
 
 def text(value: float, unit: str, digits: int = 3) -> str:
@@ -138,7 +139,8 @@ def text(value: float, unit: str, digits: int = 3) -> str:
 
     value: SI number. unit: SI unit, or '1', '%', 'rad', 'rad/s', '(λ/n)³', 'λ/n'.
     Rates, lengths and times choose their prefix; angles are in degrees; an angular frequency is
-    written as 2π times a frequency; infinity is '∞', not-a-number is 'no number'.
+    written as 2π times a frequency; infinity is '∞', not-a-number is 'no number'. A finite number is
+    written as `reading.read_number` reads it.
     """
     if math.isnan(value):
         return "no number"
@@ -150,11 +152,9 @@ def text(value: float, unit: str, digits: int = 3) -> str:
     if name == "rad":
         return f"{_digits(math.degrees(value), digits)}°"
     if value == 0:
-        return {"1": "0", "1/s": "0 /s", "rad/s": "0 Hz"}.get(name, f"0 {name}")
-    if name == "1/s":
-        return _prefixed(value, "/s", digits)
+        return {"1": "0", "1/s": "0 /s"}.get(name, f"0 {name}")
     if name == "rad/s":
-        return "2π × " + _prefixed(value / (2 * math.pi), "Hz", digits)
-    if name in ("m", "s", "eV"):
-        return _prefixed(value, name, digits)
+        return "2π × " + _prefixed(value / (2 * math.pi), _LADDERS["Hz"], digits)
+    if name in _LADDERS:
+        return _prefixed(value, _LADDERS[name], digits)
     return _digits(value, digits) + ("" if name == "1" else f" {name}")

@@ -19,7 +19,7 @@ LAYERS = (
     ("design", "budget", "published", "reading"),
     ("catalogue",),
     ("maps", "sampling", "combine", "limits", "measured", "sweep", "advice"),
-    ("candidates", "curves", "sentence"),
+    ("candidates", "prediction", "curves", "sentence"),
     ("question",),
     ("schema",),
     ("record", "scenario"),

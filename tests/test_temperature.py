@@ -9,6 +9,7 @@ import pytest
 from scipy import constants
 
 from explorer import Axis, Broadening, Design, InputError, Lines, WholeError, evaluate, make_map
+from explorer.catalogue import emitters, references
 from explorer.published import spectral_width
 
 CUBIC = Broadening([("power", 2e9, 0), ("power", 1e5, 3)], 4, 300)
@@ -104,3 +105,79 @@ def test_a_law_that_gives_no_possible_width_is_refused_in_words() -> None:
 def test_what_is_no_law_is_refused_in_words(terms, low, high, words) -> None:
     with pytest.raises(WholeError, match=words):
         Broadening(terms, low, high)
+
+
+LAWS = {key: record for key, record in emitters().items() if record.law is not None}
+
+
+def test_several_emitters_have_a_published_law() -> None:
+    assert len(LAWS) >= 4
+    for record in LAWS.values():
+        assert record.law.source in references()
+        assert "K:" in record.law.origin
+
+
+@pytest.mark.parametrize("key", LAWS)
+def test_a_law_gives_the_records_own_width_at_its_temperature(key: str) -> None:
+    record = LAWS[key]
+    point = record.inputs()
+    assert "fast_linewidth" not in point
+    width = evaluate(point, ["fast_linewidth"])["fast_linewidth"]
+    value = record.values["fast_linewidth"]
+    limit = evaluate(point, ["line_below_limit"])["line_below_limit"]
+    assert not limit
+    if value.value_si > 0:
+        assert width == pytest.approx(value.value_si, rel=2e-3)
+
+
+def width_of(key: str, temperature: float) -> float:
+    """FWHM [Hz] of an emitter's law."""
+    return float(LAWS[key].law.broadening.width(temperature))
+
+
+# Printed points that the laws were not drawn through (those that they were are left out).
+def test_diamond_vacancies_widen_as_the_fifth_power_when_cold() -> None:
+    """Fu et al., Phys. Rev. Lett. 103, 256404 (2009), abstract, seen: T⁵, so ×32 from 30 to 60 K."""
+    cold = width_of("nv_membrane_4k", 1e-3)
+    ratio = (width_of("nv_membrane_4k", 60) - cold) / (width_of("nv_membrane_4k", 30) - cold)
+    assert ratio == pytest.approx(32, rel=1e-6)
+
+
+def test_silicon_vacancies_widen_by_the_published_slope_near_room_temperature() -> None:
+    """arXiv:1906.10526, abstract, seen: 0.062 ± 0.002 nm/K from 295 to 350 K, of nanodiamonds.
+
+    The law is drawn through another sample's width; a tenth is allowed between samples.
+    """
+    widths = [
+        evaluate({**LAWS["siv_bulk"].inputs(), "temperature": one}, ["fast_linewidth"])[
+            "fast_linewidth"
+        ]
+        for one in (295.0, 350.0)
+    ]
+    assert (widths[1] - widths[0]) / 55 == pytest.approx(0.062e-9, rel=0.1)
+
+
+def test_hexagonal_boron_nitride_at_liquid_nitrogen() -> None:
+    """Arı et al., arXiv:1808.10611, abstract, seen: 172 µeV at 78 K."""
+    energy = width_of("hbn_visible", 78) * constants.h / constants.e
+    assert energy == pytest.approx(172e-6, rel=0.02)
+
+
+def test_tin_vacancies_when_cold() -> None:
+    """Sedov et al. (2023), abstract, seen: about 0.05 nm at 7 K, 1.1–1.7 nm at room temperature."""
+    point = LAWS["snv_microcrystal"].inputs()
+    cold = evaluate({**point, "temperature": 7.0}, ["fast_linewidth"])["fast_linewidth"]
+    assert cold == pytest.approx(0.05e-9, rel=0.02)
+
+
+def test_perovskite_dots_stay_within_the_published_room_temperature_widths() -> None:
+    """Rainò et al. (2022), abstract, seen: 70–120 meV before treatment at room temperature."""
+    for temperature in (293.0, 300.0):
+        energy = width_of("cspbbr3_nanocrystal", temperature) * constants.h / constants.e
+        assert 0.070 < energy < 0.120
+
+
+def test_cold_arsenide_dots_are_limited_by_their_lifetime() -> None:
+    """Birkedal et al. (2002), abstract, seen: 3.5 µeV at 5 K of others; the law stays below it."""
+    energy = width_of("inas_gaas_dot", 5.0) * constants.h / constants.e
+    assert 0.8e-6 < energy < 3.5e-6
