@@ -151,6 +151,22 @@ def batch(
     scaled: bool = False,
 ) -> Batch:
     """The candidates of a design as arrays (see `candidates`). Raises InputError, KeyError."""
+    *_, made = batch_steps(
+        design, emitters=emitters, resonators=resonators, optics=optics, scaled=scaled
+    )
+    assert made is not None
+    return made
+
+
+def batch_steps(
+    design: Design,
+    *,
+    emitters: Iterable[str] | None = None,
+    resonators: Iterable[str] | None = None,
+    optics: Iterable[str] | None = None,
+    scaled: bool = False,
+) -> Iterator[Batch | None]:
+    """The same in pieces of a few milliseconds: None after each, the candidates at the end."""
     chosen = (emitters, resonators, optics)
     every = [
         parts(design, kind, keys, scaled=scaled) for kind, keys in zip(KINDS, chosen, strict=True)
@@ -168,8 +184,9 @@ def batch(
             if np.any(holds):
                 bits = bits | (np.asarray(holds, dtype=np.int64) << index)
         marks[place] = bits
+        yield None
     margin = [np.broadcast_to(one, shape) for one in margins(found, design.requirements)]
-    return Batch((every[0], every[1], every[2]), found, tuple(margin), marks)
+    yield Batch((every[0], every[1], every[2]), found, tuple(margin), marks)
 
 
 def _evaluations(

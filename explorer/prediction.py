@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from functools import cache
 from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
@@ -124,9 +125,19 @@ def unpredicted() -> tuple[Unpredicted, ...]:
     return tuple(rows)
 
 
+@cache
+def _prediction(key: str) -> Prediction:
+    return predicted(resonators()[key])
+
+
+def prediction_steps() -> Iterator[Prediction]:
+    """Every device that lacks no number, one after the other; worked out once."""
+    return (_prediction(record.key) for record in _devices() if not missing(record))
+
+
 def predictions() -> tuple[Prediction, ...]:
-    """Every device that lacks no number. Raises CatalogueError, InputError."""
-    return tuple(predicted(record) for record in _devices() if not missing(record))
+    """All of them. Raises CatalogueError, InputError."""
+    return tuple(prediction_steps())
 
 
 def predicted(record: Record, count: int = DRAWS) -> Prediction:

@@ -3,7 +3,7 @@
 // Words from files become the data of text nodes, never HTML.
 
 const ROW = 26; // px
-const SPARE = 12; // rows drawn above and below what is in view
+const SPARE = 8; // rows drawn above and below what is in view
 const KEEP = 52; // px, the first column
 const WIDEST = 280; // px, of a column that is as wide as its texts
 const LONG = 90; // px, a line of a label that is better broken again
@@ -107,7 +107,8 @@ class TableView {
     make("span", "t-keys", bar, { id: `${this.id}-keys` }).textContent = HINT;
     this.grid = make("div", "t-grid", this.root, { role: "grid", tabindex: "0", "aria-describedby": `${this.id}-keys` });
     this.head = make("div", "t-head", this.grid, { role: "row", "aria-rowindex": "1" });
-    this.body = make("div", "t-body", this.grid);
+    this.body = make("div", "t-body", this.grid); // as high as all rows
+    this.window = make("div", "t-window", this.body); // what of them is in the page
     this.none = make("p", "t-none", this.root);
     this.note = make("div", "t-note", this.root, { "aria-hidden": "true" });
     this.none.hidden = this.note.hidden = true;
@@ -115,39 +116,44 @@ class TableView {
   }
 
   listen() {
-    const { grid, model } = this;
+    const { model } = this;
     this.stop = new AbortController();
-    const on = (target, kind, run) => target.addEventListener(kind, run, { signal: this.stop.signal });
-    on(this.filter, "input", () => this.refilter({ words: this.filter.value }));
-    on(this.onlyMet, "click", () => this.refilter({ onlyMet: !this.state.onlyMet }));
-    on(grid, "scroll", () => {
-      if (grid.scrollTop === this.state.top && grid.scrollLeft === this.state.left) return; // our own doing
-      this.note.hidden = true;
-      this.slide();
-    });
-    on(grid, "keydown", (event) => this.key(event));
-    on(grid, "focus", () => { if (!this.pressed) this.focusStart(); });
-    on(grid, "blur", () => { this.note.hidden = true; });
-    // The grid takes the focus, not a button of a row that will be filled with another.
-    on(grid, "pointerdown", (event) => {
-      this.note.hidden = true;
-      this.pressed = true; // a row must not move away under the finger
-      if (!event.target.closest("button")) return;
-      event.preventDefault();
-      grid.focus({ preventScroll: true });
-    });
-    for (const kind of ["pointerup", "pointercancel"]) on(window, kind, () => { this.pressed = false; });
-    on(grid, "click", (event) => this.click(event.target));
-    on(grid, "pointerover", ({ target }) => { // what is cut off is told on hover
-      if (target.matches(".t-row > .t-text") && !target.title && isCut(target)) target.title = target.firstChild.data;
-    });
+    this.on(this.filter, "input", () => this.refilter({ words: this.filter.value }));
+    this.on(this.onlyMet, "click", () => this.refilter({ onlyMet: !this.state.onlyMet }));
+    this.listenToGrid();
     this.take = this.take.bind(this);
     this.mark = () => { this.stamp += 1; this.slide(); };
     model.on("change:packed", this.take);
     model.on("change:current", this.mark);
     this.sizes = new ResizeObserver(() => this.resize());
-    this.sizes.observe(grid);
+    this.sizes.observe(this.grid);
     this.sizes.observe(this.head);
+  }
+
+  on(target, kind, run) { target.addEventListener(kind, run, { signal: this.stop.signal }); }
+
+  listenToGrid() {
+    const { grid, note, state } = this;
+    this.on(grid, "scroll", () => {
+      if (grid.scrollTop === state.top && grid.scrollLeft === state.left) return; // our own doing
+      note.hidden = true;
+      this.slide();
+    });
+    this.on(grid, "keydown", (event) => this.key(event));
+    this.on(grid, "focus", () => { if (!this.pressed) this.focusStart(); });
+    this.on(grid, "blur", () => { note.hidden = true; });
+    this.on(grid, "pointerdown", (event) => {
+      note.hidden = true;
+      this.pressed = true; // a row must not move away under the finger
+      if (!event.target.closest("button")) return;
+      event.preventDefault(); // the grid takes the focus, not a button of a row that is filled anew
+      grid.focus({ preventScroll: true });
+    });
+    for (const kind of ["pointerup", "pointercancel"]) this.on(window, kind, () => { this.pressed = false; });
+    this.on(grid, "click", (event) => this.click(event.target));
+    this.on(grid, "pointerover", ({ target }) => { // what is cut off is told on hover
+      if (target.matches(".t-row > .t-text") && !target.title && isCut(target)) target.title = target.firstChild.data;
+    });
   }
 
   destroy() {
@@ -180,6 +186,7 @@ class TableView {
   buildColumns() {
     for (const row of this.rows) row.element.remove();
     this.rows = [];
+    this.at = undefined;
     this.head.replaceChildren();
     const keep = make("div", "t-title t-first", this.head, { role: "columnheader" });
     make("span", "t-hidden", keep).textContent = "keep";
@@ -196,7 +203,7 @@ class TableView {
   }
 
   makeRow() {
-    const element = make("div", "t-row", this.body, { role: "row" });
+    const element = make("div", "t-row", this.window, { role: "row" });
     const keep = make("div", "t-cell t-first", element, { role: "gridcell" });
     const button = make("button", "t-keep", keep, { type: "button", tabindex: "-1" });
     button.textContent = "keep";
@@ -218,7 +225,6 @@ class TableView {
     const { data, model } = this;
     const number = this.order[place];
     if (row.place !== place) {
-      row.element.style.top = `${place * ROW}px`;
       row.element.setAttribute("aria-rowindex", String(place + 2));
       row.place = place;
     }
@@ -261,18 +267,19 @@ class TableView {
     const first = clamp(Math.floor(state.top / ROW) - SPARE, 0, order.length - wanted);
     this.rotate(first - this.first);
     this.first = first;
+    this.window.style.top = `${first * ROW}px`; // moving every row by itself took three times as long
     rows.forEach((row, k) => this.fill(row, first + k));
     this.paintFocus();
   }
 
   // Rows that leave at one end come in at the other, in the page too: it is read in that order.
   rotate(by) {
-    const { rows, body } = this;
+    const { rows, window: part } = this;
     if (by === 0 || Math.abs(by) >= rows.length) return;
     const moved = by > 0 ? rows.splice(0, by) : rows.splice(by);
     const elements = moved.map((row) => row.element);
-    if (by > 0) { rows.push(...moved); body.append(...elements); }
-    else { rows.unshift(...moved); body.prepend(...elements); }
+    if (by > 0) { rows.push(...moved); part.append(...elements); }
+    else { rows.unshift(...moved); part.prepend(...elements); }
   }
 
   // -------------------------------------------------------------- size
@@ -424,11 +431,13 @@ class TableView {
     const cell = cells?.[this.state.column];
     if (cell !== this.at) {
       this.at?.classList.remove("t-at");
+      this.at?.parentElement.removeAttribute("data-at");
       this.at?.removeAttribute("id");
       this.at = cell;
+      cell?.classList.add("t-at");
+      cell?.parentElement.setAttribute("data-at", "");
+      if (cell) cell.id = `${this.id}-at`;
     }
-    cell?.classList.add("t-at");
-    if (cell) cell.id = `${this.id}-at`;
     set(this.grid, "aria-activedescendant", cell?.id);
   }
 

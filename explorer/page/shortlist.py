@@ -1,0 +1,63 @@
+"""Designs that are kept to be compared: at most four, A to D. Knows no widget."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+from ..catalogue import emitters, resonators
+from ..design import Design
+
+LETTERS = "ABCD"
+
+
+class Shortlist:
+    """Letter -> design; listeners hear of every change."""
+
+    def __init__(self) -> None:
+        self.kept: dict[str, Design] = {}
+        self._listeners: list[Callable[[], None]] = []
+
+    def on_change(self, listener: Callable[[], None]) -> None:
+        """Call a listener after every change."""
+        self._listeners.append(listener)
+
+    def keep(self, design: Design) -> str | None:
+        """Keep a design under the first free letter; None where all are taken.
+
+        A design that is kept already stays under its letter.
+        """
+        for letter, known in self.kept.items():
+            if known == design:
+                return letter
+        letter = next((one for one in LETTERS if one not in self.kept), None)
+        if letter is not None:
+            self.kept = dict(sorted({**self.kept, letter: design}.items()))
+            self._tell()
+        return letter
+
+    def drop(self, letter: str) -> None:
+        """Keep a design no longer."""
+        if letter in self.kept:
+            self.kept = {one: design for one, design in self.kept.items() if one != letter}
+            self._tell()
+
+    @property
+    def full(self) -> bool:
+        """Whether every letter is taken."""
+        return len(self.kept) == len(LETTERS)
+
+    def _tell(self) -> None:
+        for listener in self._listeners:
+            listener()
+
+
+def short_name(design: Design) -> str:
+    """What a kept design is called: its emitter in its resonator, else its own name."""
+    emitter, resonator = emitters().get(design.emitter), resonators().get(design.resonator)
+    parts = [_first(record.name) for record in (emitter, resonator) if record is not None]
+    return " · ".join(parts) or design.name or "own values"
+
+
+def _first(name: str) -> str:
+    """A record's name up to its first comma."""
+    return name.split(",", maxsplit=1)[0]
