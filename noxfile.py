@@ -1,4 +1,4 @@
-"""Every check as a session of its own: `nox -l` lists them, `nox` runs the first four."""
+"""Every check as a session of its own: `nox -l` lists them and marks those that `nox` runs."""
 
 import re
 import tomllib

@@ -20,6 +20,15 @@ from .whole import Lines, Pattern, Samples
 
 Array = NDArray[np.float64]
 
+#: Nodes of a spectrum that are spread evenly; of a measured one, at most so many of its own.
+EVEN, LANDMARKS = 121, 200
+
+#: Up to so many features, each has nodes half a step of its asinh apart; of more, a whole one.
+FEW = 5
+
+#: Shifts, in standard deviations, at which a drawn measured spectrum is averaged over its wandering.
+SHIFTS = np.linspace(-4.0, 4.0, 65)
+
 
 @dataclass(frozen=True)
 class Colours:
@@ -36,32 +45,32 @@ class Colours:
     passed: Array
 
 
-def colours(work: Evaluation, count: int = 240) -> Colours:
-    """The spectra of one design; nodes crowd at the resonance, which may be very narrow."""
-    wavelength = _wavelengths(work, count)
+def colours(work: Evaluation) -> Colours:
+    """The spectra of one design; nodes crowd where one may be narrow, and stand on its peak."""
     centre = float(work.value("resonance_wavelength"))
-    frequency = CIRCLE * (centre - wavelength) / (centre * wavelength)  # from the resonance
     kappa = float(work.value("resonator_linewidth"))
-    resonance = 1 / (1 + (2 * frequency / kappa) ** 2)
-    with np.errstate(all="ignore"):
+
+    def spectra(frequency: Array) -> Array:
         own = _own_density(work, frequency)
+        resonance = 1 / (1 + (2 * frequency / kappa) ** 2)
         leaving = _leaving_density(work, frequency, own, resonance)
+        values = np.stack([own, resonance, leaving]) * (1 + frequency * centre / CIRCLE) ** 2
+        return np.where(np.isfinite(values), values, 0.0)
+
+    with np.errstate(all="ignore"):
         lower, upper = (float(edge) for edge in work.value("filter_edges"))
+        nodes = _nodes(work, (lower, upper))
+        values = spectra(nodes)
+        peaks = _around_peaks(nodes, values)
+        values = np.concatenate([values, spectra(peaks)], axis=1)
+    nodes = np.concatenate([nodes, peaks])
+    order = np.argsort(-nodes, kind="stable")
+    frequency = nodes[order]
+    highest = values.max(axis=1, keepdims=True)
+    emitter, resonator, leaving = (values / np.where(highest > 0, highest, 1.0))[:, order]
     passed = ((frequency >= lower) & (frequency <= upper)).astype(float)
-    per_wavelength = (centre / wavelength) ** 2
-    return Colours(
-        wavelength,
-        _over_maximum(own * per_wavelength),
-        _over_maximum(resonance * per_wavelength),
-        _over_maximum(leaving * per_wavelength),
-        passed,
-    )
-
-
-def _over_maximum(values: Array) -> Array:
-    values = np.where(np.isfinite(values), values, 0.0)
-    highest = values.max()
-    return values / highest if highest > 0 else values
+    wavelength = centre / (1 + frequency * centre / CIRCLE)
+    return Colours(wavelength, emitter, resonator, leaving, passed)
 
 
 def _width(work: Evaluation) -> float:
@@ -71,43 +80,111 @@ def _width(work: Evaluation) -> float:
     return max(float(work.value("emission_width")), least)
 
 
-def _wavelengths(work: Evaluation, count: int) -> Array:
-    """Wavelengths that show the emission and the resonance whole, ascending, always `count`."""
+def _frame(work: Evaluation) -> tuple[float, float]:
+    """Wavelengths that show the emission and the resonance whole, the shortest and the longest."""
     emission = float(work.value("emission_wavelength"))
     resonance = float(work.value("resonance_wavelength"))
     narrow = resonance / float(work.value("quality_factor"))
-    reach = max(2.2 * _width(work), min(3 * narrow, 0.35 * resonance), 1e-14)
+    pushed = max((abs(pole.real) for pole in _poles(work)), default=0.0)
+    doublet = max(0.0, pushed - abs(float(work.value("detuning")))) * resonance**2 / CIRCLE
+    coupled = min(max(3 * narrow, 1.5 * doublet), 0.35 * resonance)
+    reach = max(2.2 * _width(work), coupled, 1e-14)
     low = max(min(emission, resonance) - reach, 0.3 * emission)
-    high = max(emission, resonance) + reach
-    crowded = count // 3
-    spread = np.linspace(low, high, count - crowded)
-    steps = np.sinh(np.linspace(-1, 1, crowded) * np.arcsinh((high - low) / narrow))
-    near = np.clip(resonance + steps * narrow, low, high)
-    return np.sort(np.concatenate([spread, near]))
+    return low, max(emission, resonance) + reach
+
+
+def _poles(work: Evaluation) -> list[complex]:
+    """Where the light of a single line that leaves peaks, and how wide: frequency − i half width."""
+    if work.value("spectrum") is not None:
+        return []
+    kappa, coherence, detuning, coupling = (
+        float(work.value(name))
+        for name in ("resonator_linewidth", "coherence_decay", "detuning", "coupling_rate")
+    )
+    split = np.sqrt((complex(detuning, (kappa - coherence) / 2) / 2) ** 2 + coupling**2)
+    middle = complex(detuning, -(kappa + coherence) / 2) / 2
+    return [complex(middle + split), complex(middle - split)]
+
+
+def _nodes(work: Evaluation, edges: tuple[float, float]) -> Array:
+    """Frequencies from the resonance [rad/s], ascending.
+
+    Evenly over the frame, in an odd number about every feature with one on its centre, and on and
+    beside the edges of the filter.
+    """
+    centre = float(work.value("resonance_wavelength"))
+    ends = np.array(_frame(work))
+    first, last = CIRCLE * (centre - ends[::-1]) / (centre * ends[::-1])
+    features = _features(work)
+    step = 0.5 if len(features) <= FEW else 1.0
+    found = [np.linspace(first, last, EVEN)]
+    for middle, half in features:
+        reach = float(np.arcsinh((last - first) / half))
+        count = int(np.ceil(reach / step))
+        found.append(middle + half * np.sinh(np.arange(-count, count + 1) * (reach / count)))
+    if isinstance(work.value("spectrum"), Samples):
+        found.append(float(work.value("detuning")) + _landmarks(work))
+    found += [np.nextafter(edge, (-np.inf, edge, np.inf)) for edge in edges]
+    nodes = np.concatenate(found)
+    return np.unique(nodes[(nodes >= first) & (nodes <= last)])
+
+
+def _features(work: Evaluation) -> list[tuple[float, float]]:
+    """Centre and half width [rad/s] of whatever may be narrow in a spectrum."""
+    kappa = float(work.value("resonator_linewidth"))
+    detuning = float(work.value("detuning"))
+    found = [(0.0, kappa / 2)]
+    if isinstance(work.value("spectrum"), Samples):
+        return found
+    spread = 1.18 * float(work.value("slow_deviation"))
+    found += [(detuning + shift, width / 2 + spread) for _, shift, width in _lines(work)]
+    if spread == 0:
+        found += [(pole.real, abs(pole.imag)) for pole in _poles(work) if pole.imag]
+    return found
+
+
+def _landmarks(work: Evaluation) -> Array:
+    """Of a measured spectrum the highest sample in each of at most LANDMARKS stretches [rad/s]."""
+    line = work.value("measured")(lambda item: item)
+    length = -(-line.omega.size // LANDMARKS)
+    padded = np.pad(line.density, (0, -line.omega.size % length), constant_values=-1.0)
+    highest = padded.reshape(-1, length).argmax(axis=1)
+    return np.asarray(line.omega[highest + length * np.arange(highest.size)])
+
+
+def _around_peaks(nodes: Array, values: Array) -> Array:
+    """Nodes between the neighbours of the highest node of each row."""
+    at = values.argmax(axis=1)
+    below, above = nodes[np.maximum(at - 1, 0)], nodes[np.minimum(at + 1, nodes.size - 1)]
+    return np.asarray(np.linspace(below, above, 18)[1:-1].ravel())
+
+
+def _lines(work: Evaluation) -> list[tuple[float, float, float]]:
+    """Share, shift from the centre and width [rad/s] of each line of the emitter."""
+    natural = 1 / float(work.value("lifetime"))
+    if isinstance(work.value("spectrum"), Lines):
+        rows = work.value("line_table")
+    else:
+        rows = ((1.0, 0.0, work.value("pure_dephasing")),)
+    return [(float(share), float(shift), float(rate) + natural) for share, shift, rate in rows]
 
 
 def _own_density(work: Evaluation, frequency: Array) -> Array:
     """The emitter's own light per frequency."""
-    spectrum = work.value("spectrum")
     detuning = float(work.value("detuning"))
     sigma = float(work.value("slow_deviation"))
-    natural = 1 / float(work.value("lifetime"))
-    if isinstance(spectrum, Samples):
-        line = work.value("measured")(lambda item: item)
-        return np.asarray(
-            np.interp(frequency - detuning, line.omega, line.density, left=0.0, right=0.0)
-        )
-    if isinstance(spectrum, Lines):
-        rows = work.value("line_table")
-    else:
-        rows = ((1.0, 0.0, work.value("pure_dephasing")),)
     total = np.zeros_like(frequency)
-    for share, shift, dephasing in rows:
-        total += float(share) * line_density(
-            frequency=frequency,
-            centre=detuning + float(shift),
-            width=float(dephasing) + natural,
-            sigma=sigma,
+    if isinstance(work.value("spectrum"), Samples):
+        line = work.value("measured")(lambda item: item)
+        shifts = SHIFTS if sigma > 0 else np.zeros(1)
+        weights = np.exp(-(shifts**2) / 2)
+        for shift, weight in zip(shifts * sigma, weights / weights.sum(), strict=True):
+            at = frequency - detuning - shift
+            total += weight * np.interp(at, line.omega, line.density, left=0.0, right=0.0)
+        return total
+    for share, shift, width in _lines(work):
+        total += share * line_density(
+            frequency=frequency, centre=detuning + shift, width=width, sigma=sigma
         )
     return total
 

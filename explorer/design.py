@@ -8,12 +8,13 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, fields, replace
+from functools import lru_cache
 from typing import Any
 
 import numpy as np
 
 from .domain import InputError, quoted, shown
-from .evaluate import Evaluation, evaluated
+from .evaluate import Evaluation, evaluated, limits_of
 from .inputs import INPUTS
 from .registry import REGISTRY
 
@@ -67,12 +68,23 @@ class Frozen(Mapping[str, Any]):
         return Frozen({**self._entries, **other})
 
 
+def real_number(value: Any) -> float | None:
+    """A real number of Python or NumPy as a float (∞ where it is too large); None for what is none."""
+    if isinstance(value, bool) or not isinstance(value, int | float | np.integer | np.floating):
+        return None
+    try:
+        return float(value)
+    except OverflowError:
+        return math.inf if value > 0 else -math.inf
+
+
 def _finite(value: Any, what: str) -> float:
-    if isinstance(value, bool) or not isinstance(value, int | float):
+    number = real_number(value)
+    if number is None:
         raise InputError(f"{what} = {quoted(value)} is not a number")
-    if not math.isfinite(value):
-        raise InputError(f"{what} = {value} is not a finite number")
-    return float(value)
+    if not math.isfinite(number):
+        raise InputError(f"{what} = {number} is not a finite number")
+    return number
 
 
 def _text(value: Any, what: str) -> None:
@@ -239,7 +251,11 @@ class Design:
                 if attribute != "origins" and INPUTS[name].whole:
                     raise InputError(f"{name} is no number, so it has no {attribute}", name)
         for name, unknown in self.unknowns.items():
-            self.evaluation.changed({name: np.array([unknown.low, unknown.high])})
+            for end in (unknown.low, unknown.high):
+                if name in JOINT:
+                    self.evaluation.changed({name: end})
+                else:
+                    _check_alone(name, end)
         for requirement in self.requirements:
             if not isinstance(requirement, Requirement):
                 raise InputError(f"{quoted(requirement)} is no Requirement")
@@ -300,6 +316,18 @@ class Design:
         """Names of the cautions that are true at this point, the order of their definition."""
         marks = evaluated(self.evaluation, REGISTRY.cautions)
         return tuple(name for name, holds in marks.items() if holds)
+
+
+#: Inputs whose range depends on others, or that others' ranges depend on.
+JOINT = frozenset(
+    {"numerical_aperture", "reference_side", "temperature", "emission_wavelength"}
+).union(*({name, *limits_of(name)} for name in INPUTS if limits_of(name)))
+
+
+@lru_cache(maxsize=1024)
+def _check_alone(name: str, end: float) -> None:
+    """InputError where a value is outside an input's own range, whatever the design."""
+    Evaluation({name: end})
 
 
 def _made(parts: dict[str, Any]) -> Design:

@@ -83,7 +83,8 @@ class Evaluation:
                 self._check_domain(INPUTS[name])
             if "broadening" in self.given and "fast_linewidth" not in self.given:
                 self._check_law()
-            self._check_side()
+            if "reference_side" in self.given:
+                self._check_side()
             self._check_spectrum()
 
     @staticmethod
@@ -146,9 +147,9 @@ class Evaluation:
             refuse_first(entry, value, value < 1 / FARTHEST, low, high, least)
 
     def _check_side(self) -> None:
-        """The bare reference: air cannot be watched beyond NA 1, nor glass beyond its index."""
+        """A side that is given: air cannot be watched beyond NA 1, nor glass beyond its index."""
         aperture = np.asarray(self.value("numerical_aperture"))
-        side = self.value("reference_side")
+        side = self._values["reference_side"]
         limit = 1.0 if side == "air" else 1.52
         if (aperture > limit).any():
             entry = replace(INPUTS["numerical_aperture"], high_open=False)
@@ -174,7 +175,8 @@ class Evaluation:
         for _, offset, width in rows:
             own = centre + offset
             if width is None:
-                width = float(np.max(self.value("fast_linewidth")))  # noqa: PLW2901  # the row's own
+                widest = np.max(self.value("fast_linewidth"), initial=0.0)
+                width = float(widest)  # noqa: PLW2901  # the row's own
             refuse_part(
                 "an offset", offset, nearest <= own <= farthest, nearest - centre, farthest - centre
             )

@@ -62,7 +62,8 @@ def _matched(*, matching_magnification: Any) -> Any:
 
 
 def _side(*, numerical_aperture: Any) -> str:
-    return "glass" if np.any(np.asarray(numerical_aperture) > 1) else "air"
+    """The word for one design; of many, each element has its own side (`reference_collected_share`)."""
+    return "glass" if np.all(np.asarray(numerical_aperture) > 1) else "air"
 
 
 # fmt: off

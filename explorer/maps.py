@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from .design import Requirement
+from .design import Requirement, real_number
 from .domain import InputError, quoted
 from .evaluate import Evaluation
 from .inputs import INPUTS
@@ -26,6 +26,10 @@ FRONTIERS = (
 )
 
 
+#: What the ends of an axis must do.
+RISES = "must rise from a low to a high number"
+
+
 @dataclass(frozen=True)
 class Axis:
     """One axis of a map: input, lowest and highest value in SI, logarithmic or not, cells."""
@@ -39,12 +43,10 @@ class Axis:
     def __post_init__(self) -> None:
         if not isinstance(self.name, str) or self.name not in INPUTS or INPUTS[self.name].whole:
             raise InputError(f"{quoted(self.name)} is no input that can be an axis")
-        ends = (self.low, self.high)
-        known = all(isinstance(end, int | float) and np.isfinite(end) for end in ends)
-        if not known or self.low >= self.high:
-            raise InputError(
-                f"the axis {self.name} must rise from a low to a high number", self.name
-            )
+        for end in ("low", "high"):
+            object.__setattr__(self, end, self._number(end))
+        if self.low >= self.high:
+            raise InputError(f"the axis {self.name} {RISES}", self.name)
         if self.log and self.low <= 0:
             raise InputError(
                 f"the axis {self.name} is logarithmic and must start above 0", self.name
@@ -53,6 +55,13 @@ class Axis:
             raise InputError(
                 f"the axis {self.name} takes 2 to 2048 cells, not {quoted(self.count)}", self.name
             )
+        object.__setattr__(self, "count", int(self.count))
+
+    def _number(self, end: str) -> float:
+        number = real_number(getattr(self, end))
+        if number is None or not np.isfinite(number):
+            raise InputError(f"the axis {self.name} {RISES}", self.name)
+        return number
 
     @cached_property
     def values(self) -> Array:

@@ -193,12 +193,13 @@ def _drawn(record: Record, count: int) -> NDArray[np.float64]:
     if value is not None and value.ends:
         low, high = value.ends
         shares = spread("quantum_yield", Unknown(low, high), _even(count))
-    return np.broadcast_to(_enhancement(record, point, shares), (count,))
+    found = np.asarray(_enhancement(record, point, shares), dtype=np.float64)
+    return np.broadcast_to(found, (count,))
 
 
 def _even(count: int) -> NDArray[np.float64]:
     """Fractions 0..1, evenly spread and in no order that goes with another draw's."""
-    return (np.arange(count) * 0.6180339887498949 + 0.5) % 1.0
+    return np.asarray((np.arange(count) * 0.6180339887498949 + 0.5) % 1.0, dtype=np.float64)
 
 
 def _enhancement(record: Record, point: Mapping[str, Any], share: Any) -> Any:

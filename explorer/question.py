@@ -1,40 +1,20 @@
-"""The question is one frozen value; the answer is derived, each part from the inputs it needs.
-
-`Answers.steps(question)` gives answers that grow: the design first, then the map. A part whose inputs
-did not change is the same object as before, so whoever draws it can tell by identity.
-"""
+"""The question is one frozen value, and the answer to it another; `answers` derives it."""
 
 from __future__ import annotations
 
-import itertools
-import time
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 from typing import Any
 
-import numpy as np
-
-from .budget import Step, budget_rows
-from .curves import Angles, Colours, Cut, angles, colours, cut
-from .design import Design, Requirement
+from .budget import Step
+from .curves import Angles, Colours, Cut
+from .design import Design
 from .domain import InputError
-from .evaluate import Evaluation
 from .inputs import INPUTS
-from .maps import FRONTIERS, Axis, Map, make_map, stacked
-from .registry import REGISTRY, dependencies
-from .sentence import Sentence, next_step, sentence
-
-#: Longest piece of work between two chances to hear of a newer question [s].
-SLICE = 0.04
-
-#: Longest that a map may take while a hand moves [s]; a slower one is drawn in fewer cells first.
-DRAFT = 0.003
-
-#: Longest band of rows of the whole map [s]: a key pressed meanwhile waits no longer.
-BAND = 0.01
-
-#: Cells along each axis of a draft.
-COARSER = (160, 128, 96, 64)
+from .maps import Axis, Map
+from .registry import REGISTRY, parameters
+from .sampling import Influence, Range
+from .sentence import Sentence
 
 #: Quantities that a page always reads out.
 READ_OUT = (
@@ -58,7 +38,8 @@ READ_OUT = (
 class Question:
     """A design, and what is shown of it: quantity, axes, layers of the map that are on, and a cut.
 
-    cut: quantity and input of a curve through the point, or None.
+    cut: quantity and input of a curve through the point, or None. ranked: quantity whose unknowns
+    are ranked, or ''.
     """
 
     design: Design = field(default_factory=Design)
@@ -67,11 +48,14 @@ class Question:
     y: Axis = field(default_factory=lambda: Axis("quality_factor", 3.0, 1e6))
     layers: frozenset[str] = frozenset({"outline", "bands", "marks"})
     cut: tuple[str, str] | None = None
+    ranked: str = ""
 
     def __post_init__(self) -> None:
         known = REGISTRY.quantities.get(self.shown)
         if known is None:
             raise InputError(f"{self.shown!r:.60} is no quantity")
+        if self.ranked and getattr(REGISTRY.quantities.get(self.ranked), "kind", "") != "number":
+            raise InputError(f"{self.ranked!r:.60} is no quantity whose unknowns can be ranked")
         if self.cut is not None:
             quantity, name = self.cut
             if quantity not in REGISTRY.quantities or name not in INPUTS:
@@ -89,7 +73,10 @@ class Answer:
     values: every input of the design, given or filled in. outcome: quantities by name. cautions:
     names of those that hold. rows: the budget. width: of the emission [m]. half_angles: beam
     half-angle along the horizontal axis [rad], or None where that is not the mode volume. hint: the
-    next step that the map shows. rest: a draft of the map is there, the whole one can wait.
+    next step that the map shows. rest: a draft of the map is there, the whole one can wait. cut_fault:
+    why there is no cut though one is asked for. ranges: of each quantity that is read out, from
+    what is not known, and ranking: those unknowns by what they do; None until worked out, which
+    waits for a moment of rest.
     """
 
     question: Question
@@ -107,202 +94,9 @@ class Answer:
     whole: bool
     hint: str = ""
     rest: bool = False
-
-
-def _key(point: Mapping[str, Any], names: frozenset[str]) -> tuple[Any, ...]:
-    """The entries of a point that a set of inputs and formulas can depend on."""
-    return tuple((name, value) for name, value in point.items() if name in names)
-
-
-def _needs(*names: str) -> frozenset[str]:
-    return frozenset().union(*(dependencies(name) for name in names))
-
-
-class Answers:
-    """Works out answers, and remembers the parts of the last one.
-
-    Not shared between threads; one a page.
-    """
-
-    def __init__(self) -> None:
-        self._parts: dict[str, tuple[Any, Any]] = {}
-        self._pace = 0.0  # seconds a cell of the last map
-
-    def _part(self, name: str, key: Any, make: Any) -> Any:
-        if name not in self._parts or self._parts[name][0] != key:
-            self._parts[name] = (key, make())
-        return self._parts[name][1]
-
-    def answer(self, question: Question) -> Answer:
-        """The whole answer. Raises InputError."""
-        *_, last = self.steps(question)
-        return last
-
-    def steps(self, question: Question) -> Iterator[Answer]:
-        """The answer as it grows, in pieces of at most about SLICE seconds each."""
-        first = self._without_map(question)
-        key = self._map_key(question)
-        if "map" in self._parts and self._parts["map"][0] == key:
-            yield self._finished(first, self._parts["map"][1])
-            return
-        waiting = first
-        if self._pace * question.x.count * question.y.count > DRAFT:
-            for waiting in self._drafted(question, key, first):
-                yield waiting
-            waiting = replace(waiting, rest=False)
-        for drawn in self._bands(question):
-            if drawn is None:
-                yield waiting
-            else:
-                self._parts["map"] = (key, drawn)
-                yield self._finished(first, drawn)
-
-    def _drafted(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
-        """A map of fewer cells, as many as DRAFT allows; a moment to rest before the whole one."""
-        if self._parts.get("draft", (None, None))[0] != key:
-            counts = [count for count in COARSER if self._pace * count**2 <= DRAFT]
-            count = counts[0] if counts else COARSER[-1]
-            if self._pace * count**2 > SLICE:  # slow even so: the readouts do not wait for it
-                last = self._parts["map"][1] if "map" in self._parts else None
-                yield replace(first, map=last if self._same_place(last, question) else None)
-            x, y = (
-                replace(axis, count=min(count, axis.count)) for axis in (question.x, question.y)
-            )
-            self._parts["draft"] = (key, self._timed_map(question, x, y))
-        drawn = self._parts["draft"][1]
-        yield replace(self._finished(first, drawn), whole=False, rest=True)
-
-    def _finished(self, first: Answer, drawn: Map) -> Answer:
-        said = "" if first.sentence.met else self._hint(first, drawn)
-        return replace(first, map=drawn, whole=True, hint=said)
-
-    def _hint(self, first: Answer, drawn: Map) -> str:
-        place = (float(first.values[drawn.x.name]), float(first.values[drawn.y.name]))
-        requirements = first.question.design.requirements
-        said: str = self._part(
-            "hint", (id(drawn), place), lambda: next_step(drawn, place, requirements)
-        )
-        return said
-
-    @staticmethod
-    def _same_place(last: Map | None, question: Question) -> bool:
-        """Whether an older map may stay on screen: same axes, same quantity."""
-        return (
-            last is not None
-            and (last.x, last.y) == (question.x, question.y)
-            and question.shown in last.values
-        )
-
-    def _bands(self, question: Question) -> Iterator[Map | None]:
-        """The whole map in bands of rows of at most about BAND seconds; None between two."""
-        x, y = question.x, question.y
-        rows = int(np.clip(BAND / max(self._pace * x.count, 1e-12), 2, y.count))
-        edges = [*range(0, y.count - 1, rows), y.count]
-        if y.count - edges[-2] < 2:  # no band of a single row
-            edges[-2] -= 1
-        bands: list[Map] = []
-        for start, stop in itertools.pairwise(edges):
-            if bands:
-                yield None
-            low, high = (float(y.at(edge / y.count)) for edge in (start, stop))
-            part = replace(y, low=low, high=high, count=stop - start)
-            bands.append(self._timed_map(question, x, part if stop - start < y.count else y))
-        yield stacked(bands, y)
-
-    def _timed_map(self, question: Question, x: Axis, y: Axis) -> Map:
-        """A map, and how long a cell takes, not counting what others on the machine take."""
-        start = time.thread_time()
-        design, wanted = question.design, self._wanted(question)
-        drawn = make_map(design.point, x, y, wanted, design.requirements, self._marks(question))
-        self._pace = (time.thread_time() - start) / (x.count * y.count)
-        return drawn
-
-    def _without_map(self, question: Question) -> Answer:
-        design = question.design
-        needed = {entry.quantity for entry in design.requirements}
-        work = self._part("work", design.point, lambda: design.evaluation)
-        values = self._part(
-            "values", design.point, lambda: {name: work.value(name) for name in INPUTS}
-        )
-        names = (*READ_OUT, *needed, question.shown)
-        outcome = self._part(
-            "outcome", (design.point, names), lambda: {name: _scalar(work, name) for name in names}
-        )
-        marks = self._part(
-            "cautions",
-            design.point,
-            lambda: tuple(name for name in REGISTRY.cautions if bool(work.value(name))),
-        )
-        rows = self._part("rows", design.point, lambda: tuple(budget_rows(work)))
-        free = work.value("destination") == "free_space"
-        said = self._part(
-            "sentence",
-            (design.point, design.requirements),
-            lambda: sentence(design, outcome, rows, free),
-        )
-        wide = self._part(
-            "angles", _key(design.point, _needs("collected_share")), lambda: angles(work)
-        )
-        spectral = _needs("filter_share", "other_filter_share", "cavity_share")
-        seen = self._part("colours", _key(design.point, spectral), lambda: colours(work))
-        beam = self._part(
-            "half_angles",
-            (question.x, _key(design.point, _needs("half_angle") - {question.x.name})),
-            lambda: _along(design, question.x, "half_angle"),
-        )
-        width = float(work.value("emission_width"))
-        line = self._part("cut", (question.cut, design.point), lambda: _cut(work, question.cut))
-        return Answer(
-            question, values, outcome, marks, rows, said, wide, seen, width, beam, None, line, False
-        )
-
-    def _wanted(self, question: Question) -> tuple[str, ...]:
-        lines = [name for name, _, _ in FRONTIERS] if "frontiers" in question.layers else []
-        return (question.shown, *lines)
-
-    def _marks(self, question: Question) -> tuple[str, ...]:
-        if "hatching" not in question.layers:
-            return ()
-        about = dependencies(question.shown)
-        return tuple(
-            mark.name
-            for mark in REGISTRY.cautions.values()
-            if mark.voids or about & set(mark.about) or not mark.about
-        )
-
-    def _map_key(self, question: Question) -> tuple[Any, ...]:
-        design = question.design
-        wanted = self._wanted(question)
-        marks = self._marks(question)
-        names = _needs(*wanted, *marks, *(entry.quantity for entry in design.requirements))
-        names -= {question.x.name, question.y.name}
-        return (
-            wanted,
-            marks,
-            question.x,
-            question.y,
-            design.requirements,
-            frozenset(_key(design.point, names)),
-        )
-
-
-def _scalar(work: Evaluation, name: str) -> Any:
-    return np.asarray(work.result(name)).reshape(()).item()
-
-
-def _along(design: Design, axis: Axis, quantity: str) -> Any:
-    """A quantity along an axis of mode volume; None along another, or where it does not vary."""
-    if axis.name != "mode_volume":
-        return None
-    value = Evaluation({**design.point, axis.name: axis.values}).result(quantity)
-    return np.asarray(value) if np.shape(value) == axis.values.shape else None
-
-
-def _cut(work: Evaluation, wanted: tuple[str, str] | None) -> Cut | None:
-    """A curve through the point along one input's slider range; None where none is wanted."""
-    if wanted is None:
-        return None
-    return cut(work, *wanted, default_axis(wanted[1], 121).values)
+    cut_fault: str = ""
+    ranges: Mapping[str, Range] | None = None
+    ranking: tuple[Influence, ...] | None = None
 
 
 def default_axis(name: str, count: int = 256) -> Axis:
@@ -312,13 +106,13 @@ def default_axis(name: str, count: int = 256) -> Axis:
     return Axis(name, low, high, log=entry.scale.startswith("log"), count=count)
 
 
-def required(design: Design, entry: Requirement | None, at: int | None = None) -> Design:
-    """A design with a requirement added, replaced at an index, or (None) taken away."""
-    entries = list(design.requirements)
-    if at is None:
-        entries += [entry] if entry else []
-    elif entry is None:
-        del entries[at]
-    else:
-        entries[at] = entry
-    return replace(design, requirements=tuple(entries))
+def fitting_axis(design: Design, name: str, count: int = 256) -> Axis:
+    """The same, ending where a design's other values let the input end. Raises InputError."""
+    axis, entry = default_axis(name, count), INPUTS[name]
+    low, high = (
+        float(end(**{key: design.evaluation.value(key) for key in parameters(end)}))
+        if callable(end)
+        else end
+        for end in (entry.low, entry.high)
+    )
+    return replace(axis, low=max(axis.low, low), high=min(axis.high, high))

@@ -9,15 +9,16 @@ from .units import si_unit, to_si, unit_name
 
 _INFINITE = {"∞", "inf", "infinite", "infinity", "none"}
 _RAISED = "⁺⁻⁰¹²³⁴⁵⁶⁷⁸⁹"
-_LOWERED = str.maketrans(_RAISED + "−", "+-0123456789-")
-#: A power of ten is marked as one: 10^4, 10**4 or 10⁴; "3×1000" is a product and no number here.
-_POWER = rf"10\s*(?:(?:\^|\*\*)\s*(?P<power>[+−-]?\d+)|(?P<raised>[⁺⁻]?[{_RAISED[2:]}]+))"
+_LOWERED = str.maketrans(_RAISED, "+-0123456789")
+_RAISED_POWER = re.compile(rf"(?<![\d.,])10([{_RAISED}]+)")
+_BARE_POWER = re.compile(r"([+-]?)(10\s*(?:\^|\*\*))")
+#: A power of ten is marked as one: "3×1000" is a product, and no number here.
 _NUMBER = re.compile(
-    rf"(?P<sign>[+−-]?)(?:{_POWER.replace('power', 'bare').replace('raised', 'lone')}"
-    r"|(?P<number>\d+(?:[.,]\d*)?|[.,]\d+)"
-    rf"(?:\s*[eE]\s*(?P<exponent>[+−-]?\d+)|\s*[×x*·]\s*{_POWER})?)"
+    r"(?P<number>[+-]?(?:\d+(?:[.,]\d*)?|[.,]\d+))"
+    r"(?:\s*(?:[eE]|[×x*·]\s*10\s*(?:\^|\*\*))\s*(?P<power>[+-]?\d+))?"
     r"(?:\s*/\s*(?P<over>\d+(?:\.\d+)?))?\s*(?P<unit>\D.*?)?"
 )
+_PRODUCT = re.compile(r"\s*[×x*·]+\s*\d.*")
 _TURNS = re.compile(r"2\s*(?:π|pi)\s*[×x*·]?\s*(?P<rest>\S.*)")
 
 
@@ -37,32 +38,38 @@ def read_number(text: str, unit: str) -> float:
     turns = _TURNS.fullmatch(plain)
     if turns and si_unit(unit) == "rad/s":
         return 2 * math.pi * read_number(turns["rest"], "Hz")
-    found = _NUMBER.fullmatch(plain)
+    found = _NUMBER.fullmatch(_typeset(plain))
     if found is None:
         raise ReadingError(f"“{plain[:40]}” is no number; write for example {_example(unit)}")
-    typed = found["unit"] or unit
-    if typed[0] in "×x*·":
+    typed = (found["unit"] or unit).strip()
+    if _PRODUCT.fullmatch(typed):
         raise ReadingError(f"“{plain[:40]}” is a product; write a power of ten as 3×10^4 or 3e4")
-    number = _figure(found)
+    number = float(f"{found['number'].replace(',', '.')}e{found['power'] or 0}")
+    if math.isinf(number):
+        raise ReadingError(f"“{plain[:40]}” is too large a number")
     if found["over"]:
         if float(found["over"]) == 0:
             raise ReadingError(f"“{plain[:40]}” divides by zero")
         number /= float(found["over"])
+    return to_si(number, _fitting(typed, unit))
+
+
+def _typeset(text: str) -> str:
+    """The same with plain minus signs and with every power of ten written as 1×10^4."""
+    text = text.replace("−", "-")
+    text = _RAISED_POWER.sub(lambda found: "10^" + found[1].translate(_LOWERED), text)
+    return _BARE_POWER.sub(r"\g<1>1×\2", text) if _BARE_POWER.match(text) else text
+
+
+def _fitting(typed: str, unit: str) -> str:
+    """The name of a typed unit, which must be of the kind of `unit`."""
     try:
         name = unit_name(typed)
     except ValueError:
-        raise ReadingError(f"“{typed[:20]}” is no unit that fits {unit_words(unit)}") from None
-    if si_unit(name) != si_unit(unit):
-        raise ReadingError(f"{typed} is no unit that fits {unit_words(unit)}")
-    return to_si(number, name)
-
-
-def _figure(found: re.Match[str]) -> float:
-    """The number itself, without divisor and unit."""
-    powers = (found[name] for name in ("exponent", "power", "raised", "bare", "lone"))
-    power = next((one for one in powers if one), "0").translate(_LOWERED)
-    digits = (found["number"] or "1").replace(",", ".")
-    return float(f"{found['sign'].translate(_LOWERED)}{digits}e{power}")
+        name = ""
+    if not name or si_unit(name) != si_unit(unit):
+        raise ReadingError(f"“{typed[:20]}” is no unit that fits {unit_words(unit)}")
+    return name
 
 
 def unit_words(unit: str) -> str:
@@ -72,3 +79,26 @@ def unit_words(unit: str) -> str:
 
 def _example(unit: str) -> str:
     return "0.5" if unit == "1" else f"20 {unit}"
+
+
+#: Two numbers with a dash, dots or a word between them, and a unit behind.
+_RANGE = re.compile(
+    r"\s*(?P<low>[−-]?[\d.,]+(?:e[−+-]?\d+)?)\s*(?:–|-|\.\.\.?|…|to)\s*"
+    r"(?P<high>[−-]?[\d.,]+(?:e[−+-]?\d+)?)\s*(?P<unit>.*)",
+    re.IGNORECASE,
+)
+
+
+def read_range(text: str, shown: str) -> tuple[float, float] | None:
+    """SI ends of a range that a person typed, such as '3.4–3.9 ns'; None where it is no range.
+
+    shown: the unit of numbers without one. Raises ReadingError for a range that cannot be read.
+    """
+    found = _RANGE.fullmatch(text)
+    if found is None:
+        return None
+    unit = found["unit"]
+    low, high = (read_number(f"{found[end]} {unit}".strip(), shown) for end in ("low", "high"))
+    if low > high:
+        raise ReadingError("a range runs from its low end to its high end, such as 3.4–3.9")
+    return low, high

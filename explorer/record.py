@@ -7,12 +7,12 @@ the unit's power of ten, and read back the same way, so every input returns bit 
 from __future__ import annotations
 
 import os
-import tempfile
 from collections.abc import Mapping
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
+from .atomic import write_whole
 from .broadening import Broadening
 from .budget import budget_rows
 from .design import Decision, Design, Origin, Requirement, Spread, Unknown
@@ -21,7 +21,7 @@ from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
 from .registry import REGISTRY
 from .schema import FOLLOWS, FORMAT, VERSION, problems
-from .units import text
+from .units import si_unit, text, to_si, unit_name
 from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
 
@@ -199,30 +199,17 @@ def design_text(design: Design | Mapping[str, Any]) -> str:
 def save_design(design: Design | Mapping[str, Any], path: str | os.PathLike[str]) -> None:
     """Write the record of a design or of a bare point as JSON, whole or not at all.
 
-    The text is written beside the target and moved into place, so an interruption leaves the file
-    that was there. Raises InputError for a bad point, RecordError if it cannot be written.
+    An interruption leaves the file that was there; see `write_whole` for links and rights. Raises
+    InputError for a bad point, RecordError if it cannot be written.
     """
     text = design_text(design)
-    target = Path(path)
-    unfinished: Path | None = None
+    name = quoted(Path(path).name)
     try:
-        handle, beside = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
-        unfinished = Path(beside)
-        with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as stream:
-            stream.write(text)
-            stream.flush()
-            os.fsync(stream.fileno())
-        unfinished.chmod(target.stat().st_mode & 0o777 if target.exists() else 0o644)
-        os.replace(unfinished, target)  # noqa: PTH105  # os's own name says that it is atomic
+        write_whole(text, path)
     except OSError as error:
-        raise RecordError(
-            f"the design was not saved to {quoted(target.name)}: {error.strerror}"
-        ) from error
+        raise RecordError(f"the design was not saved to {name}: {error.strerror}") from error
     except ValueError as error:  # a path that no file system takes
-        raise RecordError(f"the design was not saved to {quoted(target.name)}: {error}") from error
-    finally:
-        if unfinished is not None:
-            unfinished.unlink(missing_ok=True)
+        raise RecordError(f"the design was not saved to {name}: {error}") from error
 
 
 def load_design(path: str | os.PathLike[str]) -> Design:
@@ -278,7 +265,6 @@ def _read_whole(entry: Any) -> Any:
     if isinstance(entry, str):
         return entry
     rows = entry["rows"]
-    first, second = entry["units"][0], entry["units"][1]
     if entry["kind"] == "lines":
         return Lines(
             [
@@ -294,23 +280,21 @@ def _read_whole(entry: Any) -> Any:
         terms = [(form, value_of(size, "1"), value_of(more, "1")) for form, size, more in rows]
         ends = (_si(entry[end], f"the {end} end of a broadening", "K") for end in ("low", "high"))
         return Broadening(terms, *ends)
-    kind = Samples if entry["kind"] == "samples" else Pattern
-    unit = first if entry["kind"] == "pattern" else "nm"
-    del second
+    kind, unit = (Samples, "nm") if entry["kind"] == "samples" else (Pattern, "rad")
     return kind([value_of(row[0], unit) for row in rows], [value_of(row[1], "1") for row in rows])
 
 
 def _si(entry: Any, what: str, unit: str) -> float:
     """SI value of a {value, unit}; the unit must be one of the same kind."""
-    from .units import si_unit
-
     try:
-        family = si_unit(entry["unit"])
+        name = unit_name(entry["unit"])
     except ValueError as error:
         raise RecordError(f"{what}: {error}") from error
-    if family != si_unit(unit):
+    if si_unit(name) != si_unit(unit):
         raise RecordError(f"{what} is given in {entry['unit']!r}; it takes {unit}")
-    return value_of(entry["value"], entry["unit"])
+    if name == "°":  # no power of ten lies between it and its SI unit
+        return to_si(value_of(entry["value"], "1"), name)
+    return value_of(entry["value"], name)
 
 
 def _read_point(given: Json) -> dict[str, Any]:

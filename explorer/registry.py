@@ -29,7 +29,8 @@ class Input:
     domain in SI (a number, or a function of other inputs); `low_open`, `high_open`: the end itself
     is not allowed; `infinite`: ∞ is allowed. choices: the words of a choice; `types`: the classes of
     another whole value. slider: lowest and highest slider position in SI. scale: 'linear', 'log',
-    'log or zero' (a zero stop below the lowest), 'logit', or 'choice'. meaning: one sentence.
+    'log or zero' (a zero stop below the lowest), 'log or none' (a stop for ∞ above the highest), or
+    'choice' of a whole value. meaning: one sentence.
     """
 
     name: str
@@ -71,7 +72,8 @@ class Quantity:
     """A public formula. unit: SI unit ('1', 'rad', '1/s', …). kind: 'number', 'choice' or 'mask'.
 
     label and symbol are for people, source is a key of references.toml or 'definition', log says
-    whether a colour scale is logarithmic by default, limits are the natural ends of its scale.
+    whether a colour scale is logarithmic by default, choices are the words of a choice, note says
+    what a person should know beside the formula, which doc holds.
     """
 
     name: str

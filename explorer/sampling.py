@@ -67,14 +67,15 @@ def spread(name: str, unknown: Unknown, fraction: Any) -> Array:
     return np.clip(low + (high - low) * f, low, high)
 
 
+def open_names(design: Design) -> list[str]:
+    """The inputs of a design that are given as a range of some width."""
+    return [name for name, unknown in design.unknowns.items() if unknown.low < unknown.high]
+
+
 def unknowns_of(design: Design, wanted: Iterable[str]) -> list[str]:
     """The unknowns of a design that any of the wanted quantities can depend on."""
     needs: frozenset[str] = frozenset().union(*(dependencies(name) for name in wanted))
-    return [
-        name
-        for name, unknown in design.unknowns.items()
-        if name in needs and unknown.low < unknown.high
-    ]
+    return [name for name in open_names(design) if name in needs]
 
 
 @lru_cache(maxsize=32)
@@ -88,7 +89,7 @@ def _fractions(count: int, columns: int) -> Array:
 
 def drawn_point(design: Design, count: int = DRAWS) -> dict[str, Any]:
     """The point of a design with its unknowns drawn: arrays of shape (count,)."""
-    names = [name for name, unknown in design.unknowns.items() if unknown.low < unknown.high]
+    names = open_names(design)
     if not names:
         return dict(design.point)
     fractions = _fractions(count, len(names))
@@ -148,7 +149,8 @@ def influences(design: Design, quantity: str, base: int = BASE) -> tuple[Influen
         unknown = design.unknowns[name]
         ends = np.array([unknown.low, unknown.high])
         values = np.broadcast_to(Evaluation({**design.point, name: ends}).result(quantity), (2,))
-        rows.append(Influence(name, float(share), float(values[0]), float(values[1])))
+        if values[0] != values[1] or share > 0:  # else it does not reach the quantity after all
+            rows.append(Influence(name, float(share), float(values[0]), float(values[1])))
     return tuple(sorted(rows, key=lambda row: -row.share))
 
 
@@ -168,7 +170,7 @@ def _total_indices(design: Design, quantity: str, names: list[str], base: int) -
         empty = np.isnan(value)
         if empty.any():
             value = np.where(empty, 0.0 if empty.all() else np.nanmean(value), value)
-        return (np.log(np.maximum(value, 1e-300)) if log else np.asarray(value))[None]
+        return (np.log(np.maximum(value, 1e-300)) if log else np.array(value))[None]
 
     dists: Any = [stats.uniform()] * len(names)
     with np.errstate(divide="ignore", invalid="ignore"):

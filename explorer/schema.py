@@ -129,7 +129,12 @@ def _outcome() -> Json:
 
 def _requirement() -> Json:
     numbers = [entry for entry in REGISTRY.quantities.values() if entry.kind == "number"]
-    limit = _object({"value": {"type": "number"}, "unit": {"type": "string", "maxLength": 20}})
+    unit = {
+        "type": "string",
+        "maxLength": 20,
+        "description": "any unit of the quantity's kind; an angle may be in °, written '°' or 'deg'",
+    }
+    limit = _object({"value": {"type": "number"}, "unit": unit})
     return _object(
         {
             "quantity": {"enum": [entry.name for entry in numbers]},

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -14,6 +15,7 @@ from .design import Design, Requirement, written
 from .inputs import INPUTS
 from .maps import Axis, Map
 from .registry import REGISTRY
+from .sampling import Range, open_names
 from .units import text
 
 #: Where a rate arrives, after "… photons/s".
@@ -23,36 +25,53 @@ ARRIVALS = {
     "rate_detected": "are detected",
 }
 
-#: What each step of the budget is held back by, in words.
+#: Step of the budget -> what it is held back by, and what is said where nothing comes through.
 HINDRANCES = {
-    "excited and decayed": "pulses that excite nothing",
-    "photon emitted": "decays that give no light",
-    "escaped the resonator": "absorption in the resonator",
-    "towards the optic": "light that heads away from the optic",
-    "inside the aperture": "light outside the aperture",
-    "through the filter": "the filter",
-    "through the optics": "the optics behind the lens",
-    "in the fibre": "the match to the fibre",
-    "detected": "the detector",
+    "excited and decayed": ("pulses that excite nothing", "no pulse excites anything"),
+    "photon emitted": ("decays that give no light", "no decay gives light"),
+    "escaped the resonator": ("absorption in the resonator", "no light leaves the resonator"),
+    "towards the optic": ("light that heads away from the optic", "no light heads for the optic"),
+    "inside the aperture": ("light outside the aperture", "no light enters the aperture"),
+    "through the filter": ("the filter", "no light passes the filter"),
+    "through the optics": ("the optics behind the lens", "no light passes the optics"),
+    "in the fibre": ("the match to the fibre", "no light enters the fibre"),
+    "detected": ("the detector", "the detector counts nothing"),
+}
+
+#: The same under continuous pumping, where it differs.
+CONTINUOUS = {
+    "excited and decayed": ("the time until the next excitation", "the pump excites nothing")
 }
 
 _MULTIPLES = ((1e9, "billion"), (1e6, "million"), (1e3, "thousand"))
 
 
+#: Kind of origin -> the mark that stands for it on the page.
+MARKS = {"seen": "●", "from memory": "○", "measured": "◆", "typed": "✎", "default": "·"}
+
+
 @dataclass(frozen=True)
 class Sentence:
-    """headline, detail: two lines of text; met: whether every requirement holds (None: none)."""
+    """headline, detail, known: three lines of text; met: whether every requirement holds (None: none)."""
 
     headline: str
     detail: str
     met: bool | None
+    known: str = ""
 
 
-def _count(value: float) -> str:
-    for size, word in _MULTIPLES:
-        if value >= 0.9995 * size:
-            return f"{text(value / size, '1')} {word}"
-    return text(value, "1")
+def _count(value: float, around: Range | None = None) -> str:
+    size, word = next((pair for pair in _MULTIPLES if value >= 0.9995 * pair[0]), (1.0, ""))
+    scaled = around and Range(around.low / size, around.high / size)
+    return f"{text(value / size, '1')}{_bracket(scaled, '1')} {word}".rstrip()
+
+
+def _bracket(around: Range | None, unit: str) -> str:
+    """The range that what is not known leaves, in brackets; nothing where there is none."""
+    if around is None:
+        return ""
+    low, high = text(around.low, unit, 2), text(around.high, unit, 2)
+    return "" if low == high else f" ({low}–{high})"
 
 
 def _times(ratio: float) -> str:
@@ -75,66 +94,124 @@ def verdict(requirement: Requirement, value: float) -> str:
     return f"{_times(ratio)} times too {('few' if countable else 'low') if few else 'high'}"
 
 
-def _headline(requirement: Requirement | None, outcome: Mapping[str, Any], free: bool) -> str:
+def quantity_label(name: str, free: bool) -> str:
+    """A quantity's label; `free`: the photons are wanted in free space, where no fibre is."""
+    if free and name == "rate_in_fibre":
+        return "Photons/s behind the optics"
+    return REGISTRY.quantities[name].label
+
+
+def _headline(
+    requirement: Requirement | None,
+    outcome: Mapping[str, Any],
+    free: bool,
+    ranges: Mapping[str, Range],
+) -> str:
     name = requirement.quantity if requirement else "rate_in_fibre"
-    value = outcome[name]
+    value, around = outcome[name], ranges.get(name)
     if name in ARRIVALS:
         arrival = "pass the optics" if free and name == "rate_in_fibre" else ARRIVALS[name]
         start = (
-            "No number of photons" if math.isnan(value) else f"{_count(value)} photons/s {arrival}"
+            "No number of photons"
+            if math.isnan(value)
+            else f"{_count(value, around)} photons/s {arrival}"
         )
     else:
-        start = (
-            f"{REGISTRY.quantities[name].label} is {text(value, REGISTRY.quantities[name].unit)}"
-        )
+        quantity = REGISTRY.quantities[name]
+        shown = f"{text(value, quantity.unit)}{_bracket(around, quantity.unit)}"
+        start = f"{quantity.label} is {shown}"
     return f"{start}, {verdict(requirement, value)}." if requirement else f"{start}."
 
 
-def _clause(requirement: Requirement, value: float) -> str:
+def _clause(requirement: Requirement, value: float, free: bool, around: Range | None = None) -> str:
     quantity = REGISTRY.quantities[requirement.quantity]
     limit = text(requirement.limit, quantity.unit)
     word = "wanted" if requirement.at_least is not None else "allowed"
     mark = "" if requirement.met(value) else " ✗"
-    label = quantity.label[0].lower() + quantity.label[1:]
-    return f"{label} {text(value, quantity.unit)} of {limit} {word}{mark}"
+    label = quantity_label(requirement.quantity, free)
+    label = label[0].lower() + label[1:]
+    shown = f"{text(value, quantity.unit)}{_bracket(around, quantity.unit)}"
+    return f"{label} {shown} of {limit} {word}{mark}"
 
 
-def hindrance(rows: Sequence[Step]) -> str:
-    """The step that takes most, in words: 'absorption in the resonator (×1.3)'; '' if none does."""
+def provenance(design: Design, open_: int = 0) -> str:
+    """Where the values come from, counted, and what the brackets mean; `open_`: unknowns drawn."""
+    kinds = Counter(design.origin(name).kind for name in INPUTS)
+    words = {"default": "at defaults"}
+    counts = [
+        f"{mark} {kinds[kind]} {words.get(kind, kind)}"
+        for kind, mark in MARKS.items()
+        if kinds[kind]
+    ]
+    said = f"values: {', '.join(counts)}"
+    if open_:
+        said += f" · in brackets: what {open_} unknown{'s' if open_ > 1 else ''} leave{'' if open_ > 1 else 's'} open"
+    return said
+
+
+def hindrance(rows: Sequence[Step], continuous: bool = False) -> str:
+    """The step that takes most, in words: 'most is lost to the filter (×1.3)'; '' if none does.
+
+    Where nothing comes through a step, the first such. continuous: how the emitter is pumped.
+    """
+    words = HINDRANCES | (CONTINUOUS if continuous else {})
+    for row in rows:
+        if row.factor == 0:
+            return words[row.step][1]
     factors = [(row.factor, row.step) for row in rows if row.factor is not None and row.factor > 0]
-    if not factors:
-        return ""
-    factor, step = min(factors)
-    return f"{HINDRANCES[step]} (×{text(1 / factor, '1', 2)})" if factor < 0.995 else ""
+    factor, step = min(factors, default=(1.0, ""))
+    return (
+        f"most is lost to {words[step][0]} (×{text(1 / factor, '1', 2)})" if factor < 0.995 else ""
+    )
 
 
 def sentence(
-    design: Design, outcome: Mapping[str, Any], rows: Sequence[Step], free: bool
+    design: Design,
+    outcome: Mapping[str, Any],
+    rows: Sequence[Step],
+    free: bool,
+    ranges: Mapping[str, Range] | None = None,
 ) -> Sentence:
-    """The two lines for a design; `free`: the photons are wanted in free space, not in a fibre."""
+    """The three lines for a design.
+
+    free: the photons are wanted in free space, not in a fibre. ranges: of the quantities, from what
+    is not known, where they are worked out.
+    """
+    around = ranges or {}
     first, *others = design.requirements or (None,)
-    clauses = [_clause(entry, outcome[entry.quantity]) for entry in others if entry]
-    worst = hindrance(rows)
+    clauses = [
+        _clause(entry, outcome[entry.quantity], free, around.get(entry.quantity))
+        for entry in others
+        if entry
+    ]
+    worst = hindrance(rows, design.evaluation.value("pumping") == "continuous")
     if worst:
-        clauses.append(f"most is lost to {worst}")
+        clauses.append(worst)
     met = None
     if design.requirements:
         met = all(bool(entry.met(outcome[entry.quantity])) for entry in design.requirements)
         if met:
             clauses.insert(0, "every requirement is met")
-    return Sentence(_headline(first, outcome, free), " · ".join(clauses), met)
+    known = provenance(design, len(open_names(design)) if around else 0)
+    return Sentence(_headline(first, outcome, free, around), " · ".join(clauses), met, known)
 
 
-def next_step(drawn: Map, place: tuple[float, float], requirements: Sequence[Requirement]) -> str:
+def next_step(
+    drawn: Map,
+    place: tuple[float, float],
+    requirements: Sequence[Requirement],
+    free: bool = False,
+) -> str:
     """What the map says to a design that misses: the nearest place that meets everything.
 
-    place: the design's values on the two axes, SI. Nearest in fractions of the axes.
+    place: the design's values on the two axes, SI. Nearest in fractions of the axes. free: the
+    photons are wanted in free space.
     """
     if drawn.margin is None:
         return ""
     holds = drawn.margin >= 0
     if not holds.any():
-        worst = _worst(drawn, place, requirements)
+        worst = _worst(drawn, place, requirements, free)
         return f"nowhere on this map is everything met; {worst} is furthest from it"
     ny, nx = holds.shape
     rows, columns = np.nonzero(holds)
@@ -164,11 +241,13 @@ def _name(name: str) -> str:
     return label[0].lower() + label[1:]
 
 
-def _worst(drawn: Map, place: tuple[float, float], requirements: Sequence[Requirement]) -> str:
+def _worst(
+    drawn: Map, place: tuple[float, float], requirements: Sequence[Requirement], free: bool
+) -> str:
     """The requirement that binds at the design's own cell, in words."""
     if drawn.binding is None:
         return "a requirement"
     ny, nx = drawn.binding.shape
     column = min(int(_inside(drawn.x, place[0]) * nx), nx - 1)
     row = min(int(_inside(drawn.y, place[1]) * ny), ny - 1)
-    return REGISTRY.quantities[requirements[int(drawn.binding[row, column])].quantity].label
+    return quantity_label(requirements[int(drawn.binding[row, column])].quantity, free)

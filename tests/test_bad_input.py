@@ -250,7 +250,7 @@ JOINT: dict[str, tuple[dict[str, Any], tuple[str, ...]]] = {
         ("numerical_aperture = 1.2", "to 1 ", "reference_side", "air"),
     ),
     "aperture beyond the coverslip": (
-        {"numerical_aperture": 1.6, "medium_index": 1.9},
+        {"numerical_aperture": 1.6, "medium_index": 1.9, "reference_side": "glass"},
         ("numerical_aperture = 1.6", "1.52", "reference_side", "glass"),
     ),
     "fast line broader than the wavelength allows": (
@@ -421,6 +421,8 @@ POINTS: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
     "a map axis that runs backwards": (lambda: Axis("quality_factor", 100, 10), ("quality_factor",)),
     "a map axis without end": (lambda: Axis("quality_factor", 1, math.inf), ("quality_factor",)),
     "a map axis of not-a-number": (lambda: Axis("quality_factor", math.nan, 2), ("quality_factor",)),
+    "a map axis of truth values": (lambda: Axis("quality_factor", True, 5), ("quality_factor", "rise")),
+    "a map axis beyond any float": (lambda: Axis("quality_factor", 1, 10**400), ("quality_factor", "rise")),
     "a map axis of text": (lambda: Axis("quality_factor", "1", 2), ("quality_factor",)),
     "a logarithmic axis from zero": (lambda: Axis("quenching", 0, 2), ("quenching", "above 0")),
     "a map axis of one cell": (lambda: Axis("lifetime", 1e-9, 2e-9, count=1), ("2 to 2048", "1")),
@@ -480,6 +482,8 @@ DESIGNS: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
     "requirement of text": (lambda: Requirement("g2_zero", at_most="0.1"), ("at_most", "'0.1'")),
     "requirement of a truth value": (lambda: Requirement("g2_zero", at_most=True), ("True",)),
     "requirement of not-a-number": (lambda: Requirement("g2_zero", at_most=math.nan), ("finite",)),
+    "requirement beyond any float": (lambda: Requirement("g2_zero", at_most=10**400), ("finite",)),
+    "requirement of a truth value of numpy": (lambda: Requirement("g2_zero", at_most=np.True_), ("at_most",)),
     "requirement without end": (lambda: Requirement("g2_zero", at_least=math.inf), ("finite",)),
     "requirement of an array": (lambda: Requirement("g2_zero", at_most=np.ones(2)), ("at_most",)),
     "scatter of an unknown kind": (lambda: Spread("cauchy", 1.0), ("cauchy", "normal")),

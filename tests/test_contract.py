@@ -34,9 +34,10 @@ VOIDS = [name for name, caution in CAUTIONS.items() if caution.voids]
 #: Array against its elements, relative.
 SAME = 1e-9
 
-#: A fibre far off the image takes what is left of an oscillating integral, so rounding is relative to
-#: the whole overlap (1), not to the rest: these quantities, where `fibre_offset` is given, add this
-#: much of what they are a share of.
+#: A fibre far off the image takes what is left of an oscillating integral, and a filter in the far
+#: tail of a measured spectrum that wanders takes what is left of an average, whose nodes follow the
+#: array: there rounding is relative to the whole (1), not to the rest. These quantities add this much
+#: of what they are a share of.
 CANCELLED = 1e-13
 THROUGH_FIBRE = {
     "fibre_share": "",
@@ -44,6 +45,20 @@ THROUGH_FIBRE = {
     "rate_in_fibre": "rate_at_lens",
     "rate_detected": "rate_at_lens",
 }
+THROUGH_FILTER = {
+    "filter_share": "",
+    "rate_in_fibre": "rate_at_lens",
+    "rate_detected": "rate_at_lens",
+}
+
+
+def cancelled(point: Point) -> dict[str, str]:
+    """The quantities of a point that are left of something cancelled, and their whole."""
+    found = dict(THROUGH_FIBRE) if "fibre_offset" in point else {}
+    wanders = np.any(np.asarray(point.get("slow_linewidth", 0.0)) > 0)
+    if wanders and isinstance(point.get("spectrum"), Samples):
+        found |= THROUGH_FILTER
+    return found
 
 
 # --- what every name carries ---------------------------------------------------------------------
@@ -81,7 +96,7 @@ def test_an_input_has_meaning_unit_domain_slider_and_scale(name: str) -> None:
     if entry.whole:
         assert entry.scale == "choice"
         return
-    assert entry.scale in ("linear", "log", "logit", "log or zero", "log or none")
+    assert entry.scale in ("linear", "log", "log or zero", "log or none")
     low, high = entry.slider
     assert low < high
     assert low > 0 or not entry.scale.startswith("log")
@@ -147,9 +162,7 @@ def check_numbers(point: Point, found: dict[str, Any]) -> None:
 def check_elements(point: Point) -> float:
     """Every element of an array point gives what it gives alone. Returns the largest deviation."""
     shape = np.broadcast_shapes(*(np.shape(v) for k, v in point.items() if not INPUTS[k].whole))
-    whole = evaluate(point, [*EVERYTHING, "reference_side"])
-    # One side for the whole array: the default looks at all its apertures.
-    point = {**point, "reference_side": whole.pop("reference_side")}
+    whole, left = evaluate(point, EVERYTHING), cancelled(point)
     worst = 0.0
     for name, value in whole.items():
         assert np.shape(value) == shape, name
@@ -162,8 +175,8 @@ def check_elements(point: Point) -> float:
                 assert one == other, (name, index, point)
             elif not (math.isnan(one) and math.isnan(other)):
                 limit = SAME * abs(other)
-                if name in THROUGH_FIBRE and "fibre_offset" in point:
-                    limit += CANCELLED * alone.get(THROUGH_FIBRE[name], 1.0)
+                if name in left:
+                    limit += CANCELLED * alone.get(left[name], 1.0)
                 else:
                     worst = max(worst, abs(one - other) / abs(other) if other else abs(one))
                 assert abs(one - other) <= limit, (name, index, one, other, point)
@@ -199,6 +212,7 @@ CHOICES = (
     {"mode_profile": "compact", "pumping": "continuous", "destination": "fibre"},
     {"pattern": Pattern([0.0, 0.2, 0.5, 1.2], [1.0, 0.8, 0.1, 0.0]), "destination": "fibre"},
     {"reference_side": "glass", "pumping": "continuous", "biexciton_yield": [0.0, 0.3, 1.0]},
+    {"numerical_aperture": [0.8, 1.2, 1.7], "medium_index": 2.0, "biexciton_yield": 0.1},
 )
 
 
@@ -240,8 +254,68 @@ def test_the_shape_of_the_answer_is_the_broadcast_of_the_numbers() -> None:
     for value in evaluate(point, [*EVERYTHING, "lifetime", "upward_share"]).values():
         assert value.shape == (2, 3, 4)
         assert not value.flags.writeable
-    empty = evaluate({"quality_factor": np.zeros((0, 3))}, EVERYTHING)
-    assert {value.shape for value in empty.values()} == {(0, 3)}
+
+
+@pytest.mark.parametrize("window", [math.inf, 7e-9])
+@pytest.mark.parametrize("slow", [0.0, 4e-9])
+@pytest.mark.parametrize("spectrum", SPECTRA)
+def test_an_empty_array_gives_empty_arrays(spectrum: str, slow: float, window: float) -> None:
+    point: Point = {"slow_linewidth": slow, "filter_width": window}
+    if SPECTRA[spectrum] is not None:
+        point["spectrum"] = SPECTRA[spectrum]
+    for name in (name for name, entry in INPUTS.items() if not entry.whole):
+        empty = evaluate({**point, name: np.zeros((0, 3))}, EVERYTHING)
+        assert {value.shape for value in empty.values()} == {(0, 3)}, name
+
+
+def test_of_many_apertures_each_has_its_own_reference_side() -> None:
+    """A single design above NA 1 is watched through the glass, one below from the air."""
+    wanted = ["brightness_gain", "reference_collected_share"]
+    found = evaluate({"medium_index": 1.52, "numerical_aperture": [0.8, 1.2]}, wanted)
+    for index, (aperture, side) in enumerate(((0.8, "air"), (1.2, "glass"))):
+        point = {"medium_index": 1.52, "numerical_aperture": aperture}
+        assert evaluate(point, ["reference_side"])["reference_side"] == side
+        alone = evaluate({**point, "reference_side": side}, wanted)
+        for name in wanted:
+            assert found[name][index] == pytest.approx(alone[name], rel=1e-12), (name, aperture)
+    assert found["brightness_gain"][0] == pytest.approx(5.00, abs=0.01)
+
+
+def test_an_aperture_beyond_the_coverslip_costs_the_reference_alone() -> None:
+    point = {"medium_index": 2.0, "numerical_aperture": 1.7}
+    found = evaluate(point, EVERYTHING)
+    without = {name for name in NUMBERS if math.isnan(found[name])}
+    assert without == {"brightness_gain", "reference_collected_share"}
+    assert found["beyond_coverslip"]
+    assert found["rate_in_fibre"] > 0
+
+
+NARROW, WIDE = 1e-16, 1e-9  # [m]; 20 ns allow 1.1e-14
+
+
+@pytest.mark.parametrize(
+    ("point", "below", "dephasing"),
+    [
+        ({"fast_linewidth": NARROW}, True, 0.0),
+        ({"fast_linewidth": WIDE}, False, 1.0),
+        ({"fast_linewidth": NARROW, "spectrum": Lines([(1.0, 0.0, WIDE)])}, False, 1.0),
+        ({"fast_linewidth": WIDE, "spectrum": Lines([(1.0, 0.0, NARROW)])}, True, 0.0),
+        ({"fast_linewidth": NARROW, "spectrum": Lines([(1.0, 0.0, None)])}, True, 0.0),
+        ({"spectrum": Lines([(0.6, 0.0, WIDE), (0.4, 9e-9, NARROW)])}, True, 1.0),
+        ({"spectrum": Lines([(1.0, 0.0, 0.0)])}, False, 0.0),
+        ({"fast_linewidth": NARROW, "spectrum": Samples([-WIDE, 0, WIDE], [0, 1, 0])}, False, 1.0),
+        ({"fast_linewidth": WIDE, "spectrum": Samples([-NARROW, 0, NARROW], [0, 1, 0])}, True, 0.0),
+    ],
+)
+def test_a_spectrum_stands_in_for_the_fast_linewidth(
+    point: Point, below: bool, dephasing: float
+) -> None:
+    found = evaluate(point, ["line_below_limit", "pure_dephasing", *EVERYTHING])
+    assert found["line_below_limit"] == below
+    full = 2 * math.pi * 299792458 * WIDE / (650e-9) ** 2
+    assert found["pure_dephasing"] == pytest.approx(dephasing * (full - 1 / 20e-9), rel=1e-5)
+    parts = found["decay_elsewhere"] + found["pure_dephasing"]
+    assert found["coherence_decay"] == pytest.approx(parts, rel=1e-12)
 
 
 def test_asking_for_more_changes_nothing() -> None:
@@ -320,6 +394,7 @@ VOID_POINTS: dict[str, Point] = {
         "other_modes": [1.0, 0.0],
         "dipole_alignment": 0.0,
     },
+    "beyond_coverslip": {"numerical_aperture": [1.2, 1.7], "medium_index": 2.0},
     "no_light": {"biexciton_yield": 0.5, "other_modes": [1.0, 0.0], "dipole_alignment": 0.0},
 }
 
@@ -334,7 +409,7 @@ def test_no_number_exactly_where_a_caution_says_so(mark: str, pumping: str) -> N
     without = {quantity for quantity in NUMBERS if math.isnan(found[quantity][1])}
     assert not any(math.isnan(found[quantity][0]) for quantity in NUMBERS)
     assert {name for name in NUMBERS if set(CAUTIONS[mark].voids) & dependencies(name)} <= without
-    assert "g2_zero" in without
+    assert ("brightness_gain" if mark == "beyond_coverslip" else "g2_zero") in without
     assert not without & {
         "peak_purcell",
         "mode_radius",
@@ -368,7 +443,7 @@ def along(
     """A quantity along rising values of one input, the rest of the point fixed."""
     rest = {key: value for key, value in point.items() if key != name}
     values = value_at(INPUTS[name], np.array(steps), rest)
-    if name == "numerical_aperture" and "reference_side" not in rest:
+    if wanted == "reference_collected_share" and "reference_side" not in rest:
         values = np.minimum(values, 1.0)
     found = evaluate({**rest, name: values}, [wanted])[wanted]
     return values, np.asarray(found)

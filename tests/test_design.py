@@ -98,6 +98,18 @@ def test_numbers_of_any_kind_become_floats() -> None:
     assert design == Design({"quality_factor": 100.0, "mode_volume": 0.5, "lifetime": 2e-9})
 
 
+@pytest.mark.parametrize("kind", [np.float32, np.float64, np.int64, np.uint8, np.longdouble, int])
+def test_scalars_of_numpy_are_numbers(kind: type) -> None:
+    numbers = [
+        Requirement("g2_zero", at_most=kind(1)).limit,
+        Spread("normal", kind(1)).width,
+        Unknown(kind(1), 2.0).low,
+    ]
+    assert numbers == [1.0] * 3
+    assert {type(number) for number in numbers} == {float}
+    assert Requirement("g2_zero", at_most=np.float32(0.1)).limit == float(np.float32(0.1))
+
+
 @pytest.mark.parametrize("value", [0.1, 0.1 - 1e-15, -5, math.inf, -math.inf])
 def test_requirements(value: float) -> None:
     most, least = Requirement("g2_zero", at_most=0.1), Requirement("g2_zero", at_least=0.1)

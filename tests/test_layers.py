@@ -13,14 +13,15 @@ PACKAGE = Path(__file__).resolve().parent.parent / "explorer"
 #: From the ground up. A module imports from the lines above its own, never from its own or below.
 LAYERS = (
     ("units", "whole", "version"),
-    ("registry", "exact", "broadening", "keyrate"),
+    ("registry", "exact", "broadening", "keyrate", "atomic"),
     ("inputs", "physics", "domain"),
     ("evaluate",),
     ("design", "budget", "published", "reading"),
     ("catalogue",),
     ("maps", "sampling", "combine", "limits", "measured", "sweep", "advice"),
-    ("candidates", "prediction", "curves", "sentence"),
+    ("candidates", "prediction", "curves", "sentence", "refusals"),
     ("question",),
+    ("answers",),
     ("schema",),
     ("record", "scenario"),
     ("__init__",),

@@ -50,13 +50,20 @@ def test_axes_are_frozen_keys() -> None:
     assert hash(X) == hash(Axis("mode_volume", 1e-2, 1e2, count=64))
 
 
+def test_ends_of_an_axis_may_be_scalars_of_numpy() -> None:
+    axis = Axis("quality_factor", np.int64(1), np.float32(1e3), count=np.int16(9))
+    assert axis == Axis("quality_factor", 1.0, 1e3, count=9)
+    assert [type(value) for value in (axis.low, axis.high, axis.count)] == [float, float, int]
+
+
 @pytest.mark.parametrize("name", [name for name, entry in INPUTS.items() if not entry.whole])
 def test_any_number_can_be_an_axis(name: str) -> None:
     low, high = INPUTS[name].slider
     log = low > 0 and INPUTS[name].scale.startswith("log")
     axis = Axis(name, low, high, log=log, count=3)
     other = X if name != "mode_volume" else Y
-    point = {"emission_wavelength": 2e-6} if name != "emission_wavelength" else {}
+    point = {"emission_wavelength": 2e-6, "medium_index": 1.52}
+    point.pop(name, None)
     found = make_map(
         point, axis, Axis(other.name, other.low, other.high, count=2), ["rate_in_fibre"]
     )

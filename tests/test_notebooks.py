@@ -1,5 +1,6 @@
 """The notebooks run from top to bottom, and what they show is there."""
 
+import runpy
 import sys
 from pathlib import Path
 
@@ -8,6 +9,8 @@ import pytest
 from jupyter_client.kernelspec import KernelSpec
 from jupyter_client.manager import AsyncKernelManager
 from nbclient import NotebookClient
+
+from explorer.scenario import first_question
 
 NOTEBOOKS = Path(__file__).resolve().parent.parent / "notebooks"
 
@@ -46,6 +49,19 @@ def test_notebook_runs(path: Path, monkeypatch: pytest.MonkeyPatch, tmp_path: Pa
             name for model in models.values() for name in model["state"].get("_dom_classes", ())
         }
         assert {"explorer", "panel-map", "panel-headline", "panel-budget"} <= classes
+
+
+def test_the_notebook_does_the_job_of_the_page(tmp_path: Path) -> None:
+    """The same published values, the same invented device, the same requirements."""
+    cells = nbformat.read(NOTEBOOKS / "from_code.ipynb", as_version=4).cells
+    sources = [cell.source for cell in cells if cell.cell_type == "code"]
+    upto = next(index for index, source in enumerate(sources) if "requirements = " in source)
+    script = tmp_path / "main_job.py"
+    script.write_text("\n".join(sources[: upto + 1]), encoding="utf-8")
+    names = runpy.run_path(str(script))
+    design = first_question().design
+    assert names["point"] == dict(design.point)
+    assert names["requirements"] == design.requirements
 
 
 def test_notebooks_are_kept_without_outputs() -> None:

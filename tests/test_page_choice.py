@@ -4,20 +4,28 @@ from __future__ import annotations
 
 import asyncio
 import math
+import re
 import time
 from collections.abc import Iterator
+from dataclasses import replace
 
 import pytest
 
-from explorer import Requirement
+from explorer import Requirement, Unknown
+from explorer.answers import Answers
 from explorer.candidates import batch
 from explorer.catalogue import emitters
 from explorer.combine import combined, with_record
 from explorer.page import candidate_rows
+from explorer.page.panels.keylink import KeyLinkPanel
+from explorer.page.panels.measure import MeasurePanel
 from explorer.page.shortlist import LETTERS, Shortlist, short_name
+from explorer.page.state import State
 from explorer.page.table import pack
 from explorer.page.work import SLICE, Work
-from explorer.scenario import first_question
+from explorer.reading import ReadingError, read_range
+from explorer.sampling import influences, ranges
+from explorer.scenario import LINK, first_question
 
 DESIGN = first_question().design
 MADE = batch(DESIGN, optics=["single_mode_fibre", "free_space_na_05"])
@@ -56,6 +64,7 @@ def test_a_row_says_what_its_design_gives() -> None:
         (math.log(2.0), "2.0× spare"),
         (-math.log(1.8), "1.8× short"),
         (0.001, "just met"),
+        (-math.log(1.03), "3 % short"),
         (-0.001, "just missed"),
         (math.nan, "no number"),
         (-math.log(3e5), "3e+05× short"),
@@ -153,3 +162,163 @@ def test_what_fails_is_told_and_the_rest_dropped() -> None:
     assert told == ["no such thing"]
     with pytest.raises(ValueError, match="no such thing"):
         Work().start(fails(), told.append)
+
+
+# -------------------------------------------------------------------- what is not known
+
+
+def small() -> State:
+    """A page's state with a small map."""
+    question = first_question()
+    return State(
+        replace(question, x=replace(question.x, count=12), y=replace(question.y, count=12))
+    )
+
+
+@pytest.mark.parametrize(
+    ("typed", "unit", "ends"),
+    [
+        ("3.4–3.9", "ns", (3.4e-9, 3.9e-9)),
+        ("3.4-3.9 ns", "ns", (3.4e-9, 3.9e-9)),
+        ("3.4 to 3.9 µs", "ns", (3.4e-6, 3.9e-6)),
+        ("1e-3…2e-3", "1", (1e-3, 2e-3)),
+        ("1e-3-2e-3", "1", (1e-3, 2e-3)),
+        ("−5–10", "nm", (-5e-9, 10e-9)),
+        ("0.2..0.9", "1", (0.2, 0.9)),
+        ("25", "1", None),
+        ("1e-5", "1", None),
+        ("−3 nm", "nm", None),
+        ("abc", "1", None),
+    ],
+)
+def test_ranges_as_people_type_them(typed, unit, ends) -> None:
+    assert read_range(typed, unit) == ends
+
+
+@pytest.mark.parametrize("typed", ["9–3", "3–4 parsec", "1.2.3–4"])
+def test_what_is_no_range_is_refused_in_words(typed: str) -> None:
+    with pytest.raises(ReadingError):
+        read_range(typed, "ns")
+
+
+def test_a_range_keeps_a_value_inside_and_moves_one_outside() -> None:
+    state = small()
+    state.give_range("quality_factor", 10.0, 100.0)
+    design = state.question.design
+    assert design.point["quality_factor"] == 25
+    assert design.unknowns["quality_factor"] == Unknown(10.0, 100.0)
+    assert design.origin("quality_factor") == DESIGN.origin("quality_factor")
+    state.give_range("quality_factor", 100.0, 10000.0)
+    assert state.question.design.point["quality_factor"] == pytest.approx(1000)
+    state.give(quality_factor=30.0)
+    assert "quality_factor" not in state.question.design.unknowns
+
+
+def test_a_range_beyond_the_domain_is_refused_beside_its_input() -> None:
+    state = small()
+    state.give_range("quantum_yield", 0.5, 1.5)
+    assert "quantum_yield" in state.problems
+    assert state.question.design == DESIGN
+
+
+def test_an_answer_carries_the_ranges_and_the_sentence_says_them() -> None:
+    answer = small().answer
+    expected = ranges(DESIGN, answer.outcome)
+    assert answer.ranges == expected
+    assert "(" in answer.sentence.headline
+    assert "what 4 unknowns leave open" in answer.sentence.known
+    counts = dict.fromkeys(("seen", "from memory", "typed", "at defaults"), 0)
+    for word in counts:
+        found = re.search(rf"(\d+) {word}", answer.sentence.known)
+        assert found is not None
+        counts[word] = int(found[1])
+    from explorer.inputs import INPUTS
+
+    assert sum(counts.values()) == len(INPUTS)
+
+
+def test_without_unknowns_nothing_stands_in_brackets() -> None:
+    question = first_question()
+    bare = replace(question, design=replace(question.design, unknowns={}))
+    answer = Answers().answer(bare)
+    assert answer.ranges is None
+    assert "(7" not in answer.sentence.headline
+    assert "brackets" not in answer.sentence.known
+
+
+def test_ranges_wait_for_rest_and_come_by_themselves() -> None:
+    async def main() -> None:
+        state = small()
+        heard = []
+        state.on_answer(heard.append)
+        state.give(quality_factor=30.0)
+        assert heard[-1].ranges is None, "the readouts do not wait for the ranges"
+        await asyncio.sleep(0.2)
+        assert heard[-1].ranges is None
+        for _ in range(100):
+            await asyncio.sleep(0.05)
+            if heard[-1].ranges is not None:
+                break
+        assert heard[-1].ranges == ranges(state.question.design, heard[-1].outcome)
+
+    asyncio.run(main())
+
+
+def test_the_ranking_is_made_only_while_it_is_open() -> None:
+    state = small()
+    panel = MeasurePanel(state)
+    assert state.answer.ranking is None
+    panel.head.click()
+    assert state.answer.ranking == influences(state.question.design, "rate_in_fibre")
+    assert "Optics transmission" in panel.list.value
+    panel.quantity.value = "g2_zero"
+    assert state.answer.ranking == influences(state.question.design, "g2_zero")
+    panel.head.click()
+    assert state.question.ranked == ""
+
+
+# -------------------------------------------------------------------- the key link
+
+
+def test_the_scenario_asks_for_what_its_link_needs() -> None:
+    """20 million photons/s at g2(0) of 0.1: what the invented link needs for its key."""
+    state = small()
+    panel = KeyLinkPanel(state)
+    panel.head.click()
+    assert panel.said.value.startswith("needs 19.9 M/s in the fibre")
+    assert float(panel.boxes["key"].value) == LINK["key"]
+    panel.use.click()
+    first, second, *others = state.question.design.requirements
+    assert (first.quantity, second.quantity) == ("rate_in_fibre", "g2_zero")
+    assert first.at_least == pytest.approx(20e6, rel=0.01)
+    assert second.at_most == pytest.approx(0.1)
+    assert others == [DESIGN.requirements[2]]
+
+
+def test_a_link_that_cannot_be_says_so_and_requires_nothing() -> None:
+    state = small()
+    panel = KeyLinkPanel(state)
+    panel.head.click()
+    for box, typed, words in (
+        ("key", "1e9", "at most"),
+        ("error", "60", "error"),
+        ("length", "far", "Length"),
+        ("receiver", "0", "receiver"),
+    ):
+        before = panel.boxes[box].value
+        panel.boxes[box].value = typed
+        assert words in panel.said.value
+        assert panel.use.disabled
+        panel.boxes[box].value = before
+    assert not panel.use.disabled
+    state.give(pumping="continuous")
+    assert "pulsed" in panel.said.value
+
+
+def test_a_link_through_fibre_asks_for_its_loss() -> None:
+    panel = KeyLinkPanel(small())
+    panel.head.click()
+    through_air = panel.said.value
+    panel.medium.value = "fibre"
+    assert panel.lines["visibility"].layout.display == "none"
+    assert panel.said.value != through_air

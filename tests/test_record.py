@@ -363,6 +363,24 @@ def test_other_units_of_the_same_kind_are_read() -> None:
     assert back.point == {"lifetime": 4.5e-9, "filter_width": 1e-7}
 
 
+@pytest.mark.parametrize("unit", ["°", "deg", "rad", "mrad"])
+def test_a_required_angle_may_be_in_degrees(unit: str) -> None:
+    figure = {"rad": 0.7, "mrad": 700}.get(unit, 40)
+    asked = Requirement("half_angle", at_most=math.radians(40) if figure == 40 else 0.7)
+    record = json.loads(design_text(Design(requirements=(asked,))))
+    assert record["requirements"][0]["at_most"]["unit"] == "rad"
+    record["requirements"][0]["at_most"] = {"value": figure, "unit": unit}
+    assert next(PLAIN.iter_errors(record), None) is None
+    back = design_from(json.dumps(record).encode())
+    assert back.requirements[0].limit == pytest.approx(asked.limit, rel=1e-15)
+
+
+def test_a_required_share_may_be_in_per_cent() -> None:
+    record = json.loads(design_text(Design(requirements=(Requirement("g2_zero", at_most=0.1),))))
+    record["requirements"][0]["at_most"] = {"value": 2.5, "unit": "%"}
+    assert design_from(json.dumps(record).encode()).requirements[0].limit == 0.025
+
+
 def test_a_mark_at_the_start_of_the_file_is_no_harm() -> None:
     text = design_text({"lifetime": 3e-9})
     assert design_from(b"\xef\xbb\xbf" + text.encode()) == Design({"lifetime": 3e-9})
@@ -385,9 +403,17 @@ def failing(number: int) -> Any:
     return fail
 
 
-@pytest.mark.parametrize("call", ["replace", "fsync", "chmod"])
+@pytest.mark.parametrize(
+    ("call", "before"),
+    [
+        ("replace", True),
+        ("replace", False),
+        ("fsync", True),
+        ("fsync", False),
+        ("chmod", True),  # a new file has its rights from the start
+    ],
+)
 @pytest.mark.parametrize("number", [errno.ENOSPC, errno.EIO, errno.EROFS])
-@pytest.mark.parametrize("before", [True, False])
 def test_an_interrupted_write_leaves_the_old_file(
     call: str, number: int, before: bool, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
@@ -451,7 +477,7 @@ def test_a_folder_that_may_not_be_written(tmp_path: Path, monkeypatch: pytest.Mo
     folder.chmod(0o500)
     try:
         if os.access(folder, os.W_OK):  # the superuser may write anywhere: let the system refuse
-            monkeypatch.setattr("tempfile.mkstemp", failing(errno.EACCES))
+            monkeypatch.setattr(os, "open", failing(errno.EACCES))
         with pytest.raises(RecordError, match=r"design\.json.*Permission denied"):
             save_design({"lifetime": 2e-9}, folder / "design.json")
     finally:
@@ -468,13 +494,50 @@ def test_a_bad_point_touches_no_file(tmp_path: Path) -> None:
     assert target.read_text() == "precious"
 
 
-def test_rights_of_a_file_are_kept(tmp_path: Path) -> None:
+@pytest.mark.parametrize("mask", [0o022, 0o077, 0o002])
+def test_a_new_file_has_the_rights_that_the_mask_leaves(mask: int, tmp_path: Path) -> None:
+    target = tmp_path / "design.json"
+    before = os.umask(mask)
+    try:
+        save_design({}, target)
+    finally:
+        os.umask(before)
+    assert target.stat().st_mode & 0o777 == 0o666 & ~mask
+
+
+@pytest.mark.parametrize("rights", [0o600, 0o664, 0o444])
+def test_rights_of_a_file_are_kept(rights: int, tmp_path: Path) -> None:
     target = tmp_path / "design.json"
     save_design({}, target)
-    assert target.stat().st_mode & 0o777 == 0o644
-    target.chmod(0o600)
+    target.chmod(rights)
     save_design({"lifetime": 1e-9}, target)
-    assert target.stat().st_mode & 0o777 == 0o600
+    assert target.stat().st_mode & 0o777 == rights
+    assert load_design(target).point == {"lifetime": 1e-9}
+
+
+def test_a_link_stays_a_link(tmp_path: Path) -> None:
+    folder = tmp_path / "kept"
+    folder.mkdir()
+    target, link, chain = folder / "design.json", tmp_path / "link.json", tmp_path / "chain.json"
+    link.symlink_to(target)
+    chain.symlink_to("link.json")
+    for number, path in enumerate((link, target, chain), start=1):  # at first to what is not there
+        save_design({"lifetime": number * 1e-9}, path)
+        assert load_design(target).point == {"lifetime": number * 1e-9}
+    assert link.is_symlink()
+    assert chain.is_symlink()
+    assert not target.is_symlink()
+    assert [file.name for file in folder.iterdir()] == ["design.json"]
+    assert len(list(tmp_path.iterdir())) == 3
+
+
+def test_a_link_to_itself_is_not_written(tmp_path: Path) -> None:
+    link = tmp_path / "design.json"
+    link.symlink_to(link)
+    with pytest.raises(RecordError, match=r"design\.json"):
+        save_design({}, link)
+    assert link.is_symlink()
+    assert len(list(tmp_path.iterdir())) == 1
 
 
 def test_two_writers_never_leave_half_a_file(tmp_path: Path) -> None:

@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 from scipy import stats
 
-from explorer import Design, Unknown, evaluate
+from explorer import QUANTITIES, Design, Unknown, evaluate
 from explorer.sampling import DRAWS, INSIDE, drawn_point, influences, ranges, spread
 from explorer.scenario import first_question
 
@@ -129,3 +129,13 @@ def test_a_range_holds_nine_tenths_of_many_other_draws() -> None:
     rate = evaluate({**design.point, **drawn}, ["rate_in_fibre"])["rate_in_fibre"]
     inside = np.mean((rate >= found.low) & (rate <= found.high))
     assert inside == pytest.approx(INSIDE, abs=0.03)
+
+
+@pytest.mark.parametrize(
+    "quantity", [name for name, one in QUANTITIES.items() if one.kind == "number"]
+)
+def test_every_quantity_can_be_ranked(quantity: str) -> None:
+    design = unknown(quantum_yield=(0.5, 0.98), numerical_aperture=(0.4, 0.7))
+    for row in influences(design, quantity, base=32):
+        assert 0 <= row.share <= 1
+        assert row.name in design.unknowns

@@ -4,21 +4,27 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from ipywidgets import HTML, Box, VBox
+from ipywidgets import HTML, Box, HBox, VBox
 
 from ..question import Question
 from ..scenario import first_question
 from .panels.angles import AnglesPanel
 from .panels.budget import BudgetPanel
+from .panels.candidates import CandidatesPanel
 from .panels.cautions import CautionsPanel
 from .panels.colours import ColoursPanel
 from .panels.cut import CutPanel
+from .panels.devices import DevicesPanel
 from .panels.emitter import EmitterPanel
 from .panels.files import FilesPanel
 from .panels.headline import HeadlinePanel
+from .panels.keylink import KeyLinkPanel
 from .panels.map import MapPanel
+from .panels.measure import MeasurePanel
+from .panels.shortlist import ShortlistPanel
 from .panels.values import ValuesPanel
 from .panels.wanted import WantedPanel
+from .sheets import Sheets
 from .state import State
 
 
@@ -36,11 +42,22 @@ class Explorer(Box):
         state = self.state
         style = HTML(f"<style>{(Path(__file__).parent / 'page.css').read_text('utf-8')}</style>")
         style.layout.display = "none"
+        sheets = Sheets(
+            {"Candidates": CandidatesPanel(state), "Published devices": DevicesPanel(state)}
+        )
+        shelf = HBox([sheets.buttons, ShortlistPanel(state), FilesPanel(state)])
+        shelf.add_class("x-shelf")
         super().__init__(
             [
                 style,
-                _seat("top", HeadlinePanel(state), FilesPanel(state)),
-                _seat("left", WantedPanel(state), EmitterPanel(state), ValuesPanel(state)),
+                _seat("top", HeadlinePanel(state)),
+                _seat(
+                    "left",
+                    WantedPanel(state),
+                    KeyLinkPanel(state),
+                    EmitterPanel(state),
+                    ValuesPanel(state),
+                ),
                 _seat("middle", MapPanel(state)),
                 _seat(
                     "right",
@@ -48,8 +65,10 @@ class Explorer(Box):
                     AnglesPanel(state),
                     ColoursPanel(state),
                     CutPanel(state),
+                    MeasurePanel(state),
                 ),
-                _seat("foot", CautionsPanel(state)),
+                sheets,
+                _seat("foot", shelf, CautionsPanel(state)),
             ]
         )
         self.add_class("explorer")

@@ -13,6 +13,7 @@ from ..published import Record
 from ..question import Answer
 from ..units import text
 from .canvas import Band, Mark, SecondScale
+from .records import edited
 
 #: Half-angles written on the second scale [degrees].
 HALF_ANGLES = (60, 40, 30, 20, 15, 10, 7, 5, 3, 2, 1)
@@ -63,6 +64,7 @@ class Backdrop:
             question.x,
             question.y,
             question.design.emitter,
+            edited(question.design),
             "aperture_radius" in question.design.point,
             tuple(values[name] for name in watched),
         )
@@ -87,6 +89,8 @@ def _own_band(answer: Answer, axis: Axis) -> Band | None:
         return None
     record = emitters().get(answer.question.design.emitter)
     name = record.name if record else "this emitter"
+    if edited(answer.question.design):
+        name += ", edited"
     return _band(float(values["emission_wavelength"]) / width, name, axis, own=True)
 
 

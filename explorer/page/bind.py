@@ -7,11 +7,13 @@ from typing import Any
 import numpy as np
 from ipywidgets import Box, Button, Dropdown, FloatSlider, HBox, Label, Text, VBox
 
-from ..design import written
+from ..design import Design, Origin, written
 from ..inputs import INPUTS
 from ..question import Answer
-from ..reading import ReadingError, read_number
+from ..reading import ReadingError, read_number, read_range
 from ..registry import Input
+from ..sentence import MARKS
+from .records import can_go_back
 from .scales import Scale
 from .state import State
 
@@ -27,6 +29,48 @@ def typed(name: str, value: Any, digits: int = 12) -> str:
     entry = INPUTS[name]
     text = written(name, value, digits)
     return text.removesuffix(f" {entry.shown}") if entry.shown != "1" else text
+
+
+def back_button(state: State, entry: Input) -> Button:
+    """A press takes an input back to its record's value, or to its default."""
+    back = Button(
+        description="↺", tooltip=f"{entry.label}: back to its published value, or its default"
+    )
+    back.add_class("x-back")
+    back.on_click(lambda _: state.reset(entry.name))
+    return back
+
+
+class OriginMark:
+    """The mark beside a label that says where the value comes from, and the same in its tooltip."""
+
+    def __init__(self, row: Box, label: Label, entry: Input) -> None:
+        self._row, self._label, self._entry = row, label, entry
+        self._last: Origin | None = None
+
+    def follow(self, design: Design) -> None:
+        """Mark the row as this design has it; nothing is sent where that is the same."""
+        origin = design.origin(self._entry.name)
+        if origin == self._last:
+            return
+        if self._last is not None:
+            self._row.remove_class(_origin_class(self._last))
+        self._row.add_class(_origin_class(origin))
+        self._last = origin
+        where = f": {origin.where}" if origin.where else ""
+        self._label.tooltip = f"{self._entry.meaning} {MARKS[origin.kind]} {origin.kind}{where}"
+
+
+def _origin_class(origin: Origin) -> str:
+    return f"from-{origin.kind.replace(' ', '-')}"
+
+
+def open_words(design: Design, name: str) -> str:
+    """The range of an input that is not known: '3.4–3.9 ns not known'; '' where it is known."""
+    unknown = design.unknowns.get(name)
+    if unknown is None or unknown.low == unknown.high:
+        return ""
+    return f"{typed(name, unknown.low, 4)}–{written(name, unknown.high, 4)} not known"
 
 
 class InputRow(VBox):
@@ -49,24 +93,27 @@ class InputRow(VBox):
         self.box.add_class("x-number")
         self.unit = Label("" if self.entry.shown == "1" else self.entry.shown)
         self.unit.add_class("x-unit")
-        self.back = Button(description="↺", tooltip=f"{self.entry.label}: back to its default")
-        self.back.add_class("x-back")
+        self.back = back_button(state, self.entry)
         self.slider = FloatSlider(
             min=0.0, max=1.0, step=self._scale.step, readout=False, tooltip=self.entry.meaning
         )
         self.slider.add_class("x-slider")
         self.wrong = Label("")
         self.wrong.add_class("x-wrong")
+        self.range = Label("", tooltip="Given as a range: not known. Type one number to close it")
+        self.range.add_class("x-open")
+        self._origin = OriginMark(self, self.label, self.entry)
         head = HBox([self.label, self.box, self.unit, self.back])
         head.add_class("x-head")
-        super().__init__([head, self.slider, self.wrong])
+        super().__init__([head, self.slider, self.range, self.wrong])
         self.add_class("x-row")
         self.add_class(f"input-{name}")
         self.slider.observe(self._slid, "value")
         self.box.observe(self._typed, "value")
-        self.back.on_click(lambda _: state.reset(name))
+        self._follow(state.answer, anew=True)
         state.on_answer(self._follow)
         state.on_problem(self._complain)
+        state.seat(name)
 
     def _slid(self, change: dict[str, Any]) -> None:
         here = self._scale.stop(self._value)
@@ -77,28 +124,33 @@ class InputRow(VBox):
     def _typed(self, change: dict[str, Any]) -> None:
         if self._syncing:
             return
+        name, text = self.entry.name, change["new"]
         try:
-            value = read_number(change["new"], self.entry.shown)
+            ends = read_range(text, self.entry.shown)
+            if ends is not None:
+                self._state.give_range(name, *ends)
+            else:
+                self._state.give(**{name: read_number(text, self.entry.shown)})
         except ReadingError as error:
-            self._state.refuse(self.entry.name, str(error))
-            return
-        self._state.give(**{self.entry.name: value})
+            self._state.refuse(name, str(error))
 
-    def _follow(self, answer: Answer) -> None:
+    def _follow(self, answer: Answer, anew: bool = False) -> None:
         name = self.entry.name
         value = float(np.asarray(answer.values[name]).reshape(()))
         given = name in answer.question.design.point
         self._syncing = True
         try:
             idle = name == IDLE and answer.values["spectrum"] is not None
-            if name not in self._state.problems:
+            if anew or name not in self._state.problems:
                 self.box.value = "spectrum" if idle else typed(name, value, 12 if given else 4)
             self.box.disabled = self.slider.disabled = idle
             self._value = value
             stop = self._scale.stop(value)
             if abs(stop - self.slider.value) > self._scale.step / 4:
                 self.slider.value = stop
-            self.back.disabled = not given
+            self.back.disabled = not can_go_back(answer.question.design, name)
+            self._origin.follow(answer.question.design)
+            self.range.value = open_words(answer.question.design, name)
         finally:
             self._syncing = False
 
@@ -107,6 +159,8 @@ class InputRow(VBox):
         text = text.removeprefix(f"{self.entry.name} = ")  # its label stands above
         if text != self.wrong.value:
             self.wrong.value = text
+            if not text:  # settled from elsewhere: what was typed gives way to the value
+                self._follow(self._state.answer)
         if text:  # a slider that was pulled to where it may not be goes back
             self._syncing = True
             self.slider.value = self._scale.stop(self._value)
@@ -114,7 +168,7 @@ class InputRow(VBox):
 
 
 class ChoiceRow(HBox):
-    """A choice between words."""
+    """A choice between words; the headline says what is refused."""
 
     def __init__(self, state: State, name: str) -> None:
         self.entry = INPUTS[name]
@@ -123,13 +177,12 @@ class ChoiceRow(HBox):
         label.add_class("x-name")
         options = [(word.replace("_", " "), word) for word in self.entry.choices]
         self.menu = Dropdown(options=options, tooltip=self.entry.meaning)
-        self.back = Button(description="↺", tooltip=f"{self.entry.label}: back to its default")
-        self.back.add_class("x-back")
+        self.back = back_button(state, self.entry)
+        self._origin = OriginMark(self, label, self.entry)
         super().__init__([label, self.menu, self.back])
         self.add_class("x-head")
         self.add_class("x-row")
         self.add_class(f"input-{name}")
-        self.back.on_click(lambda _: state.reset(name))
         state.on_answer(self._follow)
         state.on_problem(lambda: self._follow(state.answer))  # what was refused is not shown
         self.menu.observe(self._chosen, "value")
@@ -140,7 +193,8 @@ class ChoiceRow(HBox):
 
     def _follow(self, answer: Answer) -> None:
         self.menu.value = answer.values[self.entry.name]
-        self.back.disabled = self.entry.name not in answer.question.design.point
+        self._origin.follow(answer.question.design)
+        self.back.disabled = not can_go_back(answer.question.design, self.entry.name)
 
 
 def row(state: State, name: str) -> Box:

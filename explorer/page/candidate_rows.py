@@ -43,9 +43,9 @@ def columns(design: Design, with_optic: bool) -> list[Column]:
             None,
             True,
         ),
-        Column("emitter", "Emitter", "text", "Published emitter", 190),
+        Column("emitter", "Emitter", "text", "Published emitter", 230),
         Column("temperature", "at", "text", "Temperature of the emitter"),
-        Column("resonator", "Resonator", "text", "Published resonator with Q and V", 220),
+        Column("resonator", "Resonator", "text", "Published resonator with Q and V", 240),
     ]
     if with_optic:
         found.append(Column("optic", "Optic", "text", "Collecting optic", 180))
@@ -93,6 +93,8 @@ def distance(margin: float, requirement: Requirement | None) -> str:
     ratio = math.exp(min(abs(margin), 700.0))
     if ratio < 1.005:
         return "just met" if margin >= 0 else "just missed"
+    if ratio < 1.1:
+        return f"{100 * (ratio - 1):.0f} % {'spare' if margin >= 0 else 'short'}"
     number = text(ratio, "1", 2) if ratio < 1e4 else f"{ratio:.0e}"
     return f"{number}× {'spare' if margin >= 0 else 'short'}"
 
@@ -124,7 +126,7 @@ def _row(
         Cell("meets all" if met else "misses", met),
         Cell(distance(far, binding), far, held and f"{held}: furthest from what is wanted"),
         Cell(light.name, light.name),
-        Cell(light.temperature, light.temperature),
+        Cell(light.temperature.replace("room temperature", "room"), light.temperature),
         Cell(mode.name, mode.name),
     ]
     if with_optic:

@@ -11,7 +11,7 @@ from ..units import text
 from .look import INK, RED, SEA
 
 #: Size of the drawing: a row, the names, the plot [px].
-ROW, NAMES, WIDTH = 26, 330, 460
+ROW, NAMES, WIDTH, TOP = 23, 330, 460, 30
 LOWEST, HIGHEST = 0.5, 500.0
 
 SHORT = {
@@ -42,7 +42,7 @@ def _place(value: float) -> float:
 
 def drawing(rows: Sequence[Prediction]) -> str:
     """Ranges of the predictions as bars, the published values as marks, on a logarithmic scale."""
-    height = ROW * len(rows) + 64
+    height = ROW * len(rows) + TOP + 34
     head = (
         f'<svg xmlns="http://www.w3.org/2000/svg" role="img" width="{NAMES + WIDTH + 20}" '
         f'height="{height}" viewBox="0 0 {NAMES + WIDTH + 20} {height}" font-family="sans-serif" '
@@ -52,14 +52,14 @@ def drawing(rows: Sequence[Prediction]) -> str:
     for tick in (1, 10, 100):
         x = _place(tick)
         parts.append(
-            f'<path d="M{x:.1f} 8V{height - 52}" stroke="#dedbd0"/>'
-            f'<text x="{x:.1f}" y="{height - 34}" text-anchor="middle">{tick}</text>'
+            f'<path d="M{x:.1f} {TOP - 6}V{height - 30}" stroke="#dedbd0"/>'
+            f'<text x="{x:.1f}" y="{TOP - 12}" text-anchor="middle">{tick}</text>'
         )
     parts.append(
         f'<text x="{NAMES + WIDTH / 2}" y="{height - 12}" text-anchor="middle">enhancement; bar: '
-        "predicted, mark: published</text>"
+        "predicted, tick: at the published values, mark: published</text>"
     )
-    parts += [_bar(row, 8 + ROW * index + ROW / 2) for index, row in enumerate(rows)]
+    parts += [_bar(row, TOP + ROW * index + ROW / 2) for index, row in enumerate(rows)]
     return "".join(parts) + "</svg>\n"
 
 

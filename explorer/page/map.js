@@ -114,6 +114,8 @@ const valueAt = (scale, fraction) => scale.log
   ? scale.low * (scale.high / scale.low) ** fraction
   : scale.low + fraction * (scale.high - scale.low);
 
+const clamped = (fraction) => Math.max(0, Math.min(1, fraction));
+
 const axisTitle = (axis) => (axis.unit && axis.unit !== "1" ? `${axis.label}, ${axis.unit}` : axis.label);
 
 // [{fraction, value, text}], at most `room` of them; `write` turns a value into text
@@ -1050,7 +1052,7 @@ class MapView {
 
   // -------------------------------------------------------------- the design point
 
-  ringPlace() { return [0, 1].map((k) => Math.max(0, Math.min(1, this.point[k]))).map((f, k) => (k ? this.toY(f) : this.toX(f))); }
+  ringPlace() { return [0, 1].map((k) => clamped(this.point[k])).map((f, k) => (k ? this.toY(f) : this.toX(f))); }
 
   pointIsOutside() { return this.point.some((fraction) => fraction < 0 || fraction > 1); }
 
@@ -1110,7 +1112,8 @@ class MapView {
   }
 
   movePoint(fx, fy) {
-    const point = [fx, fy].map((fraction) => Math.max(0, Math.min(1, fraction)));
+    // A hand that keeps its height or its column leaves that input alone, also beyond the border
+    const point = [fx, fy].map((fraction, k) => (Math.abs(clamped(fraction) - clamped(this.point[k])) < 1e-9 ? this.point[k] : clamped(fraction)));
     if (point[0] === this.point[0] && point[1] === this.point[1]) return;
     this.point = point;
     this.paintPoint();

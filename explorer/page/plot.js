@@ -14,7 +14,7 @@ function read(view) {
   return { header, points: new Float32Array(bytes) };
 }
 
-// Pixel places of a frame: margins, and scales of both axes.
+// Pixel places of a frame: margins, and scales of both axes. Points count from the lower end of x.
 function placed(header, width, height) {
   const left = header.y_ticks.length ? 34 : 6;
   const bottom = header.ticks.length ? (header.label ? 40 : 22) : 4;
@@ -30,6 +30,7 @@ function placed(header, width, height) {
   return {
     box,
     x: (value) => box.left + ((value - x0) / (x1 - x0)) * (box.right - box.left),
+    along: (distance) => box.left + (distance / (x1 - x0)) * (box.right - box.left),
     y: (value) => box.bottom - ((value - y0) / (y1 - y0)) * (box.bottom - box.top),
   };
 }
@@ -64,14 +65,14 @@ function stroke(pen, curve, points, place, theme) {
   if (points.length < 4) return;
   const colour = theme(curve.colour);
   pen.beginPath();
-  for (let i = 0; i < points.length; i += 2) pen.lineTo(place.x(points[i]), place.y(points[i + 1]));
+  for (let i = 0; i < points.length; i += 2) pen.lineTo(place.along(points[i]), place.y(points[i + 1]));
   if (curve.fill) {
     pen.save();
     const line = new Path2D();
-    for (let i = 0; i < points.length; i += 2) line.lineTo(place.x(points[i]), place.y(points[i + 1]));
+    for (let i = 0; i < points.length; i += 2) line.lineTo(place.along(points[i]), place.y(points[i + 1]));
     if (curve.fill === "base") {
-      line.lineTo(place.x(points[points.length - 2]), place.box.bottom);
-      line.lineTo(place.x(points[0]), place.box.bottom);
+      line.lineTo(place.along(points[points.length - 2]), place.box.bottom);
+      line.lineTo(place.along(points[0]), place.box.bottom);
     }
     line.closePath();
     pen.globalAlpha = curve.opacity;

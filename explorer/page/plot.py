@@ -1,7 +1,8 @@
 """A small plot of curves, drawn in the browser from one binary message (``plot.js``).
 
 For plots that follow a dragged point: a step costs one message and about a millisecond of drawing.
-The layout of the message is that of ``canvas.py``. Nothing is computed here.
+The layout of the message is that of ``canvas.py``; its points count from the lower end of x, so that
+they keep their digits in a frame that is narrow and far from zero. Nothing is computed here.
 """
 
 from __future__ import annotations
@@ -58,7 +59,8 @@ class Plot(anywidget.AnyWidget):
         """Draw these curves, in one message; an equal drawing sends nothing."""
         rows, points = [], [np.empty((0, 2), "<f4")]
         for curve in curves:
-            path = np.column_stack([np.asarray(curve.x, "<f4"), np.asarray(curve.y, "<f4")])
+            x = np.asarray(curve.x, float) - frame.x[0]
+            path = np.column_stack([x, curve.y]).astype("<f4")
             row = {name: value for name, value in vars(curve).items() if name not in ("x", "y")}
             rows.append(row | {"count": len(path)})
             points.append(path)

@@ -36,7 +36,7 @@ class Sheets(VBox):
     def __init__(self, panels: dict[str, Box]) -> None:
         self._open = ""
         self.sheets = {
-            title: Sheet(title, panel, lambda: self.open("")) for title, panel in panels.items()
+            title: Sheet(title, panel, lambda: self.turn_to("")) for title, panel in panels.items()
         }
         super().__init__(list(self.sheets.values()))
         self.add_class("seat-sheet")
@@ -46,11 +46,11 @@ class Sheets(VBox):
 
     def _button(self, title: str) -> Button:
         button = Button(description=title, tooltip=f"{title}: open or close")
-        button.add_class(f"open-{title.split()[0].lower()}")
-        button.on_click(lambda _: self.open("" if self._open == title else title))
+        button.add_class(f"open-{title.split(maxsplit=1)[0].lower()}")
+        button.on_click(lambda _: self.turn_to("" if self._open == title else title))
         return button
 
-    def open(self, title: str) -> None:
+    def turn_to(self, title: str) -> None:
         """Open one sheet and close the other; '' closes all."""
         before, self._open = self._open, title
         for name, sheet in self.sheets.items():

@@ -8,14 +8,18 @@ from __future__ import annotations
 
 import asyncio
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import replace
 from typing import Any
 
-from ..design import Design
+from ..answers import BAND, SLICE, Answers
+from ..combine import PARTS, with_record
+from ..design import Design, Unknown
 from ..domain import InputError
-from ..question import BAND, SLICE, Answer, Answers, Question
-from .records import point_of
+from ..question import Answer, Question
+from ..sampling import spread
+from .records import PLACE, as_published, placed, still_placed
+from .shortlist import Shortlist
 
 #: How long a hand must rest before a draft of the map gives way to the whole map [s].
 REST = 0.3
@@ -24,11 +28,18 @@ Listener = Callable[[Answer], None]
 
 
 class State:
-    """One question and its answer, for one page."""
+    """One question and its answer, for one page.
+
+    problems: what was refused, by the input (or the panel) that asked for it; '' is the page.
+    seats: the names beside which a problem is shown; the headline shows all others.
+    """
 
     def __init__(self, question: Question) -> None:
-        self.question = question
+        self.question = self._before = question
         self.problems: dict[str, str] = {}
+        self.seats: set[str] = set()
+        self._cause = ""
+        self.shortlist = Shortlist()
         self._answers = Answers()
         self._listeners: list[Listener] = []
         self._complaints: list[Callable[[], None]] = []
@@ -42,59 +53,60 @@ class State:
         listener(self.answer)
 
     def on_problem(self, listener: Callable[[], None]) -> None:
-        """Call a listener when `problems` changed."""
+        """Call a listener when `problems` or `seats` changed."""
         self._complaints.append(listener)
+
+    def seat(self, name: str) -> None:
+        """From now on problems of this name are shown beside it."""
+        self.seats.add(name)
+        if name in self.problems:
+            self._complain()
 
     def ask(self, **changes: Any) -> None:
         """Change parts of the question and answer it; equal questions do nothing.
 
         A question that cannot be is refused: its sentence goes to `problems`, nothing else changes.
+        With a whole new design no older complaint stands.
         """
         try:
             question = replace(self.question, **changes)
         except InputError as error:
-            self.refuse(error.name or "", str(error))
+            self.refuse("", str(error))
             return
-        self._settle(set())
-        if question != self.question:
-            self._start(question)
+        self._go(question, self.problems if "design" in changes else ())
 
     def give(self, **values: Any) -> None:
         """Give inputs of the design, in SI, as typed by a person."""
-        self._change(lambda design: design.with_values(**values), set(values))
+        self.change(lambda design: design.with_values(**values), values)
 
-    def reset(self, *names: str) -> None:
-        """Let inputs go back to their defaults."""
-        self._change(lambda design: design.without_values(*names), set(names))
+    def give_range(self, name: str, low: float, high: float) -> None:
+        """Say that an input is not known, but lies within a range, SI.
 
-    def take_record(self, kind: str, key: str, replaced: tuple[str, ...]) -> None:
-        """Take a catalogue record: its values with their origins, in place of `replaced`."""
-        values, origins = point_of(kind, key)
+        Its value stays if it lies there, else it goes to the middle on the scale of its slider.
+        """
 
         def change(design: Design) -> Design:
-            cleared = design.without_values(*replaced) if key else design
-            return replace(
-                cleared,
-                point={**cleared.point, **values},
-                origins={**cleared.origins, **origins},
-                **{kind: key},
-            )
+            value = float(design.evaluation.value(name))
+            if not low <= value <= high:
+                design = design.with_values(**{name: float(spread(name, Unknown(low, high), 0.5))})
+            elif name not in design.point:
+                design = design.with_values(**{name: value})
+            return replace(design, unknowns={**design.unknowns, name: Unknown(low, high)})
 
-        self._change(change, set(values))
+        self.change(change, (name,))
+
+    def reset(self, *names: str) -> None:
+        """Let inputs go back to what the design's records say of them, else to their defaults."""
+        self.change(lambda design: as_published(design, names), names)
+
+    def take_record(self, kind: str, key: str) -> None:
+        """Take a catalogue record in place of that part of the design; '' keeps the values."""
+        names = PARTS[kind] if key else ()
+        self.change(lambda design: with_record(design, kind, key), names)
 
     def take_place(self, key: str, names: tuple[str, ...]) -> None:
         """Take only some inputs of a published resonator, with their origins."""
-        values, origins = point_of("resonator", key)
-        values = {name: value for name, value in values.items() if name in names}
-
-        def change(design: Design) -> Design:
-            return replace(
-                design,
-                point={**design.point, **values},
-                origins={**design.origins, **{name: origins[name] for name in values}},
-            )
-
-        self._change(change, set(values))
+        self.change(lambda design: placed(design, key, names), names)
 
     def reading(self, name: str) -> float:
         """A quantity of the present design, also one that the answer does not carry."""
@@ -102,35 +114,44 @@ class State:
             return float(self.answer.outcome[name])
         return float(self.question.design.outcome([name])[name])
 
-    def _change(self, change: Callable[[Design], Design], names: set[str]) -> None:
+    def change(self, change: Callable[[Design], Design], names: Iterable[str]) -> None:
+        """Change the design; `names`: what that settles, and beside which a refusal is said."""
+        names = tuple(names)
+        cause = names[0] if len(names) == 1 else ""
         try:
             design = change(self.question.design)
+            if not set(PLACE).isdisjoint(names):
+                design = still_placed(design)
         except InputError as error:
-            self.refuse(next(iter(names)) if len(names) == 1 else error.name or "", str(error))
+            self.refuse(cause, str(error))
             return
-        self._settle(names)
-        if design != self.question.design:
-            self._start(replace(self.question, design=design))
+        same = design == self.question.design
+        self._go(self.question if same else replace(self.question, design=design), names, cause)
 
     def refuse(self, name: str, message: str) -> None:
         """Say beside an input (or, with '', on the page) why something was not done."""
         self.problems = {**self.problems, name: message}
         self._complain()
 
-    def _settle(self, names: set[str]) -> None:
+    def _go(self, question: Question, names: Iterable[str], cause: str = "") -> None:
+        """Settle the problems of some names and of the page, and answer a question if it is new."""
         kept = {name: text for name, text in self.problems.items() if name and name not in names}
-        if kept != self.problems:
-            self.problems = kept
+        settled = kept != self.problems
+        self.problems = kept
+        if question != self.question:
+            self._start(question, cause)
+        if settled:  # after the answer, so that a field goes to its new value at once
             self._complain()
 
     def _complain(self) -> None:
         for listener in self._complaints:
             listener()
 
-    def _start(self, question: Question) -> None:
+    def _start(self, question: Question, cause: str = "") -> None:
         """Answer a new question; what is left of an older one is dropped."""
         if self._handle is not None:
             self._handle.cancel()
+        self._before, self._cause = self.question, cause
         self.question = question
         self._work = self._answers.steps(question)
         self._go_on(first=True)
@@ -148,18 +169,26 @@ class State:
                 if first and not newest.whole and _in_a_loop():
                     self._tell(newest)
                 first = False
-                if newest.rest and self._later(REST):
+                if newest.rest and newest is not self.answer and self._later(REST):
                     break
-                if not newest.whole and time.perf_counter() > end and self._later():
+                if time.perf_counter() > end and self._later():
                     break
         except InputError as error:  # an axis of the map reaches beyond what another input allows
-            self.question = self._whole.question
-            if self.answer is not self._whole:
-                self._tell(self._whole)
-            self.refuse(error.name or "", str(error))
+            self._return(str(error))
             return
         if newest is not None and newest is not self.answer:
             self._tell(newest)
+
+    def _return(self, message: str) -> None:
+        """Go back to the question before the one that its map refused, and finish its answer."""
+        before, cause = self._before, self._cause
+        # Should the map refuse that one too, the last question with a whole map is left.
+        self.question = self._whole.question
+        if self.answer.whole and not self.answer.rest and self.answer.question == before:
+            self.question, self._work = before, None
+        else:
+            self._start(before)
+        self.refuse(cause, message)
 
     def _tell(self, answer: Answer) -> None:
         self.answer = answer

@@ -78,6 +78,18 @@ def no_light(*, rate_detected: Any, active_background: Any) -> Any:
 
 
 @caution(
+    "The numerical aperture is above 1.52: a bare emitter on a coverslip cannot be watched like that, "
+    "so the gain over it has no number.",
+    label="aperture beyond a coverslip",
+    about=("brightness_gain", "reference_collected_share"),
+    voids=("reference_collected_share",),
+)
+def beyond_coverslip(*, coverslip_sine: Any) -> Any:
+    """Aperture above the index of the coverslip; refused where `reference_side` is given."""
+    return coverslip_sine > 1
+
+
+@caution(
     "Q is below 5: a resonance this broad is not well described by one Lorentzian.",
     label="Q below 5",
     about=("quality_factor",),
@@ -215,14 +227,36 @@ def solid_reference(*, refractive_index: Any, bulk_rate_ratio: Any) -> Any:
 
 
 @caution(
-    "The fast line is narrower than the lifetime allows; it is taken as limited by the lifetime.",
+    "A fast line is narrower than the lifetime allows; it is taken as limited by the lifetime.",
     label="line below the lifetime limit",
     about=("pure_dephasing",),
 )
 def line_below_limit(*, fast_linewidth: Any, emission_wavelength: Any, lifetime: Any) -> Any:
     """A non-zero width below 1/τ."""
-    width = angular_width(fast_linewidth, emission_wavelength)
-    return (fast_linewidth > 0) & (width < (1 - 1e-9) / lifetime)
+    return _below_limit(angular_width(fast_linewidth, emission_wavelength), lifetime)
+
+
+@variant("line_below_limit", spectrum=Lines)
+def lines_below_limit(
+    *, spectrum: Any, line_widths: Any, emission_wavelength: Any, lifetime: Any
+) -> Any:
+    """One of several lines is that narrow."""
+    found: Any = False
+    for (_, offset, _), width in zip(spectrum.lines, line_widths, strict=True):
+        own = angular_width(width, emission_wavelength + offset)
+        found = found | _below_limit(own, lifetime)
+    return found
+
+
+@variant("line_below_limit", spectrum=Samples)
+def samples_below_limit(*, measured: Any, lifetime: Any) -> Any:
+    """A measured spectrum is that narrow as a whole."""
+    return _below_limit(measured(lambda line: line.fwhm), lifetime)
+
+
+def _below_limit(width: Any, lifetime: Any) -> Any:
+    """Whether a width [rad/s] that is not zero lies below 1/τ."""
+    return (width > 0) & (width < (1 - 1e-9) / lifetime)
 
 
 @caution(

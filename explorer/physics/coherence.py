@@ -60,7 +60,7 @@ def indistinguishability(
     *,
     coupling_rate: Any,
     decay_elsewhere: Any,
-    line_dephasing: Any,
+    pure_dephasing: Any,
     resonator_linewidth: Any,
     detuning: Any,
     slow_deviation: Any,
@@ -76,7 +76,7 @@ def indistinguishability(
     return wandering_average(
         g_squared=coupling_rate**2,
         gamma=decay_elsewhere,
-        dephasing=line_dephasing,
+        dephasing=pure_dephasing,
         kappa=resonator_linewidth,
         detuning=detuning,
         sigma=slow_deviation,
@@ -88,7 +88,7 @@ def still_indistinguishability(
     *,
     coupling_rate: Any,
     decay_elsewhere: Any,
-    line_dephasing: Any,
+    pure_dephasing: Any,
     resonator_linewidth: Any,
     detuning: Any,
 ) -> Any:
@@ -96,7 +96,7 @@ def still_indistinguishability(
     return off_resonance(
         g_squared=coupling_rate**2,
         gamma=decay_elsewhere,
-        dephasing=line_dephasing,
+        dephasing=pure_dephasing,
         kappa=resonator_linewidth,
         detuning=detuning,
     )

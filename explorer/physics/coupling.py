@@ -75,20 +75,21 @@ def pure_dephasing(*, fast_linewidth: Any, emission_wavelength: Any, lifetime: A
 
     .. math:: \gamma^* = \max(\Delta\omega_f - 1/\tau, 0)
 
-    fast_linewidth, emission_wavelength [m], lifetime [s]. Any broadcastable shapes.
+    fast_linewidth, emission_wavelength [m], lifetime [s]. Any broadcastable shapes. Of several
+    lines the strongest counts, of a measured spectrum its FWHM.
     """
     return np.maximum(angular_width(fast_linewidth, emission_wavelength) - 1 / lifetime, 0)
 
 
 @quantity("rad/s", label="Coherence decay", symbol="Γ", group="rates", log=True)
-def coherence_decay(*, decay_elsewhere: Any, line_dephasing: Any) -> Any:
+def coherence_decay(*, decay_elsewhere: Any, pure_dephasing: Any) -> Any:
     r"""Homogeneous width of the emitter's line in the device.
 
     .. math:: \Gamma = \gamma + \gamma^*
 
     Rates [1/s], [rad/s]. Of several lines the strongest counts, of a measured spectrum its FWHM.
     """
-    return decay_elsewhere + line_dephasing
+    return decay_elsewhere + pure_dephasing
 
 
 @quantity("rad/s", label="Resonator linewidth", symbol="κ", group="resonator", log=True)

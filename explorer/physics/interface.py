@@ -91,19 +91,31 @@ def power_in_all(index: float = COVERSLIP) -> float:
     group="angles",
     note="the same emitter bare on a coverslip, watched from the air or the glass side",
 )
-def reference_collected_share(*, numerical_aperture: Any) -> Any:
+def reference_collected_share(*, numerical_aperture: Any, coverslip_sine: Any) -> Any:
     """Share of the light of the bare emitter on a coverslip that the same aperture collects.
 
     A dipole in air at zero distance from glass of index 1.52, mean powers over random orientation,
-    watched from the air side or (`reference_side`) through the glass. numerical_aperture [1].
+    watched from the air side or (`reference_side`) through the glass; unless a side is given, from
+    the air up to an aperture of 1 and through the glass beyond. numerical_aperture [1].
     """
-    return power_into_air(np.arcsin(numerical_aperture)) / power_in_all()
+    aperture = np.asarray(numerical_aperture, dtype=float)
+    share = power_into_air(np.arcsin(np.minimum(aperture, 1.0))) / power_in_all()
+    beyond = aperture > 1  # nowhere, where the side is given
+    if beyond.any():
+        share = np.where(beyond, reference_through_glass(coverslip_sine=coverslip_sine), share)
+    return share
 
 
 @variant("reference_collected_share", reference_side="glass")
-def reference_through_glass(*, numerical_aperture: Any) -> Any:
-    """The same, watched through the glass."""
-    return power_into_glass(np.arcsin(numerical_aperture / COVERSLIP)) / power_in_all()
+def reference_through_glass(*, coverslip_sine: Any) -> Any:
+    """The same, watched through the glass; beyond its index a caution says that there is none."""
+    return power_into_glass(np.arcsin(np.minimum(coverslip_sine, 1.0))) / power_in_all()
+
+
+@part
+def coverslip_sine(*, numerical_aperture: Any) -> Any:
+    """Sine of the largest angle in the coverslip that an optic takes; above 1 there is none [1]."""
+    return numerical_aperture / COVERSLIP
 
 
 @part

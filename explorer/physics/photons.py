@@ -27,18 +27,12 @@ STEPS = (
 STREAMS = ("exciton, mode", "exciton, other", "biexciton, mode", "biexciton, other")
 
 
-def both_decays(x: Any, y: Any) -> Any:
-    """Probability that B decays to X and X to the ground, within a period: B0.
-
-    x, y: decay rates of X and B times the period [1], broadcasting.
-    """
-    return chain_decay(x, y)[4]
-
-
 def chain_decay(x: Any, y: Any) -> tuple[Any, Any, Any, Any, Any]:
     """What a period does to X and B: e^−x, 1−e^−x, 1−e^−y, BX = y(e^−x − e^−y)/(y−x), and B0.
 
-    B0 = [y(1−e^−x) − x(1−e^−y)]/(y−x) is the complement 1 − e^−y − BX where it is not small.
+    x, y: decay rates of X and B times the period [1], broadcasting. B0, the probability that B
+    decays to X and X to the ground, is [y(1−e^−x) − x(1−e^−y)]/(y−x): the complement 1 − e^−y − BX
+    where it is not small.
     """
     x, y = np.broadcast_arrays(np.asarray(x, dtype=float), np.asarray(y, dtype=float))
     stays, gone, gone_b = np.exp(-x), -np.expm1(-x), -np.expm1(-y)

@@ -82,7 +82,7 @@ def sampled_window(
         return np.asarray(exact.sum(axis=1))
 
     rows = max(1, PIECES_IN_MEMORY // omega.size)
-    return _each_distinct(total, (centre, kappa, lower, upper), rows)
+    return each_distinct(total, (centre, kappa, lower, upper), rows)
 
 
 def window_share(
@@ -110,7 +110,7 @@ def window_share(
             inside = inside + (right - left) * (below + above) / 2
         return inside
 
-    return _each_distinct(share, (lower, upper), 2**20)
+    return each_distinct(share, (lower, upper), 2**20)
 
 
 class _Blocks(NamedTuple):
@@ -159,11 +159,7 @@ class SampledLine:
         self, centre: ArrayLike, kappa: ArrayLike, lower: ArrayLike, upper: ArrayLike
     ) -> Floats:
         """As `sampled_window`, within 1e-10 relative."""
-        return _each_distinct(self._descend, (centre, kappa, lower, upper), TARGETS)
-
-    def share(self, lower: ArrayLike, upper: ArrayLike) -> Floats:
-        """As `window_share`."""
-        return window_share(omega=self.omega, density=self.density, lower=lower, upper=upper)
+        return each_distinct(self._descend, (centre, kappa, lower, upper), TARGETS)
 
     @cached_property
     def fwhm(self) -> float:
@@ -175,11 +171,6 @@ class SampledLine:
         left = np.interp(half, self.density[rise], self.omega[rise])
         right = np.interp(half, self.density[fall], self.omega[fall])
         return float(right - left)
-
-    @cached_property
-    def cut_tails(self) -> float:
-        """The larger end value over the maximum: above zero, the spectrum was cut. [1]"""
-        return float(max(self.density[0], self.density[-1]) / self.density.max())
 
     @cached_property
     def step(self) -> float:
@@ -234,7 +225,7 @@ class SampledLine:
 
     def _exactly(self, target: NDArray[np.intp], leaf: NDArray[np.intp], rows: Floats) -> Floats:
         total = np.zeros(len(rows))
-        for part in _parts(target.size, PIECES_IN_MEMORY // LEAF):
+        for part in parts(target.size, PIECES_IN_MEMORY // LEAF):
             pieces = leaf[part, np.newaxis] * LEAF + np.arange(LEAF)
             centre, kappa, lower, upper = rows[target[part]].T[:, :, np.newaxis]
             start, stop, below, above = (values[pieces] for values in self._pieces)
@@ -317,11 +308,12 @@ def _near_overlaps(
     return np.asarray(value * angle + slope / 2 * np.copysign(np.log1p(growth), low + high))
 
 
-def _parts(size: int, length: int) -> Iterator[slice]:
+def parts(size: int, length: int) -> Iterator[slice]:
+    """Slices of at most `length` that together are 0..size."""
     return (slice(first, first + length) for first in range(0, size, length))
 
 
-def _each_distinct(
+def each_distinct(
     function: Callable[[Floats], Floats], columns: tuple[ArrayLike, ...], length: int
 ) -> Floats:
     """function(rows) for the broadcast columns, once for each distinct row, in blocks of rows."""
@@ -332,7 +324,7 @@ def _each_distinct(
     new[1:] = np.any(rows[order[1:]] != rows[order[:-1]], axis=1)
     distinct = rows[order[new]]
     values = np.empty(len(distinct))
-    for part in _parts(len(distinct), length):
+    for part in parts(len(distinct), length):
         values[part] = function(distinct[part])
     result = np.empty(len(rows))
     result[order] = values[np.cumsum(new) - 1]

@@ -12,6 +12,7 @@ from ..registry import part, quantity, variant
 from ..whole import Lines, Samples
 from .coupling import CIRCLE, angular_width
 from .sampled import SampledLine, frequency_density, window_share
+from .sampled_wandering import wandering_share
 from .window import line_window, outgoing_window, wandering_window
 
 #: Standard deviation of a Gaussian over its FWHM.
@@ -83,19 +84,13 @@ def line_table(*, spectrum: Any, line_widths: Any, emission_wavelength: Any, lif
     return tuple(rows)
 
 
-@part
-def line_dephasing(*, pure_dephasing: Any) -> Any:
-    """Pure dephasing of the line [rad/s]."""
-    return pure_dephasing
-
-
-@variant("line_dephasing", spectrum=Lines)
+@variant("pure_dephasing", spectrum=Lines)
 def strongest_line_dephasing(*, spectrum: Any, line_table: Any) -> Any:
     """Pure dephasing of the strongest of several lines [rad/s]."""
     return line_table[spectrum.strongest][2]
 
 
-@variant("line_dephasing", spectrum=Samples)
+@variant("pure_dephasing", spectrum=Samples)
 def measured_dephasing(*, measured: Any, lifetime: Any) -> Any:
     """Pure dephasing that would give the FWHM of a measured spectrum [rad/s]."""
     return np.maximum(measured(lambda line: line.fwhm) - 1 / lifetime, 0)
@@ -243,8 +238,8 @@ def still_light_window(
 def other_filter_share(*, own_light_window: Any, filter_width: Any) -> Any:
     r"""Share of the light past the mode that passes the filter: the emitter's own spectrum.
 
-    A Lorentzian of width :math:`\gamma^*+1/\tau` broadened by the slow wandering, or the lines or
-    the measured spectrum as they are. [1]
+    A Lorentzian of width :math:`\gamma^*+1/\tau`, the lines or the measured spectrum, broadened by
+    the slow wandering. [1]
     """
     return np.where(np.isinf(filter_width), 1.0, own_light_window)
 
@@ -286,13 +281,28 @@ def own_window_of_lines(
     return total
 
 
-@variant("own_light_window", spectrum=Samples)
-def own_window_of_samples(*, filter_edges: Any, detuning: Any, measured: Any) -> Any:
-    """Share of a measured spectrum inside the filter (its slow wandering left out)."""
+@variant("own_light_window", spectrum=Samples, slow_linewidth=0)
+def own_window_of_still_samples(*, filter_edges: Any, detuning: Any, measured: Any) -> Any:
+    """Share of a measured spectrum inside the filter."""
     return measured(
         lambda line, lower, upper: window_share(
             omega=line.omega, density=line.density, lower=lower, upper=upper
         ),
         filter_edges[0] - detuning,
         filter_edges[1] - detuning,
+    )
+
+
+@variant("own_light_window", spectrum=Samples)
+def own_window_of_samples(
+    *, filter_edges: Any, detuning: Any, measured: Any, slow_deviation: Any
+) -> Any:
+    """The same of a measured spectrum that wanders as a whole."""
+    return measured(
+        lambda line, lower, upper, sigma: wandering_share(
+            omega=line.omega, density=line.density, lower=lower, upper=upper, sigma=sigma
+        ),
+        filter_edges[0] - detuning,
+        filter_edges[1] - detuning,
+        slow_deviation,
     )

@@ -171,7 +171,7 @@ def average_over_shifts(
         )
     )
     ends = clustering.position(np.asarray(REACH)) - clustering.position(np.asarray(-REACH))
-    count = int(np.ceil(np.max(ends / clustering.spacing()))) + 1
+    count = int(np.ceil(np.max(ends / clustering.spacing(), initial=1.0))) + 1
     return _mean(outcome, sigma, clustering, count)
 
 
@@ -198,7 +198,7 @@ def average_over_samples(
     clustering = _Clustering(((np.asarray(centre / spread), np.asarray(feature / spread)),))
     ends = clustering.position(np.asarray(REACH)) - clustering.position(np.asarray(-REACH))
     spacing = np.asarray(step) / spread * clustering.slope(np.asarray(centre / spread))[0] / 3
-    wanted = np.max(ends / np.maximum(spacing, ends / 768))
+    wanted = np.max(ends / np.maximum(spacing, ends / 768), initial=1.0)
     return _mean(outcome, sigma, clustering, max(64, int(np.ceil(wanted))))
 
 
@@ -206,7 +206,7 @@ def _mean(outcome: Outcome, sigma: Floats, clustering: _Clustering, count: int) 
     """Weighted mean over the nodes, in blocks that bound the memory."""
     shape = np.broadcast_shapes(sigma.shape, clustering.position(np.asarray(0.0)).shape)
     at_rest, several = _as_tuple(outcome(np.zeros(shape)))
-    if not sigma.any():
+    if not sigma.any() or not all(value.size for value in at_rest):
         return at_rest if several else at_rest[0]
     cells = max(value.size for value in at_rest)
     padded = (1,) * (max(value.ndim for value in at_rest) - len(shape)) + shape

@@ -41,7 +41,7 @@ def line_window(
     still = (sigma == 0) & (width > 0)
     share[still] = _lorentzian_share(low[still], high[still], span[still], width[still] / 2)
     sharp = (sigma > 0) & (width == 0)
-    share[sharp] = _gaussian_share(*(x[sharp] / sigma[sharp] for x in (low, high, span)))
+    share[sharp] = gaussian_share(*(x[sharp] / sigma[sharp] for x in (low, high, span)))
     both = (sigma > 0) & (width > 0)
     if both.any():
         zero = np.zeros(np.count_nonzero(both))
@@ -97,8 +97,8 @@ def _lorentzian_share(low: Floats, high: Floats, span: Floats, half_width: Float
     return np.asarray(np.arctan2(half_width * span, half_width**2 + high * low) / np.pi)
 
 
-def _gaussian_share(low: Floats, high: Floats, width: Floats) -> Floats:
-    """Normal share between two standard scores.
+def gaussian_share(low: Floats, high: Floats, width: Floats) -> Floats:
+    """Normal share between two standard scores, whose difference is `width`; all of one shape.
 
     A difference of erfc on one side, or one panel where that would cancel.
     """

@@ -17,9 +17,10 @@ import numpy as np
 import pytest
 
 from explorer import QUANTITIES, Axis, Design, mesh
+from explorer.answers import Answers
 from explorer.evaluate import Evaluation
 from explorer.inputs import INPUTS
-from explorer.question import Answers, Question
+from explorer.question import Question
 from explorer.scenario import first_question
 
 pytestmark = pytest.mark.bench

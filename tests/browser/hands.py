@@ -80,10 +80,11 @@ class Hands:
 
     # ---------------------------------------------------------------- waiting
 
-    def rest(self, seconds: float = 20, quiet: float = 0.6) -> dict[str, Any]:
+    def rest(self, seconds: float = 20, quiet: float = 0.9) -> dict[str, Any]:
         """Wait until nothing has changed for a while, and return what is seen.
 
-        Longer than the page waits before a map drawn in fewer cells is drawn whole.
+        Longer than the page waits before a map drawn in fewer cells is drawn whole, and then before
+        it says what is not known.
         """
         last, since = self.seen(), time.monotonic()
         end = since + seconds

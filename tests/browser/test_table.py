@@ -511,26 +511,6 @@ def test_it_is_taken_away_whole_and_comes_back_as_it_was(reader) -> None:
     assert reader.column(3) == before
 
 
-# -------------------------------------------------------------------- times
-
-
-@pytest.mark.bench
-def test_nothing_of_a_long_table_makes_a_pause(reader) -> None:
-    """4000 rows of 14 columns. The quickest of seven: the machine may be busy with something else."""
-    reader.run("alone.tables = arguments[0].map(alone.bytes)", [sent(ROWS), sent(ROWS[::-1])])
-    shows = [reader.timed("alone.set('packed', alone.tables.reverse()[0]);") for _ in range(7)]
-    sorts = [reader.timed("all('.t-title')[3].click();") for _ in range(7)]
-    jumps = []
-    for top in (90000, 20000, 70000, 0, 50000, 1000, 103000):
-        jumps.append(reader.timed("find('.t-grid').scrollTop = arguments[0];", top))
-        assert len(reader.rates()) > 20, "the rows are there once it was painted"
-    kinds = {"sort": sorts, "scroll": jumps, "show": shows}
-    print(", ".join(f"{name} {min(times):.0f} ms" for name, times in kinds.items()))
-    assert min(sorts) < 100
-    assert min(jumps) < 100
-    assert min(shows) < 150
-
-
 # -------------------------------------------------------------------- with its kernel
 
 

@@ -48,8 +48,8 @@ class AnglesPanel(VBox):
         if not math.isnan(share):
             aperture = float(answer.values["numerical_aperture"])
             self.text.value = (
-                f"NA {text(aperture, '1')} takes {text(share, '%')} of the upward light · half-angle "
-                f"{text(answer.outcome['half_angle'], 'rad')} · brightness gain "
+                f"NA {text(aperture, '1', 2)}: {text(share, '%')} · half-angle "
+                f"{text(answer.outcome['half_angle'], 'rad')} · gain "
                 f"×{text(answer.outcome['brightness_gain'], '1')}"
             )
 

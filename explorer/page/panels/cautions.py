@@ -6,15 +6,14 @@ from html import escape
 
 from ipywidgets import HTML, Button, HBox, VBox
 
+from ...advice import record_cautions
 from ...question import Answer
 from ...registry import REGISTRY
-from ..records import record_cautions
 from ..state import State
 
 STANDING = (
-    "Planning estimates. Excitation lasers in this work are often class 3B or 4 (IEC 60825-1), some "
-    "emitters contain toxic metals, some need cryogens: follow the laser-safety officer, local codes "
-    "and the material's safety data sheet."
+    "Planning estimates. Lasers here are often class 3B or 4 (IEC 60825-1), some emitters toxic, some "
+    "cold: follow the laser-safety officer, local codes and safety data sheets."
 )
 
 
@@ -42,7 +41,7 @@ class CautionsPanel(VBox):
 
     def _draw(self, answer: Answer) -> None:
         sentences = [REGISTRY.cautions[name].sentence for name in answer.cautions]
-        sentences += record_cautions(answer.question.design)
+        sentences += [text for _, text in record_cautions(answer.question.design)]
         number = len(sentences)
         words = {0: "no caution", 1: "1 caution"}.get(number, f"{number} cautions")
         self.count.description = f"{words} for this point"

@@ -10,25 +10,31 @@ from ipywidgets import HTML, Button, Dropdown, HBox, Label, VBox
 from ...catalogue import emitters
 from ...inputs import EMITTER, INPUTS
 from ...question import Answer
+from ..records import edited
 from ..state import State
 
 
 class EmitterPanel(VBox):
-    """Menu of emitters; a press shows where each number comes from."""
+    """Menu of emitters; presses show where each number comes from, and undo what was edited."""
 
     def __init__(self, state: State) -> None:
         self._state = state
         self._syncing = False
+        self._edited = ""
         title = Label("Emitter")
         title.add_class("x-title")
         self.sources = Button(
             description="sources", tooltip="Where the emitter's numbers come from"
         )
         self.sources.add_class("x-link")
-        head = HBox([title, self.sources])
+        self.published = Button(
+            description="as published", tooltip="All values of this emitter as its record has them"
+        )
+        self.published.add_class("x-link")
+        self.published.layout.display = "none"
+        head = HBox([title, self.published, self.sources])
         head.add_class("x-head")
-        options = [("own values", "")] + [(entry.name, key) for key, entry in emitters().items()]
-        self.menu = Dropdown(options=options, tooltip="Published emitters")
+        self.menu = Dropdown(options=_options(""), tooltip="Published emitters")
         self.menu.add_class("x-menu")
         self.text = HTML()
         self.text.add_class("x-sources")
@@ -36,6 +42,7 @@ class EmitterPanel(VBox):
         super().__init__([head, self.menu, self.text])
         self.add_class("panel-emitter")
         self.sources.on_click(self._toggle)
+        self.published.on_click(lambda _: state.take_record("emitter", self.menu.value))
         state.on_answer(self._draw)
         state.on_problem(lambda: self._draw(state.answer))  # what was refused is not shown
         self.menu.observe(self._chosen, "value")
@@ -48,13 +55,19 @@ class EmitterPanel(VBox):
     def _chosen(self, change: dict[str, Any]) -> None:
         if self._syncing:
             return
-        self._state.take_record("emitter", change["new"], tuple(row.name for row in EMITTER))
+        self._state.take_record("emitter", change["new"])
 
     def _draw(self, answer: Answer) -> None:
+        design = answer.question.design
         self._syncing = True
-        self.menu.value = (
-            answer.question.design.emitter if answer.question.design.emitter in emitters() else ""
-        )
+        marked = design.emitter if edited(design) else ""
+        if marked != self._edited:
+            self._edited = marked
+            self.menu.options = _options(marked)
+            self.published.layout.display = "" if marked else "none"
+        key = design.emitter if design.emitter in emitters() else ""
+        if self.menu.value != key:
+            self.menu.value = key
         self._syncing = False
         self._write(answer)
 
@@ -73,3 +86,12 @@ class EmitterPanel(VBox):
             for row in EMITTER
         )
         self.text.value = f"{body}<ul>{rows}</ul>"
+
+
+def _options(marked: str) -> list[tuple[str, str]]:
+    """Lines of the menu; the record of one key is no longer as published."""
+    named = [
+        (f"{entry.name}, edited" if key == marked else entry.name, key)
+        for key, entry in emitters().items()
+    ]
+    return [("own values", ""), *named]

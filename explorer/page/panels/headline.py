@@ -6,12 +6,13 @@ from html import escape
 
 from ipywidgets import HTML, VBox
 
+from ...inputs import INPUTS
 from ...question import Answer
 from ..state import State
 
 
 class HeadlinePanel(VBox):
-    """Headline, details, and a complaint that belongs to no input."""
+    """Headline, details, and the complaints that are shown nowhere else."""
 
     def __init__(self, state: State) -> None:
         self._state = state
@@ -31,9 +32,17 @@ class HeadlinePanel(VBox):
         word = {True: "met", False: "missed", None: "free"}[said.met]
         self.text.value = (
             f'<div class="x-said x-{word}" aria-live="polite" role="status">'
-            f"<h1>{escape(said.headline)}</h1><p>{escape(' · '.join(parts))}</p></div>"
+            f"<h1>{escape(said.headline)}</h1><p>{escape(' · '.join(parts))}"
+            f"{'<br>' if parts else ''}{escape(said.known)}</p></div>"
         )
 
     def _complain(self) -> None:
-        text = self._state.problems.get("", "")
+        state = self._state
+        said = [_of(name, text) for name, text in state.problems.items() if name not in state.seats]
+        text = " · ".join(said)
         self.wrong.value = f'<p class="x-wrong" role="alert">{escape(text)}</p>' if text else ""
+
+
+def _of(name: str, text: str) -> str:
+    """A complaint with the label of its input in front."""
+    return f"{INPUTS[name].label}: {text.removeprefix(f'{name} = ')}" if name in INPUTS else text

@@ -1,0 +1,306 @@
+"""Answers: each part of an answer is derived from the inputs that it needs, and kept while they stay.
+
+`Answers.steps(question)` gives answers that grow: the design first, then the map, then what is not
+known. A part whose inputs did not change is the same object as before, so whoever draws it can tell by
+identity.
+"""
+
+from __future__ import annotations
+
+import itertools
+import time
+from collections.abc import Iterator, Mapping
+from dataclasses import replace
+from typing import Any
+
+import numpy as np
+
+from .budget import budget_rows
+from .curves import Cut, angles, colours, cut
+from .design import Design
+from .domain import InputError
+from .evaluate import Evaluation
+from .inputs import INPUTS
+from .maps import FRONTIERS, Axis, Map, make_map, stacked
+from .question import READ_OUT, Answer, Question, fitting_axis
+from .refusals import beyond
+from .registry import REGISTRY, dependencies
+from .sampling import Influence, influences, open_names, range_steps
+from .sentence import next_step, sentence
+
+#: Longest piece of work between two chances to hear of a newer question [s].
+SLICE = 0.04
+
+#: Longest that a map may take while a hand moves [s]; a slower one is drawn in fewer cells first.
+DRAFT = 0.003
+
+#: Longest band of rows of the whole map [s]: a key pressed meanwhile waits no longer.
+BAND = 0.01
+
+#: Cells along each axis of a draft.
+COARSER = (160, 128, 96, 64)
+
+
+def _key(point: Mapping[str, Any], names: frozenset[str]) -> tuple[Any, ...]:
+    """The entries of a point that a set of inputs and formulas can depend on."""
+    return tuple((name, value) for name, value in point.items() if name in names)
+
+
+def _needs(*names: str) -> frozenset[str]:
+    return frozenset().union(*(dependencies(name) for name in names))
+
+
+class Answers:
+    """Works out answers, and remembers the parts of the last one.
+
+    Not shared between threads; one a page.
+    """
+
+    def __init__(self) -> None:
+        self._parts: dict[str, tuple[Any, Any]] = {}
+        self._pace = 0.0  # seconds a cell of the last map
+
+    def _part(self, name: str, key: Any, make: Any) -> Any:
+        if name not in self._parts or self._parts[name][0] != key:
+            self._parts[name] = (key, make())
+        return self._parts[name][1]
+
+    def answer(self, question: Question) -> Answer:
+        """The whole answer. Raises InputError."""
+        *_, last = self.steps(question)
+        return last
+
+    def steps(self, question: Question) -> Iterator[Answer]:
+        """The answer as it grows, in pieces of at most about SLICE seconds each.
+
+        First the design, then the map, and after a moment of rest what is not known of it.
+        """
+        unknown = bool(open_names(question.design)) or bool(question.ranked)
+        for answer in self._grown(question):
+            whole = replace(answer, rest=True) if answer.whole and unknown else answer
+            yield whole
+        if unknown:
+            yield from self._known(whole)
+
+    def _known(self, whole: Answer) -> Iterator[Answer]:
+        """The ranges that the unknowns of the design leave, and their ranking if it is asked for."""
+        design, ranked = whole.question.design, whole.question.ranked
+        key = (design.point, design.unknowns, tuple(whole.outcome))
+        if self._parts.get("ranges", (None,))[0] != key:
+            found = {}
+            try:
+                for name, around in range_steps(design, whole.outcome):
+                    found[name] = around
+                    yield whole
+            except InputError:  # values within the ranges that cannot go together
+                found = {}
+            self._parts["ranges"] = (key, found)
+        ranges = self._parts["ranges"][1]
+        ranking = None
+        if ranked:
+            yield whole
+            asked = (design.point, design.unknowns, ranked)
+            ranking = self._part("ranking", asked, lambda: _ranking(design, ranked))
+        free = whole.values["destination"] == "free_space"
+        said = sentence(design, whole.outcome, whole.rows, free, ranges)
+        yield replace(whole, ranges=ranges, ranking=ranking, sentence=said, rest=False)
+
+    def _grown(self, question: Question) -> Iterator[Answer]:
+        """The answer without ranges, as it grows."""
+        first = self._without_map(question)
+        key = self._map_key(question)
+        if "map" in self._parts and self._parts["map"][0] == key:
+            yield self._finished(first, self._parts["map"][1])
+            return
+        waiting = first
+        if self._pace * question.x.count * question.y.count > DRAFT:
+            _check_ends(question)  # before a part of the map is shown
+            for waiting in self._drafted(question, key, first):
+                yield waiting
+            waiting = replace(waiting, rest=False)
+        for drawn in self._bands(question):
+            if drawn is None:
+                yield waiting
+            else:
+                self._parts["map"] = (key, drawn)
+                yield self._finished(first, drawn)
+
+    def _drafted(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
+        """A map of fewer cells, as many as DRAFT allows; a moment to rest before the whole one."""
+        if self._parts.get("draft", (None, None))[0] != key:
+            counts = [count for count in COARSER if self._pace * count**2 <= DRAFT]
+            count = counts[0] if counts else COARSER[-1]
+            if self._pace * count**2 > SLICE:  # slow even so: the readouts do not wait for it
+                last = self._parts["map"][1] if "map" in self._parts else None
+                yield replace(first, map=last if self._same_place(last, question) else None)
+            x, y = (
+                replace(axis, count=min(count, axis.count)) for axis in (question.x, question.y)
+            )
+            self._parts["draft"] = (key, self._timed_map(question, x, y))
+        drawn = self._parts["draft"][1]
+        yield replace(self._finished(first, drawn), whole=False, rest=True)
+
+    def _finished(self, first: Answer, drawn: Map) -> Answer:
+        said = "" if first.sentence.met else self._hint(first, drawn)
+        return replace(first, map=drawn, whole=True, hint=said)
+
+    def _hint(self, first: Answer, drawn: Map) -> str:
+        place = (float(first.values[drawn.x.name]), float(first.values[drawn.y.name]))
+        requirements = first.question.design.requirements
+        free = first.values["destination"] == "free_space"
+        said: str = self._part(  # the key holds the map, or another one could take its identity
+            "hint",
+            (drawn, place, requirements, free),
+            lambda: next_step(drawn, place, requirements, free),
+        )
+        return said
+
+    @staticmethod
+    def _same_place(last: Map | None, question: Question) -> bool:
+        """Whether an older map may stay on screen: same axes, same quantity."""
+        return (
+            last is not None
+            and (last.x, last.y) == (question.x, question.y)
+            and question.shown in last.values
+        )
+
+    def _bands(self, question: Question) -> Iterator[Map | None]:
+        """The whole map in bands of rows of at most about BAND seconds; None between two."""
+        x, y = question.x, question.y
+        rows = int(np.clip(BAND / max(self._pace * x.count, 1e-12), 2, y.count))
+        edges = [*range(0, y.count - 1, rows), y.count]
+        bands: list[Map] = []
+        for start, stop in itertools.pairwise(edges):
+            if bands:
+                yield None
+            low, high = (float(y.at(edge / y.count)) for edge in (start, stop))
+            part = replace(y, low=low, high=high, count=stop - start)
+            bands.append(self._timed_map(question, x, part if stop - start < y.count else y))
+        yield stacked(bands, y)
+
+    def _timed_map(self, question: Question, x: Axis, y: Axis) -> Map:
+        """A map, and how long a cell takes, not counting what others on the machine take."""
+        start = time.thread_time()
+        design, marks = question.design, self._marks(question)
+        wanted = (*self._wanted(question), *marks)
+        try:
+            drawn = make_map(design.point, x, y, wanted, design.requirements, marks)
+        except InputError as error:
+            raise _refusal(question, error) from error
+        self._pace = (time.thread_time() - start) / (x.count * y.count)
+        return drawn
+
+    def _without_map(self, question: Question) -> Answer:
+        design = question.design
+        needed = {entry.quantity for entry in design.requirements}
+        work = self._part("work", design.point, lambda: design.evaluation)
+        values = self._part(
+            "values", design.point, lambda: {name: work.value(name) for name in INPUTS}
+        )
+        names = (*READ_OUT, *needed, question.shown)
+        outcome = self._part(
+            "outcome", (design.point, names), lambda: {name: _scalar(work, name) for name in names}
+        )
+        marks = self._part(
+            "cautions",
+            design.point,
+            lambda: tuple(name for name in REGISTRY.cautions if bool(work.value(name))),
+        )
+        rows = self._part("rows", design.point, lambda: tuple(budget_rows(work)))
+        free = work.value("destination") == "free_space"
+        said = self._part(
+            "sentence",
+            (design.point, design.requirements, design.origins),
+            lambda: sentence(design, outcome, rows, free),
+        )
+        wide = self._part(
+            "angles", _key(design.point, _needs("collected_share")), lambda: angles(work)
+        )
+        spectral = _needs("filter_share", "other_filter_share", "cavity_share")
+        seen = self._part("colours", _key(design.point, spectral), lambda: colours(work))
+        beam = self._part(
+            "half_angles",
+            (question.x, _key(design.point, _needs("half_angle") - {question.x.name})),
+            lambda: _along(design, question.x, "half_angle"),
+        )
+        width = float(work.value("emission_width"))
+        line, fault = self._part("cut", (question.cut, design.point), lambda: _cut(work, question))
+        seen_first = (question, values, outcome, marks, rows, said, wide, seen, width, beam)
+        return Answer(*seen_first, map=None, cut=line, whole=False, cut_fault=fault)
+
+    def _wanted(self, question: Question) -> tuple[str, ...]:
+        lines = [name for name, _, _ in FRONTIERS] if "frontiers" in question.layers else []
+        return (question.shown, *lines)
+
+    def _marks(self, question: Question) -> tuple[str, ...]:
+        if "hatching" not in question.layers:
+            return ()
+        about = dependencies(question.shown)
+        return tuple(
+            mark.name
+            for mark in REGISTRY.cautions.values()
+            if mark.voids or about & set(mark.about) or not mark.about
+        )
+
+    def _map_key(self, question: Question) -> tuple[Any, ...]:
+        design = question.design
+        wanted = self._wanted(question)
+        marks = self._marks(question)
+        names = _needs(*wanted, *marks, *(entry.quantity for entry in design.requirements))
+        names -= {question.x.name, question.y.name}
+        return (
+            wanted,
+            marks,
+            question.x,
+            question.y,
+            design.requirements,
+            frozenset(_key(design.point, names)),
+        )
+
+
+def _ranking(design: Design, quantity: str) -> tuple[Influence, ...]:
+    try:
+        return influences(design, quantity)
+    except InputError:  # values within the ranges that cannot go together
+        return ()
+
+
+def _scalar(work: Evaluation, name: str) -> Any:
+    return np.asarray(work.result(name)).reshape(()).item()
+
+
+def _check_ends(question: Question) -> None:
+    """InputError where the map reaches beyond what an input allows."""
+    x, y = (axis.values[[0, -1]] for axis in (question.x, question.y))
+    try:
+        ends = {question.x.name: x[None, :], question.y.name: y[:, None]}
+        Evaluation({**question.design.point, **ends})
+    except InputError as error:
+        raise _refusal(question, error) from error
+
+
+def _refusal(question: Question, error: InputError) -> InputError:
+    """The same refusal in terms of the map's axes."""
+    axes = {"the horizontal axis": question.x, "the vertical axis": question.y}
+    return InputError(beyond(axes, question.design.point, error), error.name)
+
+
+def _along(design: Design, axis: Axis, quantity: str) -> Any:
+    """A quantity along an axis of mode volume; None along another, or where it does not vary."""
+    if axis.name != "mode_volume":
+        return None
+    value = Evaluation({**design.point, axis.name: axis.values}).result(quantity)
+    return np.asarray(value) if np.shape(value) == axis.values.shape else None
+
+
+def _cut(work: Evaluation, question: Question) -> tuple[Cut | None, str]:
+    """A curve through the point along one input's slider range, or why there is none."""
+    if question.cut is None:
+        return None, ""
+    quantity, name = question.cut
+    axes = {}
+    try:
+        axes["the cut"] = fitting_axis(question.design, name, 121)
+        return cut(work, quantity, name, axes["the cut"].values), ""
+    except InputError as error:
+        return None, beyond(axes, question.design.point, error) if axes else str(error)
