@@ -172,6 +172,10 @@ def _total_indices(design: Design, quantity: str, names: list[str], base: int) -
             value = np.where(empty, 0.0 if empty.all() else np.nanmean(value), value)
         return (np.log(np.maximum(value, 1e-300)) if log else np.array(value))[None]
 
+    if np.ptp(outcome(_fractions(base, len(names)).T)) == 0:  # the library has no index for that
+        return np.zeros(len(names))
+    if len(names) == 1:  # nor for a single unknown, on which everything hangs
+        return np.ones(1)
     dists: Any = [stats.uniform()] * len(names)
     with np.errstate(divide="ignore", invalid="ignore"):
         found = stats.sobol_indices(func=outcome, n=base, dists=dists, rng=SEED)
