@@ -76,9 +76,7 @@ def ranked(rows: Sequence[Influence], unit: str) -> str:
 
 
 def _line(row: Influence, unit: str) -> str:
-    ends = " – ".join(
-        "no number" if math.isnan(end) else text(end, unit, 2) for end in (row.low, row.high)
-    )
+    ends = " – ".join(_two(row.low, row.high, unit))
     share = 100 * row.share
     return (
         f"<tr><th scope=row>{escape(INPUTS[row.name].label)}</th>"
@@ -86,3 +84,12 @@ def _line(row: Influence, unit: str) -> str:
         f'<span class="{"x-in" if share > 60 else "x-out"}" style="--at:{share:.1f}%">{escape(ends)}</span></td>'
         f'<td class="x-factor">{share:.0f} %</td></tr>'
     )
+
+
+def _two(low: float, high: float, unit: str) -> list[str]:
+    """Both ends to two digits, to three where two do not tell them apart."""
+    for digits in (2, 3):
+        shown = ["no number" if math.isnan(e) else text(e, unit, digits) for e in (low, high)]
+        if shown[0] != shown[1]:
+            break
+    return shown
