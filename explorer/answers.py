@@ -239,7 +239,7 @@ class Answers:
         return tuple(
             mark.name
             for mark in REGISTRY.cautions.values()
-            if mark.voids or about & set(mark.about) or not mark.about
+            if about & {*mark.voids, *mark.about} or not (mark.voids or mark.about)
         )
 
     def _map_key(self, question: Question) -> tuple[Any, ...]:

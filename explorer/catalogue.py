@@ -8,8 +8,10 @@ when first asked, once. To add a record, add a file: menus, points, marks and te
 from __future__ import annotations
 
 import math
+import re
 import tomllib
 from collections.abc import Mapping
+from dataclasses import replace
 from functools import cache
 from importlib import resources
 from importlib.resources.abc import Traversable
@@ -110,6 +112,8 @@ def parse_record(kind: str, file: Traversable) -> Record:
 
 def _record(kind: str, key: str, table: Mapping[str, Any]) -> Record:
     values = _values(table["values"])
+    if kind == "emitters" and "temperature" not in values:
+        values |= _temperature(table.get("temperature", ""), values)
     boost = table.get("enhancement")
     if boost and "meaning" not in boost:
         raise ValueError("enhancement has no meaning: of what is it the ratio?")
@@ -131,6 +135,24 @@ def _record(kind: str, key: str, table: Mapping[str, Any]) -> Record:
         law=_law(table["broadening"], values) if "broadening" in table else None,
         device=MappingProxyType(_values(table.get("device", {}), values)),
     )
+
+
+#: Room temperature as records mean it [K].
+ROOM: Final = 295
+
+
+def _temperature(words: str, values: Mapping[str, Value]) -> dict[str, Value]:
+    """The temperature [K] that an emitter was measured at, from the words of its record."""
+    if not words:
+        return {}
+    found = re.fullmatch(r"(\d+(?:\.\d+)?) K", words)
+    if words != "room temperature" and found is None:
+        raise ValueError(f"temperature = {words!r} is neither 'room temperature' nor a number in K")
+    kelvin = float(found[1]) if found else float(ROOM)
+    like = values.get("lifetime") or next(iter(values.values()))
+    details = {"conditions": f"of the record: {words}", "remark": "", "where": like.where}
+    number = {"value_si": kelvin, "low_si": None, "high_si": None, "shown": f"{kelvin:g} K"}
+    return {"temperature": replace(like, **number, **details, unit="K")}  # type: ignore[arg-type]  # texts and numbers by name
 
 
 def _enhancement(table: Mapping[str, Any]) -> Enhancement:

@@ -231,6 +231,7 @@ class Record:
         }
         if self.law is not None:
             found["broadening"] = (self.law.checked, self.law.origin)
+            found.pop("fast_linewidth", None)
         used = [value for line in self._placed_lines() for value in line if value is not None]
         if used:
             seen = all(value.checked == "seen" for value in used)

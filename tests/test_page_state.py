@@ -19,6 +19,7 @@ from explorer.design import Requirement
 from explorer.inputs import EMITTER
 from explorer.maps import Axis
 from explorer.page.app import Explorer
+from explorer.page.bind import InputRow
 from explorer.page.canvas import unpack
 from explorer.page.panels.cut import fitted
 from explorer.page.panels.map import LAYERS
@@ -880,6 +881,9 @@ def test_a_given_spectrum_stands_in_for_the_linewidth(page) -> None:
     row = row_of(page, "fast_linewidth")
     assert not row.slider.disabled
     page.state.take_record("emitter", "inas_gaas_dot")
+    assert page.state.answer.values["spectrum"].follows
+    assert not row.slider.disabled, "its line takes the width of the point"
+    page.state.take_record("emitter", "siv_nanodiamond")
     assert page.state.answer.values["spectrum"] is not None
     assert row.slider.disabled
     assert row.box.disabled
@@ -950,3 +954,15 @@ def test_two_pages_have_two_states(page) -> None:
 def test_a_question_checks_itself() -> None:
     with pytest.raises(explorer.InputError):
         Question(shown="beauty")
+
+
+def test_a_temperature_that_changes_nothing_says_so(page) -> None:
+    row = InputRow(page.state, "temperature")
+    assert row.range.value == "changes nothing: no law of the linewidth"
+    page.state.take_record("emitter", "siv_bulk")
+    assert row.range.value == ""
+    before = page.state.answer.values["fast_linewidth"]
+    page.state.give(temperature=77.0)
+    assert page.state.answer.values["fast_linewidth"] < before
+    page.state.give(fast_linewidth=1e-9)
+    assert row.range.value == "changes nothing: the linewidth is given"

@@ -27,7 +27,7 @@ class Drawn:
     """Bands, marks and second scales in fractions of the axes."""
 
     bands: tuple[Band, ...] = ()
-    marks: tuple[Mark, ...] = ()
+    marks: tuple[Mark, ...] = ()  # those nearest to the design's wavelength first
     top: SecondScale | None = None
     right: SecondScale | None = None
 
@@ -70,11 +70,12 @@ class Backdrop:
         )
         if key != self._key:
             self._key = key
+            wavelength = float(values["resonance_wavelength"])
             self._last = Drawn(
                 bands=tuple(_bands(answer, question.y)),
-                marks=tuple(_marks(question.x, question.y)),
+                marks=tuple(_marks(question.x, question.y, wavelength)),
                 top=_angles(answer, question.x),
-                right=_widths(float(values["resonance_wavelength"]), question.y),
+                right=_widths(wavelength, question.y),
             )
         return self._last
 
@@ -122,7 +123,8 @@ def _published_band(record: Record, axis: Axis) -> Band | None:
     return _band(quality, record.name, axis, False)
 
 
-def _marks(across: Axis, up: Axis) -> list[Mark]:
+def _marks(across: Axis, up: Axis, wavelength: float) -> list[Mark]:
+    """Every published resonator on the map, those nearest to a wavelength first."""
     found = []
     for key, record in resonators().items():
         quality, volume = (record.values.get(name) for name in ("quality_factor", "mode_volume"))
@@ -133,8 +135,10 @@ def _marks(across: Axis, up: Axis) -> list[Mark]:
         if 0 <= x <= 1 and 0 <= y <= 1:
             note = f"{record.name}: Q {quality.shown} ({quality.checked}), V {volume.shown} ({volume.checked})"
             source = quality.reference.text if quality.reference else quality.source
-            found.append(Mark(x, y, record.class_, f"{note}; {source}", key))
-    return found[:12]
+            own = record.values.get("resonance_wavelength")
+            far = abs(np.log(own.value_si / wavelength)) if own else np.inf
+            found.append((far, Mark(x, y, record.class_, f"{note}; {source}", key)))
+    return [mark for _, mark in sorted(found, key=lambda pair: pair[0])]
 
 
 def _angles(answer: Answer, axis: Axis) -> SecondScale | None:

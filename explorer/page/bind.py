@@ -73,6 +73,22 @@ def open_words(design: Design, name: str) -> str:
     return f"{typed(name, unknown.low, 4)}–{written(name, unknown.high, 4)} not known"
 
 
+def stands_in(spectrum: Any) -> bool:
+    """Whether a spectrum is given in place of the single line, and no line of it has its width."""
+    return spectrum is not None and not getattr(spectrum, "follows", False)
+
+
+def unheard(answer: Answer, name: str) -> str:
+    """Why an input changes nothing; '' where it does."""
+    if name != "temperature":
+        return ""
+    if answer.values["broadening"] is None:
+        return "changes nothing: no law of the linewidth"
+    if "fast_linewidth" in answer.question.design.point:
+        return "changes nothing: the linewidth is given"
+    return ""
+
+
 class InputRow(VBox):
     """A number: slider and box that follow each other, and say what is wrong."""
 
@@ -140,7 +156,7 @@ class InputRow(VBox):
         given = name in answer.question.design.point
         self._syncing = True
         try:
-            idle = name == IDLE and answer.values["spectrum"] is not None
+            idle = name == IDLE and stands_in(answer.values["spectrum"])
             if anew or name not in self._state.problems:
                 self.box.value = "spectrum" if idle else typed(name, value, 12 if given else 4)
             self.box.disabled = self.slider.disabled = idle
@@ -150,7 +166,7 @@ class InputRow(VBox):
                 self.slider.value = stop
             self.back.disabled = not can_go_back(answer.question.design, name)
             self._origin.follow(answer.question.design)
-            self.range.value = open_words(answer.question.design, name)
+            self.range.value = open_words(answer.question.design, name) or unheard(answer, name)
         finally:
             self._syncing = False
 

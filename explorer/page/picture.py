@@ -23,6 +23,9 @@ DECADES = 3.0
 #: Most cautions that the hatching tells apart.
 MASKS = 8
 
+#: Devices that are shown at first: those nearest to the design's wavelength.
+FIRST = 12
+
 
 def picture_of(answer: Answer, drawn: Map, back: Drawn) -> Picture:
     """Everything that the canvas draws for an answer."""
@@ -48,7 +51,11 @@ def picture_of(answer: Answer, drawn: Map, back: Drawn) -> Picture:
         ),
         labels=notes(border, drawn, answer),
         bands=back.bands if "all_bands" in layers else tuple(b for b in back.bands if b.own),
-        marks=back.marks if "marks" in layers else (),
+        marks=back.marks
+        if "all_marks" in layers
+        else back.marks[:FIRST]
+        if "marks" in layers
+        else (),
         top=back.top if "scales" in layers else None,
         right=back.right if "scales" in layers else None,
     )

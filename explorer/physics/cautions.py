@@ -190,6 +190,12 @@ def outside_law() -> Any:
     return False
 
 
+@variant("outside_law", broadening=Broadening, spectrum=Samples)
+def outside_no_law() -> Any:
+    """A measured spectrum stands in place of the law."""
+    return False
+
+
 @variant("outside_law", broadening=Broadening)
 def outside_its_range(*, broadening: Any, temperature: Any) -> Any:
     """Below the lowest or above the highest temperature of the law."""

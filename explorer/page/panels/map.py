@@ -26,6 +26,7 @@ LAYERS = {
     "scales": "second scales",
     "all_bands": "all emitters",
     "marks": "devices",
+    "all_marks": "all devices",
 }
 
 #: Least change of an axis fraction that is a move, not a rounding of pixels.
