@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import Any
 
 import numpy as np
@@ -71,9 +72,11 @@ class Backdrop:
         if key != self._key:
             self._key = key
             wavelength = float(values["resonance_wavelength"])
+            own = _own_band(answer, question.y)
+            others = _published_bands(question.y, question.design.emitter)
             self._last = Drawn(
-                bands=tuple(_bands(answer, question.y)),
-                marks=tuple(_marks(question.x, question.y, wavelength)),
+                bands=(own, *others) if own else others,
+                marks=_marks(question.x, question.y, wavelength),
                 top=_angles(answer, question.x),
                 right=_widths(wavelength, question.y),
             )
@@ -102,12 +105,11 @@ def _band(quality: float, name: str, axis: Axis, own: bool, spread: float = THIN
     return Band(max(low, 0.0), min(high, 1.0), name, own)
 
 
-def _bands(answer: Answer, axis: Axis) -> list[Band]:
-    found = [_own_band(answer, axis)]
-    for key, record in emitters().items():
-        if key != answer.question.design.emitter:
-            found.append(_published_band(record, axis))
-    return [band for band in found if band is not None]
+@lru_cache(maxsize=64)
+def _published_bands(axis: Axis, own: str) -> tuple[Band, ...]:
+    """Bands of the published emitters but one."""
+    found = (_published_band(record, axis) for key, record in emitters().items() if key != own)
+    return tuple(band for band in found if band is not None)
 
 
 def _published_band(record: Record, axis: Axis) -> Band | None:
@@ -123,7 +125,8 @@ def _published_band(record: Record, axis: Axis) -> Band | None:
     return _band(quality, record.name, axis, False)
 
 
-def _marks(across: Axis, up: Axis, wavelength: float) -> list[Mark]:
+@lru_cache(maxsize=64)
+def _marks(across: Axis, up: Axis, wavelength: float) -> tuple[Mark, ...]:
     """Every published resonator on the map, those nearest to a wavelength first."""
     found = []
     for key, record in resonators().items():
@@ -138,7 +141,7 @@ def _marks(across: Axis, up: Axis, wavelength: float) -> list[Mark]:
             own = record.values.get("resonance_wavelength")
             far = abs(np.log(own.value_si / wavelength)) if own else np.inf
             found.append((far, Mark(x, y, record.class_, f"{note}; {source}", key)))
-    return [mark for _, mark in sorted(found, key=lambda pair: pair[0])]
+    return tuple(mark for _, mark in sorted(found, key=lambda pair: pair[0]))
 
 
 def _angles(answer: Answer, axis: Axis) -> SecondScale | None:

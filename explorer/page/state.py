@@ -44,6 +44,7 @@ class State:
         self._listeners: list[Listener] = []
         self._complaints: list[Callable[[], None]] = []
         self._work: Iterator[Answer] | None = None
+        self._rested: Answer | None = None
         self._handle: asyncio.TimerHandle | None = None
         self.answer = self._whole = self._answers.answer(question)
 
@@ -169,8 +170,10 @@ class State:
                 if first and not newest.whole and _in_a_loop():
                     self._tell(newest)
                 first = False
-                if newest.rest and newest is not self.answer and self._later(REST):
-                    break
+                if newest.rest and newest is not self._rested:  # once, however often it comes
+                    self._rested = newest
+                    if self._later(REST):
+                        break
                 if time.perf_counter() > end and self._later():
                     break
         except InputError as error:  # an axis of the map reaches beyond what another input allows
