@@ -53,9 +53,10 @@ class OriginMark:
         origin = design.origin(self._entry.name)
         if origin == self._last:
             return
-        if self._last is not None:
-            self._row.remove_class(_origin_class(self._last))
-        self._row.add_class(_origin_class(origin))
+        if self._last is None or self._last.kind != origin.kind:
+            if self._last is not None:
+                self._row.remove_class(_origin_class(self._last))
+            self._row.add_class(_origin_class(origin))
         self._last = origin
         where = f": {origin.where}" if origin.where else ""
         self._label.tooltip = f"{self._entry.meaning} {MARKS[origin.kind]} {origin.kind}{where}"

@@ -43,10 +43,14 @@ class State:
         self._answers = Answers()
         self._listeners: list[Listener] = []
         self._complaints: list[Callable[[], None]] = []
-        self._work: Iterator[Answer] | None = None
-        self._rested: Answer | None = None
         self._handle: asyncio.TimerHandle | None = None
-        self.answer = self._whole = self._answers.answer(question)
+        steps = self._answers.steps(question)
+        self._work: Iterator[Answer] | None = steps
+        self.answer = self._whole = next(answer for answer in steps if answer.whole)
+        self._rested = self.answer
+        if not self._later(REST):  # what is not known can wait until the page stands
+            for self.answer in steps:
+                self._whole = self.answer
 
     def on_answer(self, listener: Listener) -> None:
         """Call a listener with every answer, the present one at once."""
