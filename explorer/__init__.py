@@ -6,6 +6,7 @@ Importing this package loads no widget library and no pandas.
 
 from __future__ import annotations
 
+from . import keyrate
 from . import physics as _physics
 from .broadening import Broadening
 from .budget import budget
@@ -61,6 +62,7 @@ __all__ = [
     "design_text",
     "evaluate",
     "influences",
+    "keyrate",
     "load_design",
     "make_map",
     "mesh",

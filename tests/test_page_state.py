@@ -958,11 +958,11 @@ def test_a_question_checks_itself() -> None:
 
 def test_a_temperature_that_changes_nothing_says_so(page) -> None:
     row = InputRow(page.state, "temperature")
-    assert row.range.value == "changes nothing: no law of the linewidth"
+    assert row.range.value == "no effect: no law of the linewidth"
     page.state.take_record("emitter", "siv_bulk")
     assert row.range.value == ""
     before = page.state.answer.values["fast_linewidth"]
     page.state.give(temperature=77.0)
     assert page.state.answer.values["fast_linewidth"] < before
     page.state.give(fast_linewidth=1e-9)
-    assert row.range.value == "changes nothing: the linewidth is given"
+    assert row.range.value == "no effect: the linewidth is given"

@@ -84,9 +84,9 @@ def unheard(answer: Answer, name: str) -> str:
     if name != "temperature":
         return ""
     if answer.values["broadening"] is None:
-        return "changes nothing: no law of the linewidth"
+        return "no effect: no law of the linewidth"
     if "fast_linewidth" in answer.question.design.point:
-        return "changes nothing: the linewidth is given"
+        return "no effect: the linewidth is given"
     return ""
 
 

@@ -80,7 +80,7 @@ class Hands:
 
     # ---------------------------------------------------------------- waiting
 
-    def rest(self, seconds: float = 20, quiet: float = 0.9) -> dict[str, Any]:
+    def rest(self, seconds: float = 20, quiet: float = 0.7) -> dict[str, Any]:
         """Wait until nothing has changed for a while, and return what is seen.
 
         Longer than the page waits before a map drawn in fewer cells is drawn whole, and then before

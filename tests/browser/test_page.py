@@ -150,7 +150,7 @@ def test_pressing_a_device_takes_its_place(hands) -> None:
         "return [...document.querySelectorAll('.explorer-map li')].map((item) => item.textContent)"
     )
     assert marks
-    record = resonators()["micropillar"]
+    record = resonators()["nanobeam_snv_kuruma2021"]  # one of those nearest in wavelength
     question = first_question()
     across = float(question.x.fraction(record.values["mode_volume"].value_si))
     up = float(question.y.fraction(record.values["quality_factor"].value_si))
