@@ -89,7 +89,7 @@ def test_scale_of_counts_does_not_matter() -> None:
 def test_shares_and_strongest_line() -> None:
     lines = Lines([(0.2, 0.0, 1e-9), (0.5, 1e-8, 2e-9)])
     assert lines.known_share == pytest.approx(0.7)
-    assert lines.strongest == (0.5, 1e-8, 2e-9)
+    assert lines.strongest == 1  # the index of its line
     assert Lines([(1 + 1e-10, 0, 0)]).known_share == 1
 
 
