@@ -224,7 +224,7 @@ def next_step(
         (drawn.y, rows[nearest], up[nearest], ny),
     ):
         if abs(move) > 0.75 / count:
-            value = written(axis.name, float(axis.values[index]), 2)
+            value = written(axis.name, float(f"{axis.values[index]:.2g}"), 6)  # 120, not 1.2e+02
             goals.append(f"{_name(axis.name)} {value}")
     return f"nearest design that meets all: {', '.join(goals)}" if goals else ""
 

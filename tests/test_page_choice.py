@@ -11,7 +11,7 @@ from dataclasses import replace
 
 import pytest
 
-from explorer import Requirement, Unknown
+from explorer import Axis, Requirement, Unknown
 from explorer.answers import Answers
 from explorer.candidates import batch
 from explorer.catalogue import emitters
@@ -322,3 +322,17 @@ def test_a_link_through_fibre_asks_for_its_loss() -> None:
     panel.medium.value = "fibre"
     assert panel.lines["visibility"].layout.display == "none"
     assert panel.said.value != through_air
+
+
+def test_the_next_step_writes_numbers_as_people_do() -> None:
+    """How cold it must be, and with which Q: no exponents of ten where a number will do."""
+    question = first_question()
+    design = with_record(question.design, "emitter", "siv_bulk")
+    cold = replace(
+        question,
+        design=design,
+        x=Axis("temperature", 1.0, 400.0, count=40),
+        y=replace(question.y, count=40),
+    )
+    hint = Answers().answer(cold).hint
+    assert re.search(r"T \d+ K, Q \d+$", hint), hint
