@@ -12,6 +12,7 @@ import pytest
 from scipy.integrate import quad
 from scipy.special import erfc, voigt_profile
 
+import explorer
 from explorer.physics.window import (
     line_density,
     line_window,
@@ -415,3 +416,19 @@ def test_line_density():
     slope = line_window(lower=2e9 - step, upper=2e9 + step, centre=1e9, width=width, sigma=sigma)
     density = line_density(frequency=2e9, centre=1e9, width=width, sigma=sigma)
     assert density == pytest.approx(float(slope) / (2 * step), rel=1e-7)
+
+
+def test_a_line_without_width_that_nothing_couples_has_a_window() -> None:
+    """No dephasing, no decay and no coupling: the pole lies on the axis; the limit is finite."""
+    point = {
+        "quantum_yield": 1.0,
+        "fast_linewidth": 0.0,
+        "slow_linewidth": 8e-12,
+        "quality_factor": 1e10,
+        "lateral_offset": -7e-4,
+        "filter_width": 7e-15,
+        "emission_wavelength": 2.3e-7,
+    }
+    still = explorer.evaluate({**point, "other_modes": 0.0}, ["filter_share"])["filter_share"]
+    nearly = explorer.evaluate({**point, "other_modes": 1e-5}, ["filter_share"])["filter_share"]
+    assert still == pytest.approx(nearly, rel=1e-6)

@@ -153,7 +153,8 @@ def _panels(
 
 def _cut(count: int, height: Floats, offset: Floats, base: Floats) -> tuple[Cells, Floats, Floats]:
     """Cell, start and end of every panel, in sigma."""
-    steps = int(np.ceil(np.log(60 / height.min()) / np.log(_GROWTH)))
+    # A line without width has no height; nearer than this nothing of it is left out.
+    steps = int(np.ceil(np.log(60 / max(height.min(), 1e-30)) / np.log(_GROWTH)))
     growth = np.concatenate([[0], _GROWTH ** np.arange(max(steps, 0) + 1)])
     distance = height[:, :, None] * growth
     cuts = [offset[:, :, None] + distance, offset[:, :, None] - distance]
