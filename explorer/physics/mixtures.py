@@ -125,7 +125,9 @@ def samples_average(
     Right to 1e-6 and better for a resonator wider than two samples; for a narrower one as far as
     the samples' own noise allows (see `average_over_samples`). Seen at worst on a smooth spectrum
     that is cut at its ends: 3e-5 for shares, rates and light inside a filter, 1e-3 for the lifetime
-    beside a resonance far narrower than the wandering.
+    beside a resonance far narrower than the wandering. The nodes do not follow a filter: where the
+    spectrum is over a hundred times narrower than its wandering, the light inside is right to 1e-2 of
+    the whole only.
     """
     half = resonator_linewidth / 2
 
