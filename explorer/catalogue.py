@@ -11,7 +11,6 @@ import math
 import re
 import tomllib
 from collections.abc import Mapping
-from dataclasses import replace
 from functools import cache
 from importlib import resources
 from importlib.resources.abc import Traversable
@@ -113,7 +112,7 @@ def parse_record(kind: str, file: Traversable) -> Record:
 def _record(kind: str, key: str, table: Mapping[str, Any]) -> Record:
     values = _values(table["values"])
     if kind == "emitters" and "temperature" not in values:
-        values |= _temperature(table.get("temperature", ""), values)
+        values |= _temperature(table.get("temperature", ""))
     boost = table.get("enhancement")
     if boost and "meaning" not in boost:
         raise ValueError("enhancement has no meaning: of what is it the ratio?")
@@ -141,7 +140,7 @@ def _record(kind: str, key: str, table: Mapping[str, Any]) -> Record:
 ROOM: Final = 295
 
 
-def _temperature(words: str, values: Mapping[str, Value]) -> dict[str, Value]:
+def _temperature(words: str) -> dict[str, Value]:
     """The temperature [K] that an emitter was measured at, from the words of its record."""
     if not words:
         return {}
@@ -149,10 +148,21 @@ def _temperature(words: str, values: Mapping[str, Value]) -> dict[str, Value]:
     if words != "room temperature" and found is None:
         raise ValueError(f"temperature = {words!r} is neither 'room temperature' nor a number in K")
     kelvin = float(found[1]) if found else float(ROOM)
-    like = values.get("lifetime") or next(iter(values.values()))
-    details = {"conditions": f"of the record: {words}", "remark": "", "where": like.where}
-    number = {"value_si": kelvin, "low_si": None, "high_si": None, "shown": f"{kelvin:g} K"}
-    return {"temperature": replace(like, **number, **details, unit="K")}  # type: ignore[arg-type]  # texts and numbers by name
+    return {
+        "temperature": Value(
+            value_si=kelvin,
+            low_si=None,
+            high_si=None,
+            shown=f"{kelvin:g} K",
+            unit="K",
+            source=COMMON,
+            where=f"temperature of the record: {words}",
+            conditions="",
+            checked="from memory",
+            remark="",
+            reference=None,
+        )
+    }
 
 
 def _enhancement(table: Mapping[str, Any]) -> Enhancement:

@@ -293,7 +293,7 @@ class Design:
         return replace(
             self,
             point=self.point | values,  # type: ignore[operator]  # Frozen after __post_init__
-            origins=self.origins | origins,  # type: ignore[operator]
+            origins=self.origins | origins,  # type: ignore[operator]  # so here
             unknowns=unknowns,
         )
 

@@ -83,7 +83,7 @@ def start(
     served = Served(process, port)
     try:
         _wait_for_address(served)
-    except BaseException:
+    except BaseException:  # whatever it was, Ctrl-C too: no server is left behind
         process.kill()
         raise
     return served

@@ -10,7 +10,7 @@ import pytest
 
 from explorer import Design, Requirement, Unknown, candidates
 from explorer.advice import record_cautions
-from explorer.candidates import SHOWN, side_name
+from explorer.candidates import NEEDED, SHOWN, side_name
 from explorer.catalogue import emitters, optics, resonators
 from explorer.combine import PARTS, combined, with_place, with_record
 from explorer.scenario import first_question
@@ -89,7 +89,12 @@ def test_counts_of_memory_and_defaults() -> None:
         parts = [name for kind in ("emitter", "resonator", "optic") for name in PARTS[kind]]
         memory = [name for name in parts if design.origin(name).kind == "from memory"]
         assert row.from_memory == len(memory)
-        assert row.assumed >= 0
+        known = {
+            *design.point,
+            *(["fast_linewidth"] if {"spectrum", "broadening"} & design.point.keys() else []),
+        }
+        needed = [name for names in NEEDED.values() for name in names]
+        assert row.assumed == sum(name not in known for name in needed)
 
 
 def test_the_own_part_is_a_candidate_where_it_is_no_records() -> None:
@@ -139,7 +144,9 @@ def test_a_record_replaces_its_whole_part_and_nothing_else() -> None:
 def test_a_place_takes_its_inputs_with_origin_and_range() -> None:
     placed = with_place(DESIGN, "nanobeam_snv_kuruma2021", ("mode_volume", "quality_factor"))
     assert placed.point["quality_factor"] == 3000
-    assert placed.origin("quality_factor").kind == "seen"
+    record = resonators()["nanobeam_snv_kuruma2021"]
+    assert placed.origin("quality_factor").kind == record.values["quality_factor"].checked
+    assert placed.origin("quality_factor").source == "kuruma2021"
     assert placed.point["radiative_share"] == DESIGN.point["radiative_share"]
 
 

