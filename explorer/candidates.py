@@ -58,15 +58,13 @@ class Part:
     def same(self) -> tuple[Any, ...]:
         """What parts must share to be evaluated together.
 
-        Whole values, and which inputs are given whose default follows other inputs; beyond NA 1 the
-        side from which the bare reference is watched differs too.
+        Whole values, and which inputs are given whose default follows other inputs.
         """
-        shared: list[Any] = [
+        return tuple(
             (name, self.inputs.get(name) if INPUTS[name].whole else name in self.inputs)
             for name in PARTS[self.kind]
             if INPUTS[name].whole or callable(INPUTS[name].default)
-        ]
-        return (*shared, float(self.inputs.get("numerical_aperture", 0.0)) > 1)
+        )
 
 
 def parts(

@@ -116,6 +116,21 @@ def test_a_requirement_on_any_quantity_is_a_column() -> None:
     assert (table.meets_device_lifetime_at_most == (table.device_lifetime <= 1e-9)).all()
 
 
+def test_a_gain_is_over_the_side_that_each_optic_watches() -> None:
+    """Oil and air optics in one batch: each gain as in the design by itself."""
+    wish = replace(DESIGN, requirements=(Requirement("brightness_gain", at_least=3.0),))
+    table = candidates(
+        wish, emitters=["terrylene_crystal", "siv_bulk"], resonators=["micropillar", ""]
+    )
+    oil = table[table.optic == "free_space_oil_na_13"]
+    assert 0 < len(oil) < len(table)
+    for row in table.itertuples():
+        single = combined(wish, row.emitter, row.resonator, row.optic).outcome(["brightness_gain"])
+        assert row.brightness_gain == pytest.approx(
+            single["brightness_gain"], rel=1e-9, nan_ok=True
+        )
+
+
 def test_an_unknown_key_is_refused() -> None:
     with pytest.raises(KeyError):
         candidates(DESIGN, emitters=["unobtainium"])
