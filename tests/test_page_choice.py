@@ -17,6 +17,7 @@ from explorer.candidates import batch
 from explorer.catalogue import emitters
 from explorer.combine import combined, with_record
 from explorer.page import candidate_rows
+from explorer.page.panels.candidates import CandidatesPanel
 from explorer.page.panels.keylink import KeyLinkPanel
 from explorer.page.panels.measure import MeasurePanel
 from explorer.page.shortlist import LETTERS, Shortlist, short_name
@@ -336,3 +337,34 @@ def test_the_next_step_writes_numbers_as_people_do() -> None:
     )
     hint = Answers().answer(cold).hint
     assert re.search(r"T \d+ K, Q \d+$", hint), hint
+
+
+# -------------------------------------------------------------------- the table's panel
+
+
+def test_a_sheet_that_was_closed_too_soon_is_worked_out_when_it_opens_again() -> None:
+    async def main() -> None:
+        panel = CandidatesPanel(small())
+        panel.opened(True)
+        await asyncio.sleep(0.02)
+        panel.opened(False)
+        panel.opened(True)
+        for _ in range(200):
+            await asyncio.sleep(0.05)
+            if "meet everything" in panel.said.value:
+                return
+        raise AssertionError(panel.said.value)
+
+    asyncio.run(main())
+
+
+def test_a_row_becomes_the_design_and_can_be_kept() -> None:
+    state = small()
+    panel = CandidatesPanel(state)
+    panel.opened(True)
+    row = candidate_rows.key_of("nv_nanodiamond", "micropillar", "")
+    panel._keep(row)
+    panel._pick(row)
+    expected = combined(DESIGN, "nv_nanodiamond", "micropillar", "")
+    assert state.question.design == expected
+    assert state.shortlist.kept == {"A": expected}

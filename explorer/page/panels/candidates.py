@@ -9,8 +9,10 @@ from ipywidgets import Checkbox, Dropdown, HBox, Label, VBox
 from ...candidates import Batch, batch_steps
 from ...combine import combined
 from ...design import Design
+from ...domain import InputError
 from ...question import Answer
 from ..candidate_rows import columns, key_of, keys_of, rows
+from ..records import PLACE
 from ..state import State
 from ..table import Table
 from ..work import Work
@@ -54,8 +56,9 @@ class CandidatesPanel(VBox):
         self._open = is_open
         if is_open:
             self._ask(delay=0.001)
-        else:
+        elif self._work.busy:
             self._work.stop()
+            self._made = None  # it was not finished
 
     def _key(self, design: Design) -> tuple[Any, ...]:
         return design, self.optic.value, self.scaled.value
@@ -94,7 +97,10 @@ class CandidatesPanel(VBox):
         return combined(self._state.question.design, *keys_of(row), scaled=self.scaled.value)
 
     def _pick(self, row: str) -> None:
-        self._state.ask(design=self._design(row))
+        self._state.change(lambda _: self._design(row), PLACE)
 
     def _keep(self, row: str) -> None:
-        self._state.shortlist.keep(self._design(row))
+        try:
+            self._state.shortlist.keep(self._design(row))
+        except InputError as error:  # a value of the design that does not go with these records
+            self._state.refuse("", str(error))

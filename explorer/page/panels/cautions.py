@@ -13,7 +13,7 @@ from ..state import State
 
 STANDING = (
     "Planning estimates. Lasers here are often class 3B or 4 (IEC 60825-1), some emitters toxic, some "
-    "cold: follow the laser-safety officer, local codes and safety data sheets."
+    "cryogenic: follow the laser-safety officer, local codes, safety data sheets."
 )
 
 
