@@ -22,7 +22,7 @@ from .prediction import prediction_table
 from .record import design_text, load_design, save_design
 from .registry import REGISTRY as _REGISTRY
 from .registry import check as _check
-from .sampling import Influence, Range, influences, ranges
+from .unknowns import Influence, Range, influences, ranges
 from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
 

@@ -25,7 +25,7 @@ from .maps import FRONTIERS, Axis, Map, make_map, stacked
 from .question import READ_OUT, Answer, Question, fitting_axis
 from .refusals import beyond
 from .registry import REGISTRY, dependencies
-from .sampling import Influence, influences, open_names, range_steps
+from .unknowns import Influence, influences, open_names, range_steps
 from .sentence import next_step, sentence
 
 #: Longest piece of work between two chances to hear of a newer question [s].

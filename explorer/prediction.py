@@ -2,7 +2,7 @@
 
 A device is a resonator record with Q, V and a published enhancement; its `device` values say what is
 known of its emitter and surroundings. Each enhancement is predicted as its source defines it. What
-is not known is drawn within its published or usual range (see `sampling`); nothing is fitted.
+is not known is drawn within its published or usual range (see `unknowns`); nothing is fitted.
 """
 
 from __future__ import annotations
@@ -20,7 +20,7 @@ from .design import Design, Unknown
 from .evaluate import Evaluation
 from .inputs import INPUTS
 from .published import Record, Value
-from .sampling import DRAWS, INSIDE, drawn_point, spread
+from .unknowns import DRAWS, INSIDE, drawn_point, spread
 
 if TYPE_CHECKING:
     import pandas as pd

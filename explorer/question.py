@@ -13,7 +13,7 @@ from .domain import InputError
 from .inputs import INPUTS
 from .maps import Axis, Map
 from .registry import REGISTRY, parameters
-from .sampling import Influence, Range
+from .unknowns import Influence, Range
 from .sentence import Sentence
 
 #: Quantities that a page always reads out.

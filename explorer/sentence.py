@@ -15,7 +15,7 @@ from .design import Design, Requirement, written
 from .inputs import INPUTS
 from .maps import Axis, Map
 from .registry import REGISTRY
-from .sampling import Range, open_names
+from .unknowns import Range, open_names
 from .units import text
 
 #: Where a rate arrives, after "… photons/s".

@@ -25,7 +25,7 @@ from explorer.page.state import State
 from explorer.page.table import pack
 from explorer.page.work import SLICE, Work
 from explorer.reading import ReadingError, read_range
-from explorer.sampling import influences, ranges
+from explorer.unknowns import influences, ranges
 from explorer.scenario import LINK, first_question
 
 DESIGN = first_question().design

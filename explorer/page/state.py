@@ -17,7 +17,7 @@ from ..combine import PARTS, with_record
 from ..design import Design, Unknown
 from ..domain import InputError
 from ..question import Answer, Question
-from ..sampling import spread
+from ..unknowns import spread
 from .records import PLACE, as_published, placed, still_placed
 from .shortlist import Shortlist
 

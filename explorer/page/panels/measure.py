@@ -11,7 +11,7 @@ from ipywidgets import HTML, Button, Dropdown, VBox
 from ...inputs import INPUTS
 from ...question import Answer
 from ...registry import REGISTRY
-from ...sampling import Influence
+from ...unknowns import Influence
 from ...units import text
 from ..state import State
 

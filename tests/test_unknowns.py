@@ -10,7 +10,7 @@ import pytest
 from scipy import stats
 
 from explorer import QUANTITIES, Design, Unknown, evaluate
-from explorer.sampling import DRAWS, INSIDE, drawn_point, influences, ranges, spread
+from explorer.unknowns import DRAWS, INSIDE, drawn_point, influences, ranges, spread
 from explorer.scenario import first_question
 
 START = first_question().design
