@@ -12,7 +12,7 @@ from .broadening import Broadening
 from .budget import budget
 from .candidates import candidates
 from .combine import combined, with_record
-from .design import Decision, Design, Origin, Requirement, Spread, Unknown
+from .design import Decision, Design, Origin, Requirement, Unknown
 from .domain import InputError
 from .evaluate import evaluate
 from .exact import RecordError
@@ -22,9 +22,13 @@ from .prediction import prediction_table
 from .record import design_text, load_design, save_design
 from .registry import REGISTRY as _REGISTRY
 from .registry import check as _check
+from .sampling import scattered
+from .scatter import Spread
 from .unknowns import Influence, Range, influences, ranges
 from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
+from .yield_maps import make_yield_map
+from .yields import Quantiles, Share, Yield, quantiles, yield_of
 
 _check()
 
@@ -48,13 +52,16 @@ __all__ = [
     "Map",
     "Origin",
     "Pattern",
+    "Quantiles",
     "Range",
     "RecordError",
     "Requirement",
     "Samples",
+    "Share",
     "Spread",
     "Unknown",
     "WholeError",
+    "Yield",
     "__version__",
     "budget",
     "candidates",
@@ -65,11 +72,15 @@ __all__ = [
     "keyrate",
     "load_design",
     "make_map",
+    "make_yield_map",
     "mesh",
     "prediction_table",
+    "quantiles",
     "ranges",
     "save_design",
+    "scattered",
     "with_record",
+    "yield_of",
 ]
 
 del _physics

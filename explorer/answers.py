@@ -25,8 +25,8 @@ from .maps import FRONTIERS, Axis, Map, make_map, stacked
 from .question import READ_OUT, Answer, Question, fitting_axis
 from .refusals import beyond
 from .registry import REGISTRY, dependencies
-from .unknowns import Influence, influences, open_names, range_steps
 from .sentence import next_step, sentence
+from .unknowns import Influence, influences, open_names, range_steps
 
 #: Longest piece of work between two chances to hear of a newer question [s].
 SLICE = 0.04

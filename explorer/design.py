@@ -5,30 +5,19 @@ Frozen and hashable, so links, undo, replay and shortlists are made of designs. 
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, fields, replace
 from functools import lru_cache
 from typing import Any
 
-import numpy as np
-
-from .domain import InputError, quoted, shown
+from .domain import InputError, finite_number, quoted, shown
 from .evaluate import Evaluation, evaluated, limits_of
 from .inputs import INPUTS
 from .registry import REGISTRY
+from .scatter import Spread, check_scatter, correlation_matrix
 
 #: Longest text that a name, a note or a line of the decision may be.
 LONGEST_TEXT = 4000
-
-#: Kinds of scatter, and what their width means.
-SPREADS = {
-    "normal": "standard deviation",
-    "lognormal": "standard deviation of the logarithm",
-    "uniform": "half-width",
-    "radial": "standard deviation per axis of a displacement in the plane",
-    "direction": "static random directions of the dipole; the width is not used",
-}
 
 #: Where the value of an input comes from.
 ORIGINS = ("seen", "from memory", "measured", "typed", "default")
@@ -68,25 +57,6 @@ class Frozen(Mapping[str, Any]):
         return Frozen({**self._entries, **other})
 
 
-def real_number(value: Any) -> float | None:
-    """A real number of Python or NumPy as a float (∞ where it is too large); None for what is none."""
-    if isinstance(value, bool) or not isinstance(value, int | float | np.integer | np.floating):
-        return None
-    try:
-        return float(value)
-    except OverflowError:
-        return math.inf if value > 0 else -math.inf
-
-
-def _finite(value: Any, what: str) -> float:
-    number = real_number(value)
-    if number is None:
-        raise InputError(f"{what} = {quoted(value)} is not a number")
-    if not math.isfinite(number):
-        raise InputError(f"{what} = {number} is not a finite number")
-    return number
-
-
 def _text(value: Any, what: str) -> None:
     """InputError for what is no text that a record can hold."""
     if not isinstance(value, str) or len(value) > LONGEST_TEXT:
@@ -117,7 +87,7 @@ class Requirement:
                 f"a requirement on {self.quantity} takes at_least or at_most, one of them"
             )
         name = "at_most" if self.at_least is None else "at_least"
-        object.__setattr__(self, name, _finite(self.limit, f"{name} of {self.quantity}"))
+        object.__setattr__(self, name, finite_number(self.limit, f"{name} of {self.quantity}"))
 
     @property
     def limit(self) -> float:
@@ -135,24 +105,6 @@ class Requirement:
 
 
 @dataclass(frozen=True)
-class Spread:
-    """Scatter of an input from device to device: kind (see SPREADS) and width, SI, >= 0."""
-
-    kind: str
-    width: float = 0.0
-
-    def __post_init__(self) -> None:
-        if not isinstance(self.kind, str) or self.kind not in SPREADS:
-            raise InputError(
-                f"{quoted(self.kind)} is no kind of scatter; known: {', '.join(SPREADS)}"
-            )
-        width = _finite(self.width, "the width of a scatter")
-        if width < 0:
-            raise InputError(f"the width of a scatter must not be negative; got {width}")
-        object.__setattr__(self, "width", width)
-
-
-@dataclass(frozen=True)
 class Unknown:
     """The range, SI, within which an input that is not known lies; it is not scatter."""
 
@@ -160,8 +112,8 @@ class Unknown:
     high: float
 
     def __post_init__(self) -> None:
-        low = _finite(self.low, "the low end of a range")
-        high = _finite(self.high, "the high end of a range")
+        low = finite_number(self.low, "the low end of a range")
+        high = finite_number(self.high, "the high end of a range")
         if low > high:
             raise InputError(f"a range must not run backwards; got {low} to {high}")
         object.__setattr__(self, "low", low)
@@ -198,9 +150,9 @@ class Design:
 
     point: input name -> SI number or whole value, one design (no arrays). requirements: a sequence
     of `Requirement`. scatter, unknowns, origins: input name -> `Spread`, `Unknown`, `Origin`.
-    correlation: pairs of scattering inputs -> coefficient, keys 'one|other'. emitter, resonator,
-    optic: keys of the catalogue records that the values came from. data: names of measured files ->
-    hash. Raises InputError for anything that cannot be one.
+    correlation: pairs of scattering inputs -> coefficient, keys 'one|other'. passing: share of the
+    fabricated devices that must meet every requirement, or None. emitter, resonator, optic: keys of
+    the catalogue records that the values came from. data: names of measured files -> hash. Raises InputError for anything that cannot be one.
     """
 
     point: Mapping[str, Any] = field(default_factory=Frozen)
@@ -209,6 +161,7 @@ class Design:
     unknowns: Mapping[str, Unknown] = field(default_factory=Frozen)
     origins: Mapping[str, Origin] = field(default_factory=Frozen)
     correlation: Mapping[str, float] = field(default_factory=Frozen)
+    passing: float | None = None
     name: str = ""
     note: str = ""
     decision: Decision = field(default_factory=Decision)
@@ -237,11 +190,13 @@ class Design:
                 raise InputError(f"{name} = {quoted(getattr(self, name))} is no mapping from names")
             object.__setattr__(self, name, Frozen(getattr(self, name)))
         self._check_companions()
-        self._check_correlation()
+        check_scatter(self.scatter)
+        correlation_matrix(self.correlation)
+        self._check_share()
         self._check_texts()
 
     def _check_companions(self) -> None:
-        kinds = {"scatter": Spread, "unknowns": Unknown, "origins": Origin}
+        kinds = {"unknowns": Unknown, "origins": Origin}
         for attribute, kind in kinds.items():
             for name, value in getattr(self, attribute).items():
                 if name not in INPUTS:
@@ -260,16 +215,14 @@ class Design:
             if not isinstance(requirement, Requirement):
                 raise InputError(f"{quoted(requirement)} is no Requirement")
 
-    def _check_correlation(self) -> None:
-        for pair, value in self.correlation.items():
-            names = pair.split("|") if isinstance(pair, str) else []
-            known = [name for name in names if name in INPUTS and not INPUTS[name].whole]
-            if len(names) != 2 or len(set(known)) != 2:
+    def _check_share(self) -> None:
+        if self.passing is not None:
+            share = finite_number(self.passing, "the share of devices that must pass")
+            if not 0 <= share <= 1:
                 raise InputError(
-                    f"a correlation is of two inputs that scatter, 'one|other'; got {quoted(pair)}"
+                    f"the share of devices that must pass = {share:g} is outside 0 to 1"
                 )
-            if not -1 <= _finite(value, f"the correlation of {pair}") <= 1:
-                raise InputError(f"the correlation of {pair} = {value:g} is outside -1 to 1")
+            object.__setattr__(self, "passing", share)
 
     def _check_texts(self) -> None:
         if not isinstance(self.decision, Decision):

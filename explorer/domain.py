@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from typing import Any
 
@@ -30,6 +31,26 @@ class InputError(ValueError):
     def __init__(self, message: str, name: str | None = None) -> None:
         super().__init__(message)
         self.name = name
+
+
+def real_number(value: Any) -> float | None:
+    """A real number of Python or NumPy as a float (∞ where it is too large); None for what is none."""
+    if isinstance(value, bool) or not isinstance(value, int | float | np.integer | np.floating):
+        return None
+    try:
+        return float(value)
+    except OverflowError:
+        return math.inf if value > 0 else -math.inf
+
+
+def finite_number(value: Any, what: str) -> float:
+    """A real, finite number as a float; InputError, naming `what`, for anything else."""
+    number = real_number(value)
+    if number is None:
+        raise InputError(f"{what} = {quoted(value)} is not a number")
+    if not math.isfinite(number):
+        raise InputError(f"{what} = {number} is not a finite number")
+    return number
 
 
 def shown(value: float, entry: Input, digits: int = 12) -> str:

@@ -29,6 +29,9 @@ from .inputs import BROADEST, INPUTS
 from .registry import REGISTRY, Formula, Input, dependencies, parameters, split_view
 from .whole import Samples
 
+#: Index on either side of the reference's coverslip: no aperture reaches beyond it.
+SIDES = {"air": 1.0, "glass": 1.52}
+
 #: Inputs whose default follows others.
 FOLLOWING = frozenset(name for name, entry in INPUTS.items() if callable(entry.default))
 
@@ -122,6 +125,14 @@ class Evaluation:
         reason = f" (the limit comes from {' and '.join(names)})"
         return end(**{name: self.value(name) for name in names}), reason
 
+    def domain(self, name: str) -> tuple[Any, Any]:
+        """The least and the greatest value that a number may have beside the others, SI."""
+        entry = INPUTS[name]
+        low, high = self._end(entry.low, -FARTHEST)[0], self._end(entry.high, FARTHEST)[0]
+        if name == "numerical_aperture" and "reference_side" in self.given:
+            high = np.minimum(high, SIDES[self._values["reference_side"]])
+        return low, high
+
     def _check_law(self) -> None:
         """The width that a broadening law gives is one that may be given."""
         width = self.value("fast_linewidth")
@@ -150,7 +161,7 @@ class Evaluation:
         """A side that is given: air cannot be watched beyond NA 1, nor glass beyond its index."""
         aperture = np.asarray(self.value("numerical_aperture"))
         side = self._values["reference_side"]
-        limit = 1.0 if side == "air" else 1.52
+        limit = SIDES[side]
         if (aperture > limit).any():
             entry = replace(INPUTS["numerical_aperture"], high_open=False)
             why = f" where reference_side is {side!r}"

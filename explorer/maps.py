@@ -10,8 +10,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from .design import Requirement, real_number
-from .domain import InputError, quoted
+from .design import Requirement
+from .domain import InputError, quoted, real_number
 from .evaluate import Evaluation
 from .inputs import INPUTS
 from .registry import REGISTRY

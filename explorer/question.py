@@ -13,8 +13,8 @@ from .domain import InputError
 from .inputs import INPUTS
 from .maps import Axis, Map
 from .registry import REGISTRY, parameters
-from .unknowns import Influence, Range
 from .sentence import Sentence
+from .unknowns import Influence, Range
 
 #: Quantities that a page always reads out.
 READ_OUT = (

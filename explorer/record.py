@@ -15,11 +15,12 @@ from typing import Any
 from .atomic import write_whole
 from .broadening import Broadening
 from .budget import budget_rows
-from .design import Decision, Design, Origin, Requirement, Spread, Unknown
+from .design import Decision, Design, Origin, Requirement, Unknown
 from .domain import InputError, quoted
 from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
 from .registry import REGISTRY
+from .scatter import Spread
 from .schema import FOLLOWS, FORMAT, VERSION, problems
 from .units import si_unit, text, to_si, unit_name
 from .version import __version__

@@ -13,9 +13,10 @@ from pathlib import Path
 from typing import Any
 
 from .broadening import FORMS, Broadening
-from .design import LONGEST_TEXT, ORIGINS, SPREADS
+from .design import LONGEST_TEXT, ORIGINS
 from .inputs import INPUTS
 from .registry import REGISTRY, Input
+from .scatter import SPREADS
 from .units import EXPONENTS, si_unit
 from .whole import MOST_SAMPLES, Lines, Pattern
 

@@ -15,8 +15,8 @@ from .design import Design, Requirement, written
 from .inputs import INPUTS
 from .maps import Axis, Map
 from .registry import REGISTRY
-from .unknowns import Range, open_names
 from .units import text
+from .unknowns import Range, open_names
 
 #: Where a rate arrives, after "… photons/s".
 ARRIVALS = {

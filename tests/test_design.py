@@ -23,7 +23,8 @@ from explorer import (
     Unknown,
     evaluate,
 )
-from explorer.design import LONGEST_TEXT, ORIGINS, SPREADS, Frozen, written
+from explorer.design import LONGEST_TEXT, ORIGINS, Frozen, written
+from explorer.scatter import SPREADS
 
 
 def made() -> Design:

@@ -25,8 +25,8 @@ from explorer.page.state import State
 from explorer.page.table import pack
 from explorer.page.work import SLICE, Work
 from explorer.reading import ReadingError, read_range
-from explorer.unknowns import influences, ranges
 from explorer.scenario import LINK, first_question
+from explorer.unknowns import influences, ranges
 
 DESIGN = first_question().design
 MADE = batch(DESIGN, optics=["single_mode_fibre", "free_space_na_05"])

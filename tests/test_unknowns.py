@@ -10,8 +10,8 @@ import pytest
 from scipy import stats
 
 from explorer import QUANTITIES, Design, Unknown, evaluate
-from explorer.unknowns import DRAWS, INSIDE, drawn_point, influences, ranges, spread
 from explorer.scenario import first_question
+from explorer.unknowns import DRAWS, INSIDE, drawn_point, influences, ranges, spread
 
 START = first_question().design
 

@@ -11,8 +11,8 @@ from ipywidgets import HTML, Button, Dropdown, VBox
 from ...inputs import INPUTS
 from ...question import Answer
 from ...registry import REGISTRY
-from ...unknowns import Influence
 from ...units import text
+from ...unknowns import Influence
 from ..state import State
 
 NOTHING = "Nothing is given as a range. Type one, such as 3.4–3.9, into the number box of what is not known."

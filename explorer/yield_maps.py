@@ -1,0 +1,68 @@
+"""Maps of the share of devices that pass, from few cells and draws on."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import replace
+from typing import Any
+
+from .design import Requirement
+from .devices import Run, required
+from .maps import Axis, Map, make_map, mesh
+from .sampling import BATCHES
+from .scatter import Spread
+from .yields import PASSING, Yield, grown
+
+#: Cells along an axis of the maps that come before the whole one, of one batch each.
+COARSER = (24, 48)
+
+
+def make_yield_map(
+    point: Mapping[str, Any],
+    x: Axis,
+    y: Axis,
+    scatter: Mapping[str, Spread],
+    requirements: Iterable[Requirement],
+    count: int = 2048,
+    seed: int = 0,
+    correlation: Mapping[Any, float] | None = None,
+    threads: int = 1,
+) -> Map:
+    """The share of devices that pass over two inputs; see `yield_of` and `make_map`.
+
+    `values` holds `passing_share` with `passing_low` and `passing_high`, and `margin` is of the
+    designs themselves, without scatter. Raises InputError.
+    """
+    *_, last = yield_map_steps(
+        point, x, y, scatter, requirements, count, seed, correlation, threads
+    )
+    return last  # type: ignore[return-value]  # the last step always is one
+
+
+def yield_map_steps(
+    point: Mapping[str, Any],
+    x: Axis,
+    y: Axis,
+    scatter: Mapping[str, Spread],
+    requirements: Iterable[Requirement],
+    count: int = 2048,
+    seed: int = 0,
+    correlation: Mapping[Any, float] | None = None,
+    threads: int = 1,
+) -> Iterator[Map | None]:
+    """The same as it grows, from few cells and draws on: a `Map`, or None between two blocks."""
+    wanted = required(requirements)
+    for cells in (*COARSER, max(x.count, y.count)):
+        whole = cells >= max(x.count, y.count)
+        across, up = (replace(axis, count=min(cells, axis.count)) for axis in (x, y))
+        base = make_map(point, across, up, (), wanted)
+        run = Run({**point, **mesh(across, up)}, scatter, wanted, count, seed, correlation)
+        for found in grown(run, threads, BATCHES if whole else 1):
+            yield None if found is None else _drawn(base, found)
+        if whole:
+            return
+
+
+def _drawn(base: Map, found: Yield) -> Map:
+    values = {PASSING: found.share, "passing_low": found.low, "passing_high": found.high}
+    return replace(base, values=values)
