@@ -20,13 +20,16 @@ from .curves import Cut, angles, colours, cut
 from .design import Design
 from .domain import InputError
 from .evaluate import Evaluation
+from .fabrication import Passing, fabrication_key
 from .inputs import INPUTS
 from .maps import FRONTIERS, Axis, Map, make_map, stacked
 from .question import READ_OUT, Answer, Question, fitting_axis
 from .refusals import beyond
 from .registry import REGISTRY, dependencies
-from .sentence import next_step, sentence
-from .unknowns import Influence, influences, open_names, range_steps
+from .sentence import next_step, passing_words, sentence
+from .unknowns import Influence, Range, influences, open_names, range_steps
+from .yield_maps import yield_map_steps
+from .yields import PASSING
 
 #: Longest piece of work between two chances to hear of a newer question [s].
 SLICE = 0.04
@@ -36,6 +39,9 @@ DRAFT = 0.003
 
 #: Longest band of rows of the whole map [s]: a key pressed meanwhile waits no longer.
 BAND = 0.01
+
+#: Cells along an axis of a map of the devices that pass, and devices drawn for each cell.
+YIELD_CELLS, YIELD_DRAWS = 96, 2048
 
 #: Cells along each axis of a draft.
 COARSER = (160, 128, 96, 64)
@@ -75,11 +81,12 @@ class Answers:
 
         First the design, then the map, and after a moment of rest what is not known of it.
         """
-        unknown = bool(open_names(question.design)) or bool(question.ranked)
+        design = question.design
+        more = bool(open_names(design) or question.ranked or design.scatter)
         for answer in self._grown(question):
-            whole = replace(answer, rest=True) if answer.whole and unknown else answer
+            whole = replace(answer, rest=True) if answer.whole and more else answer
             yield whole
-        if unknown:
+        if more:
             yield from self._known(whole)
 
     def _known(self, whole: Answer) -> Iterator[Answer]:
@@ -87,10 +94,10 @@ class Answers:
         design, ranked = whole.question.design, whole.question.ranked
         key = (design.point, design.unknowns, tuple(whole.outcome))
         if self._parts.get("ranges", (None,))[0] != key:
-            found = {}
+            found: dict[str, Range] = {}
             try:
-                for name, around in range_steps(design, whole.outcome):
-                    found[name] = around
+                for name, between in range_steps(design, whole.outcome):
+                    found[name] = between
                     yield whole
             except InputError:  # values within the ranges that cannot go together
                 found = {}
@@ -101,9 +108,25 @@ class Answers:
             yield whole
             asked = (design.point, design.unknowns, ranked)
             ranking = self._part("ranking", asked, lambda: _ranking(design, ranked))
+        passing = around = None
+        fault = ""
+        if design.scatter and design.requirements:
+            made = self._part("passing", fabrication_key(design), lambda: Passing(design))
+            for _ in made.steps():
+                yield whole
+            passing, around, fault = made.share, made.around, made.fault
         free = whole.values["destination"] == "free_space"
-        said = sentence(design, whole.outcome, whole.rows, free, ranges)
-        yield replace(whole, ranges=ranges, ranking=ranking, sentence=said, rest=False)
+        devices = passing_words(design, passing, around) or fault
+        said = sentence(design, whole.outcome, whole.rows, free, ranges, devices)
+        yield replace(
+            whole,
+            ranges=ranges,
+            ranking=ranking,
+            passing=passing,
+            passing_range=around,
+            sentence=said,
+            rest=False,
+        )
 
     def _grown(self, question: Question) -> Iterator[Answer]:
         """The answer without ranges, as it grows."""
@@ -111,6 +134,9 @@ class Answers:
         key = self._map_key(question)
         if "map" in self._parts and self._parts["map"][0] == key:
             yield self._finished(first, self._parts["map"][1])
+            return
+        if question.shown == PASSING:
+            yield from self._passing_map(question, key, first)
             return
         waiting = first
         if self._pace * question.x.count * question.y.count > DRAFT:
@@ -124,6 +150,35 @@ class Answers:
             else:
                 self._parts["map"] = (key, drawn)
                 yield self._finished(first, drawn)
+
+    def _passing_map(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
+        """The map of the devices that pass: coarse at once, the rest after a moment of rest."""
+        _check_ends(question)
+        design = question.design
+        x, y = (
+            replace(axis, count=min(YIELD_CELLS, axis.count)) for axis in (question.x, question.y)
+        )
+        steps = yield_map_steps(
+            design.point,
+            x,
+            y,
+            design.scatter,
+            design.requirements,
+            count=YIELD_DRAWS,
+            correlation=design.correlation,
+            cautions=self._marks(question),
+            lines=tuple(name for name in self._wanted(question) if name != PASSING),
+        )
+        waiting = first
+        for done, drawn in steps:
+            if drawn is not None and done < 1:
+                waiting = replace(self._finished(first, drawn), whole=False, progress=done)
+                yield replace(waiting, rest=waiting.progress == 0)
+            elif drawn is not None:
+                self._parts["map"] = (key, drawn)
+                yield self._finished(first, drawn)
+            else:
+                yield replace(waiting, progress=done)
 
     def _drafted(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
         """A map of fewer cells, as many as DRAFT allows; a moment to rest before the whole one."""
@@ -197,7 +252,7 @@ class Answers:
         values = self._part(
             "values", design.point, lambda: {name: work.value(name) for name in INPUTS}
         )
-        names = (*READ_OUT, *needed, question.shown)
+        names = (*READ_OUT, *needed, *({question.shown} & REGISTRY.quantities.keys()))
         outcome = self._part(
             "outcome", (design.point, names), lambda: {name: _scalar(work, name) for name in names}
         )
@@ -235,7 +290,12 @@ class Answers:
     def _marks(self, question: Question) -> tuple[str, ...]:
         if "hatching" not in question.layers:
             return ()
-        about = dependencies(question.shown)
+        shown = (
+            [entry.quantity for entry in question.design.requirements]
+            if question.shown == PASSING
+            else [question.shown]
+        )
+        about = _needs(*shown)
         return tuple(
             mark.name
             for mark in REGISTRY.cautions.values()
@@ -246,7 +306,9 @@ class Answers:
         design = question.design
         wanted = self._wanted(question)
         marks = self._marks(question)
-        names = _needs(*wanted, *marks, *(entry.quantity for entry in design.requirements))
+        known = [name for name in wanted if name != PASSING]
+        scattering = (design.scatter, design.correlation) if PASSING in wanted else ()
+        names = _needs(*known, *marks, *(entry.quantity for entry in design.requirements))
         names -= {question.x.name, question.y.name}
         return (
             wanted,
@@ -254,6 +316,7 @@ class Answers:
             question.x,
             question.y,
             design.requirements,
+            scattering,
             frozenset(_key(design.point, names)),
         )
 

@@ -250,6 +250,16 @@ class Design:
             unknowns=unknowns,
         )
 
+    def with_scatter(self, name: str, spread: Spread | None) -> Design:
+        """The same design with an input that scatters so, or (None) that no longer scatters."""
+        kept = {key: value for key, value in self.scatter.items() if key != name}
+        if spread is not None:
+            return replace(self, scatter={**self.scatter, name: spread})
+        pairs = {
+            key: value for key, value in self.correlation.items() if name not in key.split("|")
+        }
+        return replace(self, scatter=kept, correlation=pairs)
+
     def without_values(self, *names: str) -> Design:
         """The same design with some inputs back at their defaults."""
         keep = {key: value for key, value in self.point.items() if key not in names}

@@ -89,6 +89,11 @@ class Run:
             found.append((batches, [(strip, span) for strip in strips for span in spans]))
         return found
 
+    @property
+    def blocks(self) -> int:
+        """Tiles of all jobs together."""
+        return sum(len(strip) for _, jobs in self.stages() for strip, _ in jobs)
+
     def strips(self, cells: int) -> list[list[Tile]]:
         """The tiles in strips along the axis on which least has to be worked out anew."""
         along = self._along()

@@ -103,7 +103,7 @@ class Map:
 
     def lines(self, name: str, levels: Sequence[float]) -> list[list[Array]]:
         """Iso-lines of a quantity: for each level the polylines, (n, 2) in fractions of the axes."""
-        return isolines(self.values[name], levels, log=REGISTRY.quantities[name].log)
+        return isolines(self.values[name], levels, log=REGISTRY.shown(name).log)
 
     def outline(self) -> list[Array]:
         """Border of the region that meets every requirement, in fractions of the axes."""

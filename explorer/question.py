@@ -15,6 +15,7 @@ from .maps import Axis, Map
 from .registry import REGISTRY, parameters
 from .sentence import Sentence
 from .unknowns import Influence, Range
+from .yields import PASSING, Yield
 
 #: Quantities that a page always reads out.
 READ_OUT = (
@@ -51,14 +52,13 @@ class Question:
     ranked: str = ""
 
     def __post_init__(self) -> None:
-        known = REGISTRY.quantities.get(self.shown)
-        if known is None:
+        if self.shown not in {*REGISTRY.quantities, PASSING}:
             raise InputError(f"{self.shown!r:.60} is no quantity")
         if self.ranked and getattr(REGISTRY.quantities.get(self.ranked), "kind", "") != "number":
             raise InputError(f"{self.ranked!r:.60} is no quantity whose unknowns can be ranked")
         if self.cut is not None:
             quantity, name = self.cut
-            if quantity not in REGISTRY.quantities or name not in INPUTS:
+            if quantity not in {*REGISTRY.quantities, PASSING} or name not in INPUTS:
                 raise InputError(f"{self.cut!r:.80} names no quantity and input to cut along")
         if self.x.name == self.y.name:
             raise InputError(
@@ -75,8 +75,9 @@ class Answer:
     half-angle along the horizontal axis [rad], or None where that is not the mode volume. hint: the
     next step that the map shows. rest: a draft of the map is there, the whole one can wait. cut_fault:
     why there is no cut though one is asked for. ranges: of each quantity that is read out, from
-    what is not known, and ranking: those unknowns by what they do; None until worked out, which
-    waits for a moment of rest.
+    what is not known, and ranking: those unknowns by what they do. passing: the devices that pass, and
+    passing_range: the range that what is not known leaves their share. All four are None until worked
+    out, which waits for a moment of rest. progress: of a map that is still being worked out, 0..1.
     """
 
     question: Question
@@ -97,6 +98,9 @@ class Answer:
     cut_fault: str = ""
     ranges: Mapping[str, Range] | None = None
     ranking: tuple[Influence, ...] | None = None
+    passing: Yield | None = None
+    passing_range: Range | None = None
+    progress: float | None = None
 
 
 def default_axis(name: str, count: int = 256) -> Axis:

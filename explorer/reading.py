@@ -81,6 +81,29 @@ def _example(unit: str) -> str:
     return "0.5" if unit == "1" else f"20 {unit}"
 
 
+#: A number, a sign that stands for more and less, and a width, which may be a share of the number.
+_SPREAD = re.compile(
+    r"\s*(?P<centre>.*\d.*?)\s*(?:±|\+/-|\+-)\s*(?P<width>[\d.,]+(?:e[−+-]?\d+)?)\s*(?P<unit>.*)"
+)
+
+
+def read_spread(text: str, shown: str) -> tuple[float, float] | None:
+    """SI value and SI width of what a person typed as '637 ± 2 nm' or '100 ± 10 %'.
+
+    A width in % is a share of the value. None where it is no such thing. shown: the unit of numbers
+    without one. Raises ReadingError for what cannot be read.
+    """
+    found = _SPREAD.fullmatch(text)
+    if found is None:
+        return None
+    unit = found["unit"].strip()
+    relative = unit == "%"
+    centre = read_number(f"{found['centre']} {'' if relative else unit}".strip(), shown)
+    if relative:
+        return centre, abs(centre) * read_number(f"{found['width']} %", "1")
+    return centre, read_number(f"{found['width']} {unit}".strip(), shown)
+
+
 #: Two numbers with a dash, dots or a word between them, and a unit behind.
 _RANGE = re.compile(
     r"\s*(?P<low>[−-]?[\d.,]+(?:e[−+-]?\d+)?)\s*(?:–|-|\.\.\.?|…|to)\s*"

@@ -109,7 +109,13 @@ class Registry:
     nodes: dict[str, Node] = field(default_factory=dict)
     quantities: dict[str, Quantity] = field(default_factory=dict)
     cautions: dict[str, Caution] = field(default_factory=dict)
+    #: Shown like a quantity, but of many devices: no formula of a point gives it.
+    collective: dict[str, Quantity] = field(default_factory=dict)
     views: dict[str, dict[str, str]] = field(default_factory=dict)
+
+    def shown(self, name: str) -> Quantity:
+        """What a name that can be shown stands for, of a point or of many devices; KeyError if none."""
+        return self.collective[name] if name in self.collective else self.quantities[name]
 
     def add_node(self, name: str, when: Mapping[str, Any], body: Formula) -> None:
         """Put a body under a name; a second unconditional body for a name is a mistake."""

@@ -17,6 +17,7 @@ from .maps import Axis, Map
 from .registry import REGISTRY
 from .units import text
 from .unknowns import Range, open_names
+from .yields import Share, Yield
 
 #: Where a rate arrives, after "… photons/s".
 ARRIVALS = {
@@ -98,7 +99,7 @@ def quantity_label(name: str, free: bool) -> str:
     """A quantity's label; `free`: the photons are wanted in free space, where no fibre is."""
     if free and name == "rate_in_fibre":
         return "Photons/s behind the optics"
-    return REGISTRY.quantities[name].label
+    return REGISTRY.shown(name).label
 
 
 def _headline(
@@ -171,11 +172,12 @@ def sentence(
     rows: Sequence[Step],
     free: bool,
     ranges: Mapping[str, Range] | None = None,
+    devices: str = "",
 ) -> Sentence:
     """The three lines for a design.
 
     free: the photons are wanted in free space, not in a fibre. ranges: of the quantities, from what
-    is not known, where they are worked out.
+    is not known, where they are worked out. devices: how many of them pass, in words, once that is known.
     """
     around = ranges or {}
     first, *others = design.requirements or (None,)
@@ -184,6 +186,8 @@ def sentence(
         for entry in others
         if entry
     ]
+    if design.scatter and design.requirements:
+        clauses.append(devices or "… of 100 devices pass")
     worst = hindrance(rows, design.evaluation.value("pumping") == "continuous")
     if worst:
         clauses.append(worst)
@@ -194,6 +198,32 @@ def sentence(
             clauses.insert(0, "every requirement is met")
     known = provenance(design, len(open_names(design)) if around else 0)
     return Sentence(_headline(first, outcome, free, around), " · ".join(clauses), met, known)
+
+
+def passing_words(design: Design, passing: Yield | None, around: Range | None = None) -> str:
+    """How many fabricated devices pass: '61 of 100 devices pass (40–75)'; '' where it is not known."""
+    if passing is None:
+        return ""
+    shown = hundred(passing)
+    if around is not None:
+        ends = [f"{100 * end:.0f}" for end in (around.low, around.high)]
+        shown += "" if ends[0] == ends[1] else f" ({'–'.join(ends)})"
+    said = f"{shown} of 100 devices pass"
+    if design.passing is None:
+        return said
+    return f"{said}, {100 * design.passing:.3g} wanted{'' if passing.share >= design.passing else ' ✗'}"
+
+
+def hundred(passing: Yield | Share) -> str:
+    """A share as so many of a hundred; what the draws cannot tell from none or all is said so."""
+    share = float(passing.share)
+    if passing.low == passing.high and share in (0.0, 1.0):  # nothing scatters that matters
+        return "100" if share else "0"
+    if share > 0.995:
+        return "over 99"
+    if share < 0.005:
+        return "under 1"
+    return f"{100 * share:.0f}"
 
 
 def next_step(

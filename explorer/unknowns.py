@@ -122,10 +122,11 @@ def range_steps(
         return
     work = Evaluation(drawn_point(design, count))
     for name in names:
-        yield name, _range(np.asarray(work.result(name), dtype=float))
+        yield name, range_of(np.asarray(work.result(name), dtype=float))
 
 
-def _range(values: Array) -> Range:
+def range_of(values: Array) -> Range:
+    """The range of a quantity from its draws."""
     known = np.sort(values[~np.isnan(values)], axis=None)
     if known.size == 0:
         return Range(float("nan"), float("nan"), 1.0)

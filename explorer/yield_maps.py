@@ -33,7 +33,7 @@ def make_yield_map(
     `values` holds `passing_share` with `passing_low` and `passing_high`, and `margin` is of the
     designs themselves, without scatter. Raises InputError.
     """
-    *_, last = yield_map_steps(
+    *_, (_, last) = yield_map_steps(
         point, x, y, scatter, requirements, count, seed, correlation, threads
     )
     return last  # type: ignore[return-value]  # the last step always is one
@@ -49,20 +49,31 @@ def yield_map_steps(
     seed: int = 0,
     correlation: Mapping[Any, float] | None = None,
     threads: int = 1,
-) -> Iterator[Map | None]:
-    """The same as it grows, from few cells and draws on: a `Map`, or None between two blocks."""
-    wanted = required(requirements)
-    for cells in (*COARSER, max(x.count, y.count)):
-        whole = cells >= max(x.count, y.count)
+    cautions: Iterable[str] = (),
+    lines: Iterable[str] = (),
+) -> Iterator[tuple[float, Map | None]]:
+    """The same as it grows, from few cells and draws on.
+
+    Pairs of the share of the work that is done, 0 to 1, and a `Map`, or None between two blocks. cautions, lines:
+    as `make_map` takes its cautions and its wanted quantities.
+    """
+    wanted, lines, marks = required(requirements), list(lines), list(cautions)
+    most = max(x.count, y.count)
+    for cells in (*(cells for cells in COARSER if cells < most), most):
+        whole = cells == most
         across, up = (replace(axis, count=min(cells, axis.count)) for axis in (x, y))
-        base = make_map(point, across, up, (), wanted)
+        base = make_map(point, across, up, [*lines, *marks], wanted, marks)
         run = Run({**point, **mesh(across, up)}, scatter, wanted, count, seed, correlation)
+        blocks, done = max(run.blocks, 1), 0
         for found in grown(run, threads, BATCHES if whole else 1):
-            yield None if found is None else _drawn(base, found)
-        if whole:
-            return
+            done += found is None
+            share = min(done / blocks, 1.0) if whole else 0.0
+            if found is not None and whole and found.count == found.of:
+                share = 1.0
+            yield share, None if found is None else _drawn(base, found)
 
 
 def _drawn(base: Map, found: Yield) -> Map:
+    """A map of designs with the share of devices that pass in front."""
     values = {PASSING: found.share, "passing_low": found.low, "passing_high": found.high}
-    return replace(base, values=values)
+    return replace(base, values=values | dict(base.values))

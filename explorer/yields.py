@@ -15,7 +15,7 @@ from .design import Design, Requirement
 from .devices import Counts, Job, Run, Tile
 from .domain import InputError, quoted
 from .evaluate import Evaluation
-from .registry import REGISTRY
+from .registry import REGISTRY, Quantity
 from .sampling import BATCHES
 from .scatter import Spread
 
@@ -23,6 +23,20 @@ Array = NDArray[np.float64]
 
 #: The name of the share of devices that pass, where quantities are named.
 PASSING = "passing_share"
+
+REGISTRY.collective[PASSING] = Quantity(
+    PASSING,
+    "%",
+    "Devices that pass",
+    "",
+    "definition",
+    "fabrication",
+    False,
+    "number",
+    (),
+    "",
+    "Share of fabricated devices that meet every requirement, from the scatter of the design.",
+)
 
 #: An interval holds the share with this probability.
 CONFIDENCE = 0.95

@@ -10,11 +10,12 @@ from ipywidgets import Box, Button, Dropdown, FloatSlider, HBox, Label, Text, VB
 from ..design import Design, Origin, written
 from ..inputs import INPUTS
 from ..question import Answer
-from ..reading import ReadingError, read_number, read_range
+from ..reading import ReadingError, read_number, read_range, read_spread
 from ..registry import Input
 from ..sentence import MARKS
 from .records import can_go_back
 from .scales import Scale
+from .spreads import SpreadLine, first_spread
 from .state import State
 
 #: Longest label that takes its symbol along.
@@ -117,16 +118,23 @@ class InputRow(VBox):
         self.slider.add_class("x-slider")
         self.wrong = Label("")
         self.wrong.add_class("x-wrong")
+        self.scatter = Button(
+            description="±", tooltip=f"{self.entry.label} scatters from device to device"
+        )
+        self.scatter.add_class("x-back")
+        self.scatter.add_class("x-scatter")
+        self._line: SpreadLine | None = None
         self.range = Label("", tooltip="Given as a range: not known. Type one number to close it")
         self.range.add_class("x-open")
         self._origin = OriginMark(self, self.label, self.entry)
-        head = HBox([self.label, self.box, self.unit, self.back])
+        head = HBox([self.label, self.box, self.unit, self.scatter, self.back])
         head.add_class("x-head")
         super().__init__([head, self.slider, self.range, self.wrong])
         self.add_class("x-row")
         self.add_class(f"input-{name}")
         self.slider.observe(self._slid, "value")
         self.box.observe(self._typed, "value")
+        self.scatter.on_click(lambda _: state.give_spread(name, first_spread(self.entry)))
         self._follow(state.answer, anew=True)
         state.on_answer(self._follow)
         state.on_problem(self._complain)
@@ -144,7 +152,10 @@ class InputRow(VBox):
         name, text = self.entry.name, change["new"]
         try:
             ends = read_range(text, self.entry.shown)
-            if ends is not None:
+            around = read_spread(text, self.entry.shown)
+            if around is not None:
+                self._state.give_scattering(name, *around)
+            elif ends is not None:
                 self._state.give_range(name, *ends)
             else:
                 self._state.give(**{name: read_number(text, self.entry.shown)})
@@ -167,9 +178,22 @@ class InputRow(VBox):
                 self.slider.value = stop
             self.back.disabled = not can_go_back(answer.question.design, name)
             self._origin.follow(answer.question.design)
+            self._follow_scatter(answer.question.design)
             self.range.value = open_words(answer.question.design, name) or unheard(answer, name)
         finally:
             self._syncing = False
+
+    def _follow_scatter(self, design: Design) -> None:
+        """The line below, made when the input first scatters."""
+        scatters = self.entry.name in design.scatter
+        self.scatter.disabled = scatters
+        if self._line is None and scatters:
+            self._line = SpreadLine(self._state, self.entry.name)
+            self.children = (*self.children[:2], self._line, *self.children[2:])
+        if self._line is not None:
+            self._line.layout.display = "" if scatters else "none"
+            if scatters:
+                self._line.follow(design)
 
     def _complain(self) -> None:
         text = self._state.problems.get(self.entry.name, "")

@@ -13,6 +13,7 @@ from ..question import Answer
 from ..registry import REGISTRY
 from ..sentence import quantity_label
 from ..units import from_si, text
+from ..yields import PASSING
 from .backdrop import Drawn
 from .canvas import AxisScale, ColourScale, Line, Picture
 from .canvas import Label as Note
@@ -72,7 +73,7 @@ def axis_scale(name: str, low: float, high: float, log: bool) -> AxisScale:
 
 def coded(name: str, values: Any) -> Any:
     """Values as the canvas takes them: shown units, codes for words and masks."""
-    quantity = REGISTRY.quantities[name]
+    quantity = REGISTRY.shown(name)
     if quantity.kind == "choice":
         codes = np.full(values.shape, np.nan)
         for code, word in enumerate(quantity.choices):
@@ -80,18 +81,22 @@ def coded(name: str, values: Any) -> Any:
         return codes
     if quantity.unit == "rad":
         return np.degrees(values)
+    if quantity.unit == "%":
+        return 100 * values
     return values
 
 
 def colour_scale(name: str, drawn: Map, free: bool = False) -> ColourScale:
     """Limits of the colours from the map, rounded outwards to 1, 2, 5."""
-    quantity = REGISTRY.quantities[name]
+    quantity = REGISTRY.shown(name)
     title = quantity_label(name, free)
     unit = {"1": "", "rad": "°"}.get(quantity.unit, quantity.unit)
     if quantity.kind == "choice":
         return ColourScale(title, 0, len(quantity.choices) - 1, categories=quantity.choices)
     if quantity.kind == "mask":
         return ColourScale(title, 0, 1, categories=("no", "yes"))
+    if quantity.unit == "%":
+        return ColourScale(title, 0.0, 100.0, "%")
     values = coded(name, drawn.values[name])
     finite = values[np.isfinite(values) & (values > 0 if quantity.log else True)]
     if finite.size == 0:
@@ -126,11 +131,12 @@ def levels(scale: ColourScale) -> list[float]:
 
 def iso_lines(name: str, drawn: Map, scale: ColourScale, layers: frozenset[str]) -> list[Line]:
     """Iso-lines of the shown quantity with their values written along."""
-    quantity = REGISTRY.quantities[name]
+    quantity = REGISTRY.shown(name)
     if "iso" not in layers or quantity.kind != "number":
         return []
     wanted = levels(scale)
-    inside = [np.radians(level) if quantity.unit == "rad" else level for level in wanted]
+    factor = {"rad": np.pi / 180, "%": 0.01}.get(quantity.unit, 1.0)
+    inside = [level * factor for level in wanted]
     return [
         Line("iso", tuple(paths), text(level, quantity.unit, 2), level=shown)
         for level, shown, paths in zip(inside, wanted, drawn.lines(name, inside), strict=True)
@@ -211,8 +217,10 @@ def is_free(answer: Answer) -> bool:
 
 def described(answer: Answer, drawn: Map) -> str:
     """The map in words, for screen readers."""
-    quantity = REGISTRY.quantities[answer.question.shown]
+    quantity = REGISTRY.shown(answer.question.shown)
     value = answer.outcome.get(answer.question.shown)
+    if quantity.name == PASSING:
+        value = answer.passing.share if answer.passing else float("nan")
     here = text(value, quantity.unit) if isinstance(value, float) else str(value)
     region = ""
     if drawn.margin is not None:

@@ -17,7 +17,9 @@ from ..combine import PARTS, with_record
 from ..design import Design, Unknown
 from ..domain import InputError
 from ..question import Answer, Question
-from ..unknowns import spread
+from ..sampling import displaced, draws
+from ..scatter import Spread
+from ..unknowns import spread as drawn_at
 from .records import PLACE, as_published, placed, still_placed
 from .shortlist import Shortlist
 
@@ -93,10 +95,33 @@ class State:
         def change(design: Design) -> Design:
             value = float(design.evaluation.value(name))
             if not low <= value <= high:
-                design = design.with_values(**{name: float(spread(name, Unknown(low, high), 0.5))})
+                design = design.with_values(
+                    **{name: float(drawn_at(name, Unknown(low, high), 0.5))}
+                )
             elif name not in design.point:
                 design = design.with_values(**{name: value})
             return replace(design, unknowns={**design.unknowns, name: Unknown(low, high)})
+
+        self.change(change, (name,))
+
+    def give_spread(self, name: str, spread: Spread | None) -> None:
+        """Say that an input scatters from device to device, or (None) that it no longer does."""
+
+        def change(design: Design) -> Design:
+            if spread is not None:  # refused here, beside the input, where it cannot scatter so
+                displaced(draws({name: spread}, 1), design.point)
+            return design.with_scatter(name, spread)
+
+        self.change(change, (name,))
+
+    def give_scattering(self, name: str, centre: float, width: float) -> None:
+        """Give an input with a normal scatter around it, SI, as a person typed both."""
+
+        def change(design: Design) -> Design:
+            spread = Spread("normal", width)
+            design = design.with_values(**{name: centre})
+            displaced(draws({name: spread}, 1), design.point)
+            return design.with_scatter(name, spread)
 
         self.change(change, (name,))
 
@@ -160,6 +185,14 @@ class State:
         self.question = question
         self._work = self._answers.steps(question)
         self._go_on(first=True)
+
+    def stop(self) -> None:
+        """Leave what is being worked out as it is: the last that was finished stays on the page."""
+        if self._handle is not None:
+            self._handle.cancel()
+        self._handle, self._work = None, None
+        if self.answer.progress is not None:
+            self._tell(replace(self.answer, progress=None, rest=False))
 
     def _go_on(self, first: bool = False) -> None:
         """Work for one slice; the rest waits for its turn on the event loop, if there is one.

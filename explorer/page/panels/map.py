@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 import numpy as np
-from ipywidgets import Button, Dropdown, HBox, Label, ToggleButton, VBox
+from ipywidgets import Button, Dropdown, FloatProgress, HBox, Label, ToggleButton, VBox
 
 from ...inputs import INPUTS
 from ...maps import Map
@@ -60,9 +60,14 @@ class MapPanel(VBox):
         head.add_class("x-maphead")
         layers = HBox(list(self.switches.values()))
         layers.add_class("x-layers")
+        self.working = FloatProgress(min=0.0, max=1.0)
+        self.stop = Button(description="stop", tooltip="Leave the map as it is now")
+        self.progress = HBox([Label("drawing devices"), self.working, self.stop])
+        self.progress.add_class("x-progress")
+        self.progress.layout.display = "none"
         self.canvas = MapCanvas()
         self.canvas.add_class("x-canvas")
-        super().__init__([head, layers, self.canvas])
+        super().__init__([head, layers, self.progress, self.canvas])
         self.add_class("panel-map")
         self._listen()
         state.on_answer(self._draw)
@@ -74,6 +79,7 @@ class MapPanel(VBox):
         self.up.observe(lambda change: self._axis("y", change["new"]), "value")
         self.canvas.observe(self._moved, "point")
         self.canvas.on_mark(self._marked)
+        self.stop.on_click(lambda _: self._state.stop())
         self.home.on_click(lambda _: self._ask(x=Question().x, y=Question().y))
         for name, switch in self.switches.items():
             switch.observe(lambda change, name=name: self._switch(name, change["new"]), "value")
@@ -121,8 +127,18 @@ class MapPanel(VBox):
             if answer.map is not None and (answer.whole or answer.map is not self._map):
                 self._paint(answer, answer.map)
             self._place(answer)
+            self._report(answer)
         finally:
             self._quiet = False
+
+    def _report(self, answer: Answer) -> None:
+        """How far a map is that takes long; the row takes no room where there is nothing to say."""
+        done = answer.progress
+        shown = "none" if done is None else ""
+        if self.progress.layout.display != shown:
+            self.progress.layout.display = shown
+        if done is not None and (abs(done - self.working.value) > 0.02 or done == 0):
+            self.working.value = done
 
     def _place(self, answer: Answer) -> None:
         """Put the point of the canvas where the design is; just outside where it is outside."""
@@ -164,7 +180,8 @@ class MapPanel(VBox):
 
 def _quantities(free: bool) -> list[tuple[str, str]]:
     """The lines of the menu of quantities."""
-    return [(quantity_label(name, free), name) for name in REGISTRY.quantities]
+    names = (*REGISTRY.collective, *REGISTRY.quantities)
+    return [(quantity_label(name, free), name) for name in names]
 
 
 def _inside(fraction: float) -> float:

@@ -1,0 +1,53 @@
+"""The devices of a design that pass, worked out in pieces beside its answer."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import Any
+
+from .design import Design
+from .domain import InputError
+from .unknowns import Range, drawn_point, open_names, range_of
+from .yields import Yield, yield_of, yield_steps
+
+#: Draws of what is not known, and devices of each, for the range of the share that passes.
+UNKNOWN_DRAWS, UNKNOWN_DEVICES = 64, 256
+
+
+def fabrication_key(design: Design) -> tuple[Any, ...]:
+    """What the devices that pass depend on."""
+    return (
+        design.point,
+        design.scatter,
+        design.correlation,
+        design.requirements,
+        design.unknowns,
+    )
+
+
+class Passing:
+    """The devices of a design that pass, and the range that what is not known leaves their share."""
+
+    def __init__(self, design: Design) -> None:
+        self._design = design
+        self.share: Yield | None = None
+        self._grown: Yield | None = None
+        self.around: Range | None = None
+        self.fault = ""
+
+    def steps(self) -> Iterator[None]:
+        """Work it out, in pieces; what is done is kept."""
+        design = self._design
+        asked = (design.scatter, design.requirements)
+        try:
+            if self.share is None and not self.fault:
+                for found in yield_steps(design, *asked, correlation=design.correlation):
+                    self._grown = found
+                    yield
+                self.share = self._grown
+            if self.around is None and open_names(design):
+                point = drawn_point(design, UNKNOWN_DRAWS)
+                drawn = yield_of(point, *asked, UNKNOWN_DEVICES, correlation=design.correlation)
+                self.around = range_of(drawn.share)
+        except InputError as error:  # what scatters cannot there, or ranges that cannot go together
+            self.fault = str(error)
