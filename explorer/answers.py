@@ -22,6 +22,7 @@ from .domain import InputError
 from .evaluate import Evaluation
 from .fabrication import Passing, fabrication_key
 from .inputs import INPUTS
+from .limiting import limits_of_design
 from .maps import FRONTIERS, Axis, Map, make_map, stacked
 from .question import READ_OUT, Answer, Question, fitting_axis
 from .refusals import beyond
@@ -102,12 +103,21 @@ class Answers:
             except InputError:  # values within the ranges that cannot go together
                 found = {}
             self._parts["ranges"] = (key, found)
-        ranges = self._parts["ranges"][1]
+        ranges = self._parts["ranges"][1] if open_names(design) else None
         ranking = None
         if ranked:
             yield whole
             asked = (design.point, design.unknowns, ranked)
             ranking = self._part("ranking", asked, lambda: _ranking(design, ranked))
+        limits = None
+        if ranked:
+            asked = (fabrication_key(design), ranked)
+            known = self._parts.get("limits", (None, None))
+            if known[0] != asked or not known[1].whole:
+                for limits in limits_of_design(design, ranked):
+                    self._parts["limits"] = (asked, limits)
+                    yield whole
+            limits = self._parts["limits"][1]
         passing = around = None
         fault = ""
         if design.scatter and design.requirements:
@@ -116,12 +126,13 @@ class Answers:
                 yield whole
             passing, around, fault = made.share, made.around, made.fault
         free = whole.values["destination"] == "free_space"
-        devices = passing_words(design, passing, around) or fault
+        devices = passing_words(design, passing, around, fault)
         said = sentence(design, whole.outcome, whole.rows, free, ranges, devices)
         yield replace(
             whole,
             ranges=ranges,
             ranking=ranking,
+            limits=limits,
             passing=passing,
             passing_range=around,
             sentence=said,

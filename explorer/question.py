@@ -11,6 +11,7 @@ from .curves import Angles, Colours, Cut
 from .design import Design
 from .domain import InputError
 from .inputs import INPUTS
+from .limiting import Limits
 from .maps import Axis, Map
 from .registry import REGISTRY, parameters
 from .sentence import Sentence
@@ -75,8 +76,9 @@ class Answer:
     half-angle along the horizontal axis [rad], or None where that is not the mode volume. hint: the
     next step that the map shows. rest: a draft of the map is there, the whole one can wait. cut_fault:
     why there is no cut though one is asked for. ranges: of each quantity that is read out, from
-    what is not known, and ranking: those unknowns by what they do. passing: the devices that pass, and
-    passing_range: the range that what is not known leaves their share. All four are None until worked
+    what is not known, and ranking: those unknowns by what they do; limits: what holds the
+    ranked quantity back. passing: the devices that pass, and
+    passing_range: the range that what is not known leaves their share. All five are None until worked
     out, which waits for a moment of rest. progress: of a map that is still being worked out, 0..1.
     """
 
@@ -98,6 +100,7 @@ class Answer:
     cut_fault: str = ""
     ranges: Mapping[str, Range] | None = None
     ranking: tuple[Influence, ...] | None = None
+    limits: Limits | None = None
     passing: Yield | None = None
     passing_range: Range | None = None
     progress: float | None = None

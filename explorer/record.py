@@ -19,12 +19,14 @@ from .design import Decision, Design, Origin, Requirement, Unknown
 from .domain import InputError, quoted
 from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
+from .limits import headroom
 from .registry import REGISTRY
 from .scatter import Spread
 from .schema import FOLLOWS, FORMAT, VERSION, problems
 from .units import si_unit, text, to_si, unit_name
 from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
+from .yields import Share, Yield, yield_of
 
 #: Largest record that is read [bytes].
 LARGEST = 20_000_000
@@ -155,6 +157,7 @@ def record_of(design: Design) -> Json:
         "requirements": [_requirement(entry) for entry in design.requirements],
         "scatter": {name: _spread(name, spread) for name, spread in design.scatter.items()},
         "correlation": {pair: number_in(value, "1") for pair, value in design.correlation.items()},
+        **({} if design.passing is None else {"passing": number_in(design.passing, "1")}),
         "unknowns": {
             name: {
                 "low": _number(unknown.low, INPUTS[name].shown),
@@ -169,9 +172,42 @@ def record_of(design: Design) -> Json:
         "data": dict(design.data),
         "outcome": _outcome(design),
         "budget": _budget(design),
+        **_devices(design),
+        "headroom": _headroom(design),
         "cautions": _cautions(design),
         "sources": _sources(design),
     }
+
+
+def _devices(design: Design) -> Json:
+    """The share of devices that pass, where something scatters and something is required."""
+    if not (design.scatter and design.requirements):
+        return {}
+    try:
+        found = yield_of(
+            design, design.scatter, design.requirements, correlation=design.correlation
+        )
+    except InputError:  # what cannot scatter there
+        return {}
+
+    def part(share: Share | Yield) -> Json:
+        values = {"value": share.share, "low": share.low, "high": share.high}
+        return {name: number_in(float(value), "1") for name, value in values.items()}
+
+    by = {name: part(share) for name, share in found.by_requirement.items()}
+    return {"yield": {"share": part(found), "count": found.count, "by_requirement": by}}
+
+
+def _headroom(design: Design) -> list[Json]:
+    """What each step of the budget would give if it alone were ideal."""
+    return [
+        {
+            "step": row.step,
+            "headroom": number_in(row.headroom, "1"),
+            "alone": number_in(row.alone, "1"),
+        }
+        for row in headroom(design, "rate_detected")
+    ]
 
 
 def _cautions(design: Design) -> list[Json]:
@@ -340,6 +376,7 @@ def _design(record: Json) -> Design:
         correlation={pair: value_of(value, "1") for pair, value in record["correlation"].items()},
         unknowns={name: _read_unknown(name, entry) for name, entry in record["unknowns"].items()},
         origins={name: Origin(**entry) for name, entry in record["origins"].items()},
+        passing=value_of(record["passing"], "1") if "passing" in record else None,
         name=record["name"],
         note=record["note"],
         decision=Decision(**record["decision"]),

@@ -13,6 +13,7 @@ from typing import Any
 from .combine import with_record
 from .design import Design, Origin, Requirement
 from .question import Question
+from .scatter import Spread
 
 EMITTER = "terrylene_crystal"
 OPTIC = "single_mode_fibre"
@@ -34,6 +35,14 @@ DEVICE = {
     "repetition_rate": 160e6,
     "excitations_per_pulse": 1.2,
     "background_per_pulse": 0.002,
+}
+
+#: How the devices would differ, invented.
+SCATTER = {
+    "resonance_wavelength": Spread("normal", 3e-9),
+    "quality_factor": Spread("lognormal", 0.1),
+    "mode_volume": Spread("lognormal", 0.1),
+    "lateral_offset": Spread("radial", 40e-9),
 }
 
 #: The link that the source is for, invented: from it and the key rate the wanted rate follows.
@@ -65,5 +74,6 @@ def first_question() -> Question:
         published,
         point={**published.point, **DEVICE},
         origins={**published.origins, **typed},
+        scatter=SCATTER,
     )
     return Question(design=design)

@@ -156,7 +156,7 @@ def _step() -> Json:
 
 
 def _open_slots() -> Json:
-    """Slots that a record may carry and this version does not fill itself."""
+    """Slots that a record may carry or not."""
     interval = _object(
         {"value": _NUMBER, "low": _NUMBER, "high": _NUMBER, "unit": _TEXT}, ["value"]
     )
@@ -180,6 +180,7 @@ def _open_slots() -> Json:
             "description": "bounds of a search",
         },
         "shown": {"type": "object", "description": "what the page showed"},
+        "passing": {"type": "number", "description": "share of devices that must pass"},
     }
 
 

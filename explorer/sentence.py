@@ -61,6 +61,18 @@ class Sentence:
     known: str = ""
 
 
+@dataclass(frozen=True)
+class Devices:
+    """How many devices pass, for the headline, and what is missed of it, for the line below."""
+
+    passing: str = ""
+    missed: str = ""
+
+
+#: Nothing is said of devices.
+NOT_ASKED = Devices()
+
+
 def _count(value: float, around: Range | None = None) -> str:
     size, word = next((pair for pair in _MULTIPLES if value >= 0.9995 * pair[0]), (1.0, ""))
     scaled = around and Range(around.low / size, around.high / size)
@@ -172,7 +184,7 @@ def sentence(
     rows: Sequence[Step],
     free: bool,
     ranges: Mapping[str, Range] | None = None,
-    devices: str = "",
+    devices: Devices = NOT_ASKED,
 ) -> Sentence:
     """The three lines for a design.
 
@@ -186,8 +198,8 @@ def sentence(
         for entry in others
         if entry
     ]
-    if design.scatter and design.requirements:
-        clauses.append(devices or "… of 100 devices pass")
+    if devices.missed:
+        clauses.append(devices.missed)
     worst = hindrance(rows, design.evaluation.value("pumping") == "continuous")
     if worst:
         clauses.append(worst)
@@ -197,21 +209,28 @@ def sentence(
         if met:
             clauses.insert(0, "every requirement is met")
     known = provenance(design, len(open_names(design)) if around else 0)
-    return Sentence(_headline(first, outcome, free, around), " · ".join(clauses), met, known)
+    headline = _headline(first, outcome, free, around)
+    if devices.passing:
+        headline = f"{headline.removesuffix('.')}; {devices.passing}."
+    return Sentence(headline, " · ".join(clauses), met, known)
 
 
-def passing_words(design: Design, passing: Yield | None, around: Range | None = None) -> str:
-    """How many fabricated devices pass: '61 of 100 devices pass (40–75)'; '' where it is not known."""
+def passing_words(
+    design: Design, passing: Yield | None, around: Range | None = None, fault: str = ""
+) -> Devices:
+    """How many fabricated devices pass: '61 (40–75) of 100 devices pass', and what is said beside."""
     if passing is None:
-        return ""
+        return Devices("", f"devices that pass: {fault}" if fault else "")
     shown = hundred(passing)
     if around is not None:
         ends = [f"{100 * end:.0f}" for end in (around.low, around.high)]
         shown += "" if ends[0] == ends[1] else f" ({'–'.join(ends)})"
-    said = f"{shown} of 100 devices pass"
-    if design.passing is None:
-        return said
-    return f"{said}, {100 * design.passing:.3g} wanted{'' if passing.share >= design.passing else ' ✗'}"
+    wanted = design.passing
+    missed = wanted is not None and passing.share < wanted
+    return Devices(
+        f"{shown} of 100 devices pass",
+        f"{100 * (wanted or 0):.3g} of 100 wanted ✗" if missed else "",
+    )
 
 
 def hundred(passing: Yield | Share) -> str:

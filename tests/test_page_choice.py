@@ -19,7 +19,7 @@ from explorer.combine import combined, with_record
 from explorer.page import candidate_rows
 from explorer.page.panels.candidates import CandidatesPanel
 from explorer.page.panels.keylink import KeyLinkPanel
-from explorer.page.panels.measure import MeasurePanel
+from explorer.page.panels.limits import LimitsPanel
 from explorer.page.shortlist import LETTERS, Shortlist, short_name
 from explorer.page.state import State
 from explorer.page.table import pack
@@ -267,14 +267,14 @@ def test_ranges_wait_for_rest_and_come_by_themselves() -> None:
 
 def test_the_ranking_is_made_only_while_it_is_open() -> None:
     state = small()
-    panel = MeasurePanel(state)
+    panel = LimitsPanel(state)
     assert state.answer.ranking is None
-    panel.head.click()
+    panel.opened(True)
     assert state.answer.ranking == influences(state.question.design, "rate_in_fibre")
     assert "Optics transmission" in panel.list.value
     panel.quantity.value = "g2_zero"
     assert state.answer.ranking == influences(state.question.design, "g2_zero")
-    panel.head.click()
+    panel.opened(False)
     assert state.question.ranked == ""
 
 

@@ -19,13 +19,15 @@ from .panels.emitter import EmitterPanel
 from .panels.files import FilesPanel
 from .panels.headline import HeadlinePanel
 from .panels.keylink import KeyLinkPanel
+from .panels.limits import LimitsPanel
 from .panels.map import MapPanel
-from .panels.measure import MeasurePanel
+from .panels.search import SearchPanel
 from .panels.shortlist import ShortlistPanel
 from .panels.values import ValuesPanel
 from .panels.wanted import WantedPanel
 from .sheets import Sheets
 from .state import State
+from .views import Views
 
 
 def _seat(name: str, *panels: Box) -> VBox:
@@ -45,6 +47,10 @@ class Explorer(Box):
         sheets = Sheets(
             {"Candidates": CandidatesPanel(state), "Published devices": DevicesPanel(state)}
         )
+        light = (BudgetPanel(state), AnglesPanel(state), ColoursPanel(state), CutPanel(state))
+        self.views = Views(
+            {"light": light, "limits": [LimitsPanel(state)], "search": [SearchPanel(state)]}
+        )
         shelf = HBox([sheets.buttons, ShortlistPanel(state), FilesPanel(state)])
         shelf.add_class("x-shelf")
         super().__init__(
@@ -59,14 +65,7 @@ class Explorer(Box):
                     ValuesPanel(state),
                 ),
                 _seat("middle", MapPanel(state)),
-                _seat(
-                    "right",
-                    BudgetPanel(state),
-                    AnglesPanel(state),
-                    ColoursPanel(state),
-                    CutPanel(state),
-                    MeasurePanel(state),
-                ),
+                _seat("right", self.views),
                 sheets,
                 _seat("foot", shelf, CautionsPanel(state)),
             ]

@@ -15,7 +15,7 @@ from ..registry import Input
 from ..sentence import MARKS
 from .records import can_go_back
 from .scales import Scale
-from .spreads import SpreadLine, first_spread
+from .spreads import SpreadLine, first_spread, scatter_tooltip, spread_words
 from .state import State
 
 #: Longest label that takes its symbol along.
@@ -118,23 +118,23 @@ class InputRow(VBox):
         self.slider.add_class("x-slider")
         self.wrong = Label("")
         self.wrong.add_class("x-wrong")
-        self.scatter = Button(
-            description="±", tooltip=f"{self.entry.label} scatters from device to device"
-        )
-        self.scatter.add_class("x-back")
+        self.scatter = Button(description="±")
         self.scatter.add_class("x-scatter")
+        self._opened = False
         self._line: SpreadLine | None = None
         self.range = Label("", tooltip="Given as a range: not known. Type one number to close it")
         self.range.add_class("x-open")
         self._origin = OriginMark(self, self.label, self.entry)
-        head = HBox([self.label, self.box, self.unit, self.scatter, self.back])
+        head = HBox([self.label, self.box, self.unit, self.back])
         head.add_class("x-head")
-        super().__init__([head, self.slider, self.range, self.wrong])
+        slide = HBox([self.slider, self.scatter])
+        slide.add_class("x-slide")
+        super().__init__([head, slide, self.range, self.wrong])
         self.add_class("x-row")
         self.add_class(f"input-{name}")
         self.slider.observe(self._slid, "value")
         self.box.observe(self._typed, "value")
-        self.scatter.on_click(lambda _: state.give_spread(name, first_spread(self.entry)))
+        self.scatter.on_click(self._pressed)
         self._follow(state.answer, anew=True)
         state.on_answer(self._follow)
         state.on_problem(self._complain)
@@ -183,16 +183,30 @@ class InputRow(VBox):
         finally:
             self._syncing = False
 
+    def _pressed(self, _: Button) -> None:
+        """Open or close the line of the scatter; an input that has none begins with one."""
+        name = self.entry.name
+        self._opened = not self._opened or name not in self._state.question.design.scatter
+        if self._opened and name not in self._state.question.design.scatter:
+            self._state.give_spread(name, first_spread(self.entry))
+        self._follow_scatter(self._state.question.design)
+
     def _follow_scatter(self, design: Design) -> None:
-        """The line below, made when the input first scatters."""
-        scatters = self.entry.name in design.scatter
-        self.scatter.disabled = scatters
-        if self._line is None and scatters:
+        """What the button says, and the line below, made when it is first opened."""
+        spread = design.scatter.get(self.entry.name)
+        words = spread_words(self.entry.name, spread)
+        if self.scatter.description != words:
+            self.scatter.description = words
+            (self.scatter.add_class if spread else self.scatter.remove_class)("x-on")
+            self.scatter.tooltip = scatter_tooltip(self.entry, spread)
+        if self._line is None and spread is not None and self._opened:
             self._line = SpreadLine(self._state, self.entry.name)
             self.children = (*self.children[:2], self._line, *self.children[2:])
         if self._line is not None:
-            self._line.layout.display = "" if scatters else "none"
-            if scatters:
+            shown = "" if spread is not None and self._opened else "none"
+            if self._line.layout.display != shown:
+                self._line.layout.display = shown
+            if spread is not None:
                 self._line.follow(design)
 
     def _complain(self) -> None:

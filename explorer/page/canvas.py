@@ -209,12 +209,14 @@ class MapCanvas(anywidget.AnyWidget):
     """The map with its draggable design point.
 
     ``point`` is ``[fx, fy]`` in axis fractions, both ways; outside 0..1 the ring waits at the
-    border. ``description`` is the text alternative of the map.
+    border. ``proposal`` is empty, or a design that is not taken yet: its ``place`` in axis fractions,
+    a ``text`` beside it, and the ``path`` of those it was chosen from. ``description`` is the text alternative of the map.
     """
 
     _esm = Path(__file__).parent / "map.js"
     packed = traitlets.Bytes(b"").tag(sync=True)
     point = traitlets.List(traitlets.Float(), default_value=[0.5, 0.5]).tag(sync=True)
+    proposal = traitlets.Dict(default_value={}).tag(sync=True)
     description = traitlets.Unicode("Map of one quantity over two inputs").tag(sync=True)
     # The browser numbers its moves and the kernel repeats the last number it has worked through:
     # until then a point from the kernel is an echo of an older move, and the ring ignores it.

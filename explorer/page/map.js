@@ -398,6 +398,7 @@ class MapView {
     follow("change:packed", () => this.takePicture());
     follow("change:point", () => this.adoptPoint());
     follow("change:move_done", () => this.adoptPoint());
+    follow("change:proposal", () => { if (this.picture) this.paintPoint(); });
     follow("change:description", () => this.describe());
     this.on(surface, "pointerdown", (event) => this.press(event));
     this.on(surface, "pointermove", (event) => this.pointerMoves(event));
@@ -1062,6 +1063,7 @@ class MapView {
     const pen = this.pen(this.top);
     const [x, y] = this.ringPlace();
     const stroke = (colour, width) => { pen.strokeStyle = colour; pen.lineWidth = width; pen.stroke(); };
+    this.paintProposal(pen, x, y, stroke);
     pen.lineCap = "butt";
     pen.beginPath();
     pen.moveTo(plot.x, y);
@@ -1084,6 +1086,46 @@ class MapView {
     pen.fill();
     stroke(theme.paper, 1.5);
     this.tellPoint();
+  }
+
+  // A design that is not taken yet: the way to it, its place, and the others it was chosen from
+  paintProposal(pen, x, y, stroke) {
+    const { place, path, text } = this.model.get("proposal");
+    this.host.dataset.proposal = place ? place.map((fraction) => fraction.toFixed(6)).join() : "";
+    if (!place) return;
+    const { theme, plot } = this;
+    const at = ([fx, fy]) => [this.toX(clamped(fx)), this.toY(clamped(fy))];
+    const [px, py] = at(place);
+    if (path?.length > 1) {
+      for (const [colour, width] of [[theme.paper, 6], [theme.ink, 2.5]]) {
+        pen.beginPath();
+        for (const step of path) pen.lineTo(...at(step));
+        stroke(colour, width);
+      }
+    }
+    const far = Math.hypot(px - x, py - y);
+    if (far > 26) {
+      const [ux, uy] = [(px - x) / far, (py - y) / far];
+      for (const [colour, width] of [[theme.paper, 5], [theme.red, 2.5]]) {
+        pen.beginPath();
+        pen.moveTo(x + 13 * ux, y + 13 * uy);
+        pen.lineTo(px - 11 * ux, py - 11 * uy);
+        stroke(colour, width);
+      }
+    }
+    const side = 9; // a square on its corner: not yet the design
+    pen.beginPath();
+    for (const [dx, dy] of [[0, -side], [side, 0], [0, side], [-side, 0]]) pen.lineTo(px + dx, py + dy);
+    pen.closePath();
+    pen.fillStyle = theme.paper;
+    pen.fill();
+    stroke(theme.paper, 7);
+    stroke(theme.red, 3);
+    if (!text) return;
+    const wide = this.textWidth(text, this.size, 600) + 8;
+    const room = { left: px - 16 - wide > plot.x, right: px + 16 + wide < plot.x + plot.w };
+    const left = room.left && (x > px || !room.right) ? px - 16 - wide : px + 16;
+    this.tag(pen, text, { x: left, y: py - 11, w: wide, h: 22 }, { weight: 600, colour: theme.red });
   }
 
   tellPoint() {

@@ -59,6 +59,24 @@ def width_words(name: str, spread: Spread) -> str:
     return f"{value:.6g}"
 
 
+def spread_words(name: str, spread: Spread | None) -> str:
+    """A scatter in the fewest signs: '±3 nm', '±10 %'; '±' where there is none."""
+    if spread is None:
+        return "±"
+    if spread.kind == "direction":
+        return "± any"
+    unit = unit_of(name, spread.kind)
+    number = 100 * spread.width if unit == "%" else from_si(spread.width, unit)
+    return f"±{number:.3g} {'' if unit == '1' else unit}".rstrip()
+
+
+def scatter_tooltip(entry: Input, spread: Spread | None) -> str:
+    """What the button of a scatter says when one asks."""
+    if spread is None:
+        return f"{entry.label} scatters from device to device: press to say how much"
+    return f"{entry.label} scatters from device to device: {spread.kind}, {SPREADS[spread.kind]}"
+
+
 def other_kind(name: str, spread: Spread, kind: str, centre: float) -> Spread:
     """The same scatter in another kind: a width of a logarithm becomes one of the value, and back."""
     if kind == spread.kind or "direction" in (kind, spread.kind):
@@ -113,7 +131,7 @@ class SpreadLine(HBox):
         unit = unit_of(self._name, spread.kind)
         self.unit.value = "" if unit == "1" or spread.kind == "direction" else unit
         self.box.tooltip = SPREADS[spread.kind]
-        self.box.layout.visibility = "hidden" if spread.kind == "direction" else ""
+        self.box.layout.visibility = "hidden" if spread.kind == "direction" else "visible"
         self._syncing = False
 
     def _chosen(self, change: dict[str, Any]) -> None:

@@ -20,6 +20,7 @@ from ..question import Answer, Question
 from ..sampling import displaced, draws
 from ..scatter import Spread
 from ..unknowns import spread as drawn_at
+from .proposal import Proposal, found_by_search
 from .records import PLACE, as_published, placed, still_placed
 from .shortlist import Shortlist
 
@@ -42,6 +43,8 @@ class State:
         self.seats: set[str] = set()
         self._cause = ""
         self.shortlist = Shortlist()
+        self.proposal: Proposal | None = None
+        self._onlookers: list[Callable[[], None]] = []
         self._answers = Answers()
         self._listeners: list[Listener] = []
         self._complaints: list[Callable[[], None]] = []
@@ -157,6 +160,36 @@ class State:
             return
         same = design == self.question.design
         self._go(self.question if same else replace(self.question, design=design), names, cause)
+
+    def on_proposal(self, listener: Callable[[], None]) -> None:
+        """Call a listener when `proposal` changed."""
+        self._onlookers.append(listener)
+
+    def propose(self, proposal: Proposal | None) -> None:
+        """Show a design that may be taken, or (None) none."""
+        if proposal is not self.proposal:
+            self.proposal = proposal
+            for listener in self._onlookers:
+                listener()
+
+    def take_proposal(self) -> None:
+        """Make the proposed design the present one."""
+        if self.proposal is None:
+            return
+        point, design = self.proposal.point, self.question.design
+        moved = {
+            name: value
+            for name, value in point.items()
+            if name not in design.point or design.point[name] != value
+        }
+        self.propose(None)
+        self.change(lambda design: found_by_search(design, moved), moved)
+
+    def settle(self, name: str) -> None:
+        """Drop what was said beside a name."""
+        if name in self.problems:
+            self.problems = {key: said for key, said in self.problems.items() if key != name}
+            self._complain()
 
     def refuse(self, name: str, message: str) -> None:
         """Say beside an input (or, with '', on the page) why something was not done."""

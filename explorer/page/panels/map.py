@@ -71,6 +71,7 @@ class MapPanel(VBox):
         self.add_class("panel-map")
         self._listen()
         state.on_answer(self._draw)
+        state.on_proposal(self._propose)
         state.on_problem(lambda: self._draw(state.answer))  # what was refused is not shown
 
     def _listen(self) -> None:
@@ -128,8 +129,14 @@ class MapPanel(VBox):
                 self._paint(answer, answer.map)
             self._place(answer)
             self._report(answer)
+            self._propose()
         finally:
             self._quiet = False
+
+    def _propose(self) -> None:
+        """A design that may be taken, where it lies on this map."""
+        proposal, question = self._state.proposal, self._state.question
+        self.canvas.proposal = {} if proposal is None else proposal.on(question.x, question.y)
 
     def _report(self, answer: Answer) -> None:
         """How far a map is that takes long; the row takes no room where there is nothing to say."""

@@ -15,6 +15,7 @@ from ...reading import ReadingError, read_number
 from ...registry import REGISTRY
 from ...sentence import quantity_label
 from ...units import text
+from ...yields import PASSING
 from ..state import State
 
 #: Units in which a limit is typed where none is shown.
@@ -36,9 +37,10 @@ class WantedPanel(VBox):
     def __init__(self, state: State) -> None:
         self._state = state
         self._drawn: Any = None
+        self._shown = ""
         title = Label("Wanted")
         title.add_class("x-title")
-        options = [("add…", "")] + [
+        options = [("add…", ""), (REGISTRY.shown(PASSING).label, PASSING)] + [
             (quantity.label, quantity.name)
             for quantity in REGISTRY.quantities.values()
             if quantity.kind == "number"
@@ -48,9 +50,10 @@ class WantedPanel(VBox):
         head = HBox([title, self.more])
         head.add_class("x-head")
         self.rows = VBox()
+        self.share = self._share_row()
         self.wrong = Label("")
         self.wrong.add_class("x-wrong")
-        super().__init__([head, self.rows, self.wrong])
+        super().__init__([head, self.rows, self.share, self.wrong])
         self.add_class("panel-wanted")
         self.more.observe(self._add, "value")
         state.on_answer(self._draw)
@@ -70,6 +73,46 @@ class WantedPanel(VBox):
         for line, entry in zip(self.rows.children, entries, strict=True):
             met = bool(entry.met(answer.outcome[entry.quantity]))
             (line.remove_class if met else line.add_class)("x-missed")
+
+        self._show_share(answer)
+
+    def _share_row(self) -> HBox:
+        """The share of devices that must pass, hidden while none is asked for."""
+        name = REGISTRY.shown(PASSING).label
+        label = Label(name, tooltip=REGISTRY.shown(PASSING).doc)
+        label.add_class("x-name")
+        self.box = Text(continuous_update=False, tooltip="Share of devices that must pass")
+        self.box.add_class("x-number")
+        drop = Button(description="×", tooltip=f"No longer require {name}")
+        drop.add_class("x-back")
+        drop.on_click(lambda _: self._require_share(None))
+        self.box.observe(lambda change: self._share_typed(change["new"]), "value")
+        sense = Label("≥")
+        sense.add_class("x-sense")
+        line = HBox([label, sense, self.box, drop])
+        line.add_class("x-head")
+        line.add_class(f"wanted-{PASSING}")
+        return line
+
+    def _show_share(self, answer: Answer) -> None:
+        wanted = answer.question.design.passing
+        self.share.layout.display = "none" if wanted is None else ""
+        if wanted is not None:
+            self._shown = f"{100 * wanted:.4g} %"
+            self.box.value = self._shown
+            missed = answer.passing is not None and answer.passing.share < wanted
+            (self.share.add_class if missed else self.share.remove_class)("x-missed")
+
+    def _share_typed(self, typed: str) -> None:
+        if typed == self._shown:
+            return
+        try:
+            self._require_share(read_number(typed, "%"))
+        except ReadingError as error:
+            self._state.refuse(SEAT, str(error))
+
+    def _require_share(self, share: float | None) -> None:
+        self._state.change(lambda design: replace(design, passing=share), {SEAT})
 
     def _complain(self) -> None:
         said = self._state.problems.get(SEAT, "")
@@ -115,6 +158,9 @@ class WantedPanel(VBox):
         if not name:
             return
         self.more.value = ""
+        if name == PASSING:
+            self._require_share(0.8)
+            return
         value = self._state.reading(name)
         self._replace(None, Requirement(name, at_least=0.0 if math.isnan(value) else value))
 

@@ -1,0 +1,43 @@
+"""A design that was found and is not taken yet."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+
+from ..design import Design, Origin
+from ..evaluate import Evaluation
+from ..maps import Axis
+
+
+@dataclass(frozen=True, eq=False)
+class Proposal:
+    """point: complete, SI. words: beside it on the map. path: the designs that it was chosen from."""
+
+    point: Mapping[str, Any]
+    words: str
+    path: tuple[Mapping[str, Any], ...] = ()
+
+    def on(self, x: Axis, y: Axis) -> dict[str, Any]:
+        """Where it lies on a map, in fractions of the axes, as the canvas takes it."""
+        return {
+            "place": _place(self.point, x, y),
+            "path": [_place(point, x, y) for point in self.path],
+            "text": self.words,
+        }
+
+
+def _place(point: Mapping[str, Any], x: Axis, y: Axis) -> list[float]:
+    work = Evaluation(point)
+    found = [float(axis.fraction(float(work.value(axis.name)))) for axis in (x, y)]
+    return [float(value) for value in np.clip(np.nan_to_num(found), -0.05, 1.05)]
+
+
+def found_by_search(design: Design, moved: Mapping[str, Any]) -> Design:
+    """A design with the values that a search found."""
+    taken = design.with_values(**moved)
+    origins = {name: Origin("typed", "", "found by a search") for name in moved}
+    return replace(taken, origins={**taken.origins, **origins})

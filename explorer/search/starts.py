@@ -1,0 +1,111 @@
+"""Where the descents of a search start: an even sample of the box, and the best of it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from functools import lru_cache
+from itertools import product
+
+import numpy as np
+
+from .descent import CHUNK
+from .scale import Array
+from .space import Space
+from .task import Seen, Task
+
+SEED = 20011
+
+#: Starts lie at least this far apart in the box, on one axis at least.
+APART = 0.12
+
+#: Most bounded inputs of which all corners are tried.
+CORNERS = 6
+
+
+@lru_cache(maxsize=32)
+def even(count: int, columns: int, seed: int = SEED) -> Array:
+    """A scrambled Sobol sequence, (count, columns); count: a power of two."""
+    from scipy.stats import qmc
+
+    drawn = np.asarray(qmc.Sobol(columns, scramble=True, rng=seed).random(count))
+    drawn.setflags(write=False)
+    return drawn
+
+
+def sample(space: Space) -> Array:
+    """Places to look at first: near the given point and all over the box, (rows, n)."""
+    size = len(space.names)
+    home = np.clip(space.start, 0.0, 1.0)
+    count = 1024 if size <= 2 else 2048
+    drawn = even(count, size + 1)
+    # Every other one lies nearer to the given point, by up to a thousand times.
+    shrink = np.where(np.arange(count) % 2 == 0, 1.0, 10 ** (-3 * drawn[:, -1]))
+    spread = home + (drawn[:, :-1] - home) * shrink[:, None]
+    # Half of both with the inputs that follow others where they would be unless given.
+    half = np.arange(count) % 4 < 2
+    spread = np.where(half[:, None], spread, space.following(spread))
+    lines = np.tile(home, (size * 33, 1))
+    for at in range(size):
+        lines[at * 33 : (at + 1) * 33, at] = np.linspace(0, 1, 33)
+    corners = np.array(list(product((0.0, 1.0), repeat=size))) if size <= CORNERS else lines[:0]
+    first = np.stack([home, space.following(home[None])[0]])
+    return np.concatenate([first, space.following(lines), lines, corners, spread])
+
+
+def screen(task: Task, places: Array) -> Iterator[None]:
+    """Look at places, some at a time."""
+    for at in range(0, len(places), CHUNK):
+        task.look(places[at : at + CHUNK])
+        yield
+
+
+def merged(seen: list[Seen]) -> Seen:
+    """Everything seen as one."""
+    return Seen(
+        *(
+            np.concatenate([getattr(entry, name) for entry in seen])
+            for name in ("places", "margins", "goals", "met", "far")
+        )
+    )
+
+
+def chosen(task: Task, count: int, goal: int = 0) -> Array:
+    """Starts for a descent (k, n): the best designs, the least unmet, and some between; spread out."""
+    seen = merged(task.seen)
+    objective = task.objective(seen, goal)
+    unmet = np.maximum(-seen.worst, 0.0)
+    rankings = [
+        np.where(seen.met, objective, np.inf),
+        np.where(seen.met, np.inf, unmet + 1e-6 * objective),
+        np.where(seen.met, np.inf, objective + 0.3 * unmet),
+    ]
+    picked = [0, 1]  # the given point within the bounds, and the same with what follows others
+    for share, ranking in zip((0.45, 0.8, 1.0), rankings, strict=True):
+        _pick(picked, seen.places, ranking, round(share * (count - 2)) + 2)
+    _pick(picked, seen.places, unmet, count)
+    return np.array(seen.places[picked])
+
+
+def _pick(picked: list[int], places: Array, ranking: Array, count: int) -> None:
+    """Add the best of a ranking that lie apart from those picked, until there are `count`."""
+    order = np.argsort(ranking, kind="stable")
+    order = order[np.isfinite(ranking[order])][:1024]
+    gap = np.full(len(order), np.inf)
+    for at in picked:
+        gap = np.minimum(gap, np.abs(places[order] - places[at]).max(axis=1))
+    while len(picked) < count:
+        free = np.flatnonzero(gap > APART)
+        if not free.size:
+            return
+        at = int(order[free[0]])
+        picked.append(at)
+        gap = np.minimum(gap, np.abs(places[order] - places[at]).max(axis=1))
+
+
+def around(places: Array, count: int) -> Array:
+    """Places near those given, at distances from a millionth to the whole of the box."""
+    size = places.shape[1]
+    drawn = even(count, size + 1, SEED + 1)
+    reach = 10 ** (-6 * drawn[:, -1])
+    centre = places[np.arange(count) % len(places)]
+    return np.clip(centre + (2 * drawn[:, :-1] - 1) * reach[:, None], 0.0, 1.0)
