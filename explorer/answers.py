@@ -20,15 +20,14 @@ from .curves import Cut, angles, colours, cut
 from .design import Design
 from .domain import InputError
 from .evaluate import Evaluation
-from .fabrication import Passing, fabrication_key
+from .fabrication import passing_cut
 from .inputs import INPUTS
-from .limiting import limits_of_design
+from .later import CUT_CELLS, Kept, Later
 from .maps import FRONTIERS, Axis, Map, make_map, stacked
 from .question import READ_OUT, Answer, Question, fitting_axis
 from .refusals import beyond
 from .registry import REGISTRY, dependencies
-from .sentence import next_step, passing_words, sentence
-from .unknowns import Influence, Range, influences, open_names, range_steps
+from .sentence import next_step, sentence
 from .yield_maps import yield_map_steps
 from .yields import PASSING
 
@@ -43,6 +42,9 @@ BAND = 0.01
 
 #: Cells along an axis of a map of the devices that pass, and devices drawn for each cell.
 YIELD_CELLS, YIELD_DRAWS = 96, 2048
+
+#: Places along a cut of the devices that pass, and devices drawn at each, while a hand moves.
+ROUGH_CELLS, ROUGH_DEVICES = 61, 256
 
 #: Cells along each axis of a draft.
 COARSER = (160, 128, 96, 64)
@@ -64,13 +66,9 @@ class Answers:
     """
 
     def __init__(self) -> None:
-        self._parts: dict[str, tuple[Any, Any]] = {}
+        self._kept = Kept()
+        self._later = Later()
         self._pace = 0.0  # seconds a cell of the last map
-
-    def _part(self, name: str, key: Any, make: Any) -> Any:
-        if name not in self._parts or self._parts[name][0] != key:
-            self._parts[name] = (key, make())
-        return self._parts[name][1]
 
     def answer(self, question: Question) -> Answer:
         """The whole answer. Raises InputError."""
@@ -82,69 +80,19 @@ class Answers:
 
         First the design, then the map, and after a moment of rest what is not known of it.
         """
-        design = question.design
-        more = bool(open_names(design) or question.ranked or design.scatter)
+        more = self._later.wanted(question)
         for answer in self._grown(question):
             whole = replace(answer, rest=True) if answer.whole and more else answer
             yield whole
         if more:
-            yield from self._known(whole)
-
-    def _known(self, whole: Answer) -> Iterator[Answer]:
-        """The ranges that the unknowns of the design leave, and their ranking if it is asked for."""
-        design, ranked = whole.question.design, whole.question.ranked
-        key = (design.point, design.unknowns, tuple(whole.outcome))
-        if self._parts.get("ranges", (None,))[0] != key:
-            found: dict[str, Range] = {}
-            try:
-                for name, between in range_steps(design, whole.outcome):
-                    found[name] = between
-                    yield whole
-            except InputError:  # values within the ranges that cannot go together
-                found = {}
-            self._parts["ranges"] = (key, found)
-        ranges = self._parts["ranges"][1] if open_names(design) else None
-        ranking = None
-        if ranked:
-            yield whole
-            asked = (design.point, design.unknowns, ranked)
-            ranking = self._part("ranking", asked, lambda: _ranking(design, ranked))
-        limits = None
-        if ranked:
-            asked = (fabrication_key(design), ranked)
-            known = self._parts.get("limits", (None, None))
-            if known[0] != asked or not known[1].whole:
-                for limits in limits_of_design(design, ranked):
-                    self._parts["limits"] = (asked, limits)
-                    yield whole
-            limits = self._parts["limits"][1]
-        passing = around = None
-        fault = ""
-        if design.scatter and design.requirements:
-            made = self._part("passing", fabrication_key(design), lambda: Passing(design))
-            for _ in made.steps():
-                yield whole
-            passing, around, fault = made.share, made.around, made.fault
-        free = whole.values["destination"] == "free_space"
-        devices = passing_words(design, passing, around, fault)
-        said = sentence(design, whole.outcome, whole.rows, free, ranges, devices)
-        yield replace(
-            whole,
-            ranges=ranges,
-            ranking=ranking,
-            limits=limits,
-            passing=passing,
-            passing_range=around,
-            sentence=said,
-            rest=False,
-        )
+            yield from self._later.steps(whole)
 
     def _grown(self, question: Question) -> Iterator[Answer]:
         """The answer without ranges, as it grows."""
         first = self._without_map(question)
         key = self._map_key(question)
-        if "map" in self._parts and self._parts["map"][0] == key:
-            yield self._finished(first, self._parts["map"][1])
+        if self._kept.has("map", key):
+            yield self._finished(first, self._kept.last("map"))
             return
         if question.shown == PASSING:
             yield from self._passing_map(question, key, first)
@@ -159,7 +107,7 @@ class Answers:
             if drawn is None:
                 yield waiting
             else:
-                self._parts["map"] = (key, drawn)
+                self._kept.put("map", key, drawn)
                 yield self._finished(first, drawn)
 
     def _passing_map(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
@@ -186,24 +134,24 @@ class Answers:
                 waiting = replace(self._finished(first, drawn), whole=False, progress=done)
                 yield replace(waiting, rest=waiting.progress == 0)
             elif drawn is not None:
-                self._parts["map"] = (key, drawn)
+                self._kept.put("map", key, drawn)
                 yield self._finished(first, drawn)
             else:
                 yield replace(waiting, progress=done)
 
     def _drafted(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
         """A map of fewer cells, as many as DRAFT allows; a moment to rest before the whole one."""
-        if self._parts.get("draft", (None, None))[0] != key:
+        if not self._kept.has("draft", key):
             counts = [count for count in COARSER if self._pace * count**2 <= DRAFT]
             count = counts[0] if counts else COARSER[-1]
             if self._pace * count**2 > SLICE:  # slow even so: the readouts do not wait for it
-                last = self._parts["map"][1] if "map" in self._parts else None
+                last = self._kept.last("map")
                 yield replace(first, map=last if self._same_place(last, question) else None)
             x, y = (
                 replace(axis, count=min(count, axis.count)) for axis in (question.x, question.y)
             )
-            self._parts["draft"] = (key, self._timed_map(question, x, y))
-        drawn = self._parts["draft"][1]
+            self._kept.put("draft", key, self._timed_map(question, x, y))
+        drawn = self._kept.last("draft")
         yield replace(self._finished(first, drawn), whole=False, rest=True)
 
     def _finished(self, first: Answer, drawn: Map) -> Answer:
@@ -214,10 +162,12 @@ class Answers:
         place = (float(first.values[drawn.x.name]), float(first.values[drawn.y.name]))
         requirements = first.question.design.requirements
         free = first.values["destination"] == "free_space"
-        said: str = self._part(  # the key holds the map, or another one could take its identity
-            "hint",
-            (drawn, place, requirements, free),
-            lambda: next_step(drawn, place, requirements, free),
+        said: str = (
+            self._kept.part(  # the key holds the map, or another one could take its identity
+                "hint",
+                (drawn, place, requirements, free),
+                lambda: next_step(drawn, place, requirements, free),
+            )
         )
         return said
 
@@ -259,38 +209,40 @@ class Answers:
     def _without_map(self, question: Question) -> Answer:
         design = question.design
         needed = {entry.quantity for entry in design.requirements}
-        work = self._part("work", design.point, lambda: design.evaluation)
-        values = self._part(
+        work = self._kept.part("work", design.point, lambda: design.evaluation)
+        values = self._kept.part(
             "values", design.point, lambda: {name: work.value(name) for name in INPUTS}
         )
         names = (*READ_OUT, *needed, *({question.shown} & REGISTRY.quantities.keys()))
-        outcome = self._part(
+        outcome = self._kept.part(
             "outcome", (design.point, names), lambda: {name: _scalar(work, name) for name in names}
         )
-        marks = self._part(
+        marks = self._kept.part(
             "cautions",
             design.point,
             lambda: tuple(name for name in REGISTRY.cautions if bool(work.value(name))),
         )
-        rows = self._part("rows", design.point, lambda: tuple(budget_rows(work)))
+        rows = self._kept.part("rows", design.point, lambda: tuple(budget_rows(work)))
         free = work.value("destination") == "free_space"
-        said = self._part(
+        said = self._kept.part(
             "sentence",
             (design.point, design.requirements, design.origins),
             lambda: sentence(design, outcome, rows, free),
         )
-        wide = self._part(
+        wide = self._kept.part(
             "angles", _key(design.point, _needs("collected_share")), lambda: angles(work)
         )
         spectral = _needs("filter_share", "other_filter_share", "cavity_share")
-        seen = self._part("colours", _key(design.point, spectral), lambda: colours(work))
-        beam = self._part(
+        seen = self._kept.part("colours", _key(design.point, spectral), lambda: colours(work))
+        beam = self._kept.part(
             "half_angles",
             (question.x, _key(design.point, _needs("half_angle") - {question.x.name})),
             lambda: _along(design, question.x, "half_angle"),
         )
         width = float(work.value("emission_width"))
-        line, fault = self._part("cut", (question.cut, design.point), lambda: _cut(work, question))
+        line, fault = self._kept.part(
+            "cut", (question.cut, design.point), lambda: _cut(work, question)
+        )
         seen_first = (question, values, outcome, marks, rows, said, wide, seen, width, beam)
         return Answer(*seen_first, map=None, cut=line, whole=False, cut_fault=fault)
 
@@ -332,13 +284,6 @@ class Answers:
         )
 
 
-def _ranking(design: Design, quantity: str) -> tuple[Influence, ...]:
-    try:
-        return influences(design, quantity)
-    except InputError:  # values within the ranges that cannot go together
-        return ()
-
-
 def _scalar(work: Evaluation, name: str) -> Any:
     return np.asarray(work.result(name)).reshape(()).item()
 
@@ -374,7 +319,10 @@ def _cut(work: Evaluation, question: Question) -> tuple[Cut | None, str]:
     quantity, name = question.cut
     axes = {}
     try:
-        axes["the cut"] = fitting_axis(question.design, name, 121)
+        cells = ROUGH_CELLS if quantity == PASSING else CUT_CELLS
+        axes["the cut"] = fitting_axis(question.design, name, cells)
+        if quantity == PASSING:
+            return passing_cut(question.design, axes["the cut"], ROUGH_DEVICES), ""
         return cut(work, quantity, name, axes["the cut"].values), ""
     except InputError as error:
         return None, beyond(axes, question.design.point, error) if axes else str(error)

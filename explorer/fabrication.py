@@ -5,13 +5,23 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import Any
 
+from .curves import Cut
 from .design import Design
 from .domain import InputError
+from .maps import Axis
 from .unknowns import Range, drawn_point, open_names, range_of
 from .yields import Yield, yield_of, yield_steps
 
 #: Draws of what is not known, and devices of each, for the range of the share that passes.
 UNKNOWN_DRAWS, UNKNOWN_DEVICES = 64, 256
+
+
+def passing_cut(design: Design, axis: Axis, count: int) -> Cut:
+    """The share of devices that pass along an input through a design. Raises InputError."""
+    point = {**design.point, axis.name: axis.values}
+    asked = (design.scatter, design.requirements)
+    found = yield_of(point, *asked, count, correlation=design.correlation)
+    return Cut(axis.values, found.share)
 
 
 def fabrication_key(design: Design) -> tuple[Any, ...]:

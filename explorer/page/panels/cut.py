@@ -39,7 +39,8 @@ class CutPanel(VBox):
             description="▸ Cut", tooltip="A quantity against an input: open or close"
         )
         self.head.add_class("x-group")
-        quantities = [(e.label, e.name) for e in REGISTRY.quantities.values() if e.kind == "number"]
+        known = [*REGISTRY.collective.values(), *REGISTRY.quantities.values()]
+        quantities = [(e.label, e.name) for e in known if e.kind == "number"]
         numbers = [(e.label, name) for name, e in INPUTS.items() if not e.whole]
         self.quantity = Dropdown(options=quantities, value="rate_in_fibre", tooltip="Quantity")
         self.along = Dropdown(options=numbers, value="quality_factor", tooltip="Input along")
@@ -90,7 +91,7 @@ class CutPanel(VBox):
             self._trace(answer, seen, *wanted)
 
     def _trace(self, answer: Answer, seen: Cut, quantity_name: str, name: str) -> None:
-        quantity, entry = REGISTRY.quantities[quantity_name], INPUTS[name]
+        quantity, entry = REGISTRY.shown(quantity_name), INPUTS[name]
         y, unit = fitted(seen.quantity, quantity.unit)
         kept = np.isfinite(y)
         x, y = np.array([from_si(float(v), entry.shown) for v in seen.values])[kept], y[kept]
@@ -140,6 +141,8 @@ def fitted(values: Any, unit: str) -> tuple[np.ndarray, str]:
     y = np.asarray(values, dtype=float)
     if unit == "rad":
         return np.degrees(y), "°"
+    if unit == "%":
+        return 100 * y, "%"
     family = si_unit(unit)
     if family not in FITTING:
         return y, "" if unit == "1" else unit
