@@ -22,6 +22,7 @@ LAYERS = (
     ("devices",),
     ("yields",),
     ("yield_maps", "limits", "search", "sweep"),
+    ("sturdy",),
     ("candidates", "limiting", "prediction", "curves", "sentence", "refusals"),
     ("fabrication",),
     ("question",),

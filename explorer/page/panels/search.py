@@ -14,6 +14,7 @@ from ...inputs import INPUTS
 from ...question import Answer
 from ...registry import REGISTRY
 from ...search import Found, Front, Goal, best_steps, front_steps, nearest_steps
+from ...sturdy import sturdiest_steps
 from ...units import text
 from ..bind import typed
 from ..bounds import BoundsBox
@@ -25,6 +26,7 @@ from ..work import Work
 KINDS = {
     "nearest that meets all": "nearest",
     "best in one quantity": "best",
+    "most devices that pass": "sturdy",
     "trade-off of two": "front",
 }
 
@@ -109,6 +111,8 @@ class SearchPanel(VBox):
         kind = self.kind.value
         if kind == "nearest":
             return nearest_steps(design.point, design.requirements, bounds)
+        if kind == "sturdy":
+            return sturdiest_steps(design, bounds)
         if kind == "best":
             return best_steps(design.point, self.goals[0].goal, design.requirements, bounds)
         goals = tuple(row.goal for row in self.goals)
@@ -188,13 +192,13 @@ class SearchPanel(VBox):
     def _propose(
         self, point: Mapping[str, Any], met: bool, path: tuple[Mapping[str, Any], ...] = ()
     ) -> None:
-        words = {"nearest": "nearest", "best": "best", "front": "trade-off"}[self.kind.value]
+        words = {"sturdy": "sturdiest", "front": "trade-off"}.get(self.kind.value, self.kind.value)
         self._state.propose(Proposal(dict(point), words if met else "closest", path))
 
     def _show(self) -> None:
         """What can be pressed now."""
         busy, found = self._work.busy, self._state.proposal is not None
-        count = {"nearest": 0, "best": 1, "front": 2}[self.kind.value]
+        count = {"best": 1, "front": 2}.get(self.kind.value, 0)
         for index, row in enumerate(self.goals):
             row.layout.display = "" if index < count else "none"
         for widget, shown in (
