@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 
 from ..design import Design, Origin
+from ..domain import InputError
 from ..evaluate import Evaluation
 from ..maps import Axis
 
@@ -37,7 +38,24 @@ def _place(point: Mapping[str, Any], x: Axis, y: Axis) -> list[float]:
 
 
 def found_by_search(design: Design, moved: Mapping[str, Any]) -> Design:
-    """A design with the values that a search found."""
-    taken = design.with_values(**moved)
+    """A design with the values that a search found, in as few digits as keep what it meets."""
+    exact = design.with_values(**moved)
+    taken = exact
+    for digits in (3, 4, 5, 6, 8):
+        try:
+            short = design.with_values(
+                **{name: float(f"{value:.{digits}g}") for name, value in moved.items()}
+            )
+        except InputError:  # rounded over the end of a range
+            continue
+        if _met(short) >= _met(exact):
+            taken = short
+            break
     origins = {name: Origin("typed", "", "found by a search") for name in moved}
     return replace(taken, origins={**taken.origins, **origins})
+
+
+def _met(design: Design) -> int:
+    """How many requirements a design meets."""
+    found = design.outcome([entry.quantity for entry in design.requirements])
+    return sum(bool(entry.met(found[entry.quantity])) for entry in design.requirements)

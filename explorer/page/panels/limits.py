@@ -25,6 +25,9 @@ NOTHING = "Nothing is given as a range. Type one, such as 3.4–3.9, into the nu
 
 STILL = "Nothing scatters. Press ± beside a slider to say how much an input differs from device to device."
 
+#: A share of devices below this is none [of 1].
+LEAST = 5e-4
+
 #: Most levers that are listed.
 LEVERS = 6
 
@@ -95,7 +98,7 @@ def improvements(limits: Limits) -> str:
             '<table class="x-budget x-ranked"><caption>photons/s if this step alone were ideal</caption>'
             f"<tbody>{rows}</tbody></table>"
         )
-    levers = [row for row in limits.levers if row.lever][:LEVERS]
+    levers = [row for row in limits.levers if row.lever and not _at_its_best(row)][:LEVERS]
     if levers:
         label = REGISTRY.quantities[limits.quantity].label
         rows = "".join(_lever(row, abs(levers[0].value)) for row in levers)
@@ -123,14 +126,17 @@ def _step(row: Headroom) -> str:
     )
 
 
+def _at_its_best(row: Elasticity) -> bool:
+    """Whether an input stands at the end of its range that is better for more of the quantity."""
+    return (row.side, row.value > 0) in (("below", True), ("above", False))
+
+
 def _lever(row: Elasticity, largest: float) -> str:
-    """An input by what a small change of it gives; at its upper end, what it takes."""
+    """An input by what a small change of it gives."""
     sign = "+" if row.value > 0 else "−"
     size = f"{sign}{text(abs(row.value), '1', 2)} %"
-    note = f"{row.words}."
-    if row.side == "below":
-        note += " It is at its upper end."
-    return _bar(INPUTS[row.name].label, 100 * abs(row.value) / largest, "", size, note)
+    length = 100 * abs(row.value) / largest
+    return _bar(INPUTS[row.name].label, length, "", size, f"{row.words}.", row.value < 0)
 
 
 def fabrication(limits: Limits, passing: Yield | None) -> str:
@@ -141,11 +147,11 @@ def fabrication(limits: Limits, passing: Yield | None) -> str:
             _bar(_requirement(name), 100 * float(share.share), "", _percent(share))
             for name, share in passing.by_requirement.items()
         )
-        error = 50 * (float(passing.high) - float(passing.low))
-        sure = f" ±{error:.1g}" if error > 0 else ""
+        ends = f"{100 * float(passing.low):.3g}–{100 * float(passing.high):.3g}"
+        sure = f" (95 %: {ends})" if passing.low < passing.high else ""
         parts.append(
-            '<table class="x-budget x-ranked"><caption>of 100 devices '
-            f"{hundred(passing)}{sure} meet everything, and so many each requirement alone</caption>"
+            f'<p class="x-first">{hundred(passing)} of 100 devices meet everything{sure}.</p>'
+            '<table class="x-budget x-ranked"><caption>devices that meet each requirement</caption>'
             f"<tbody>{rows}</tbody></table>"
         )
     if limits.costs is not None:
@@ -164,12 +170,15 @@ def _requirement(name: str) -> str:
 
 def costs(found: SpreadCosts) -> str:
     """What each scatter costs, in devices of a hundred."""
+    if not any(abs(row.cost) >= LEAST for row in found.rows):
+        still = f"Without any scatter {100 * found.still.value:.3g} of 100 would pass"
+        return f'<p class="x-plain">{still}: no single scatter changes that.</p>'
     rows = "".join(
         _bar(
             INPUTS[row.name].label,
             100 * max(row.cost, 0.0),
             "",
-            f"{100 * row.cost:+.2g}".replace("-", "−") if abs(row.cost) >= 5e-4 else "·",
+            f"{100 * row.cost:+.2g}".replace("-", "−") if abs(row.cost) >= LEAST else "·",
             f"alone it would leave {100 * row.only.value:.3g} of 100 devices that pass",
         )
         for row in found.rows
@@ -181,11 +190,14 @@ def costs(found: SpreadCosts) -> str:
     )
 
 
-def _bar(name: str, length: float, inside: str, factor: str, title: str = "") -> str:
-    """A row of a ranked list: name, bar, words beside it, figure."""
+def _bar(
+    name: str, length: float, inside: str, factor: str, title: str = "", less: bool = False
+) -> str:
+    """A row of a ranked list: name, bar, words beside it, figure; less: the bar takes."""
+    tone = ' class="x-less"' if less else ""
     return (
         f'<tr><th scope=row title="{escape(title)}">{escape(name)}</th>'
-        f'<td class="x-bar"><b style="width:{min(length, 100.0):.1f}%"></b>'
+        f'<td class="x-bar"><b{tone} style="width:{min(length, 100.0):.1f}%"></b>'
         f'<span class="{"x-in" if length > 60 else "x-out"}" style="--at:{length:.1f}%">{escape(inside)}</span></td>'
         f'<td class="x-factor">{escape(factor)}</td></tr>'
     )
