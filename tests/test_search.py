@@ -182,7 +182,8 @@ def test_the_nearest_quality_for_strong_coupling() -> None:
 def test_a_window_far_finer_than_the_sample(quality: float) -> None:
     """Overlap = κ/(κ+Γ) / (1 + (2δ/(κ+Γ))²); at Q 1e8 a millionth of the bounds' spacing of samples.
 
-    From the red the nearest resonance is on that side of the emission, at the δ that solves it.
+    From the red the nearest resonance is on that side of the emission, at the δ that solves it. A
+    hundredth of it is at most 1e-9 of the distance, and not worth another step.
     """
     point = {
         "quality_factor": quality,
@@ -202,7 +203,9 @@ def test_a_window_far_finer_than_the_sample(quality: float) -> None:
     delta = brentq(beyond, 0, 1e15, xtol=1e-3, rtol=1e-12)
     assert found.met
     detuning = frequency(650e-9) - frequency(found.point["resonance_wavelength"])
-    assert detuning == pytest.approx(delta, rel=CLOSE)
+    assert detuning == pytest.approx(delta, rel=0.01)
+    edge = 2 * math.pi * speed_of_light / (frequency(650e-9) - delta)
+    assert found.distance == pytest.approx((680e-9 - edge) / 1700e-9, rel=1e-8)
 
 
 def test_the_border_of_what_has_a_number() -> None:
@@ -339,12 +342,20 @@ def test_what_follows_others_keeps_following() -> None:
     wanted = [at_most("resonator_linewidth", frequency(900e-9) / 100)]
     found = nearest({"emission_wavelength": 650e-9}, wanted, {"emission_wavelength": (4e-7, 2e-6)})
     assert found.point == {"emission_wavelength": pytest.approx(900e-9, rel=CLOSE)}
-    both = nearest(
-        {"quality_factor": 1e7},
-        [at_least("spectral_overlap", 0.9)],
-        {"resonance_wavelength": (400e-9, 1000e-9), "emission_wavelength": (400e-9, 1000e-9)},
-    )
-    assert both.met is False or "resonance_wavelength" not in both.point
+
+
+def test_what_would_follow_elsewhere_is_written_down() -> None:
+    """The filter follows the resonance; where only that is to move, the filter must be held back."""
+    point = {"filter_width": 2e-9, "quality_factor": 1e3}
+    bounds = {"resonance_wavelength": (640e-9, 700e-9), "filter_centre": (640e-9, 660e-9)}
+    wanted = [
+        at_most("resonator_linewidth", frequency(690e-9) / 1e3),
+        at_least("rate_at_lens", 1.0),
+    ]
+    found = nearest(point, wanted, bounds)
+    assert found.met
+    assert set(found.changes) == {"resonance_wavelength"}
+    assert found.point["filter_centre"] == 650e-9
 
 
 def test_two_wavelengths_that_must_agree_closely() -> None:
@@ -374,7 +385,9 @@ def test_bounds_may_be_unknowns_lists_or_arrays() -> None:
 
 
 def test_the_sentence_names_what_changed_or_what_is_missed() -> None:
-    met = nearest({"quality_factor": 20.0}, [at_least("peak_purcell", 3)], {"quality_factor": (1, 1e4)})
+    met = nearest(
+        {"quality_factor": 20.0}, [at_least("peak_purcell", 3)], {"quality_factor": (1, 1e4)}
+    )
     assert met.reason == "Every requirement is met with Quality factor 20 → 39.48."
     missed = nearest(
         {"quality_factor": 20.0},
@@ -386,7 +399,9 @@ def test_the_sentence_names_what_changed_or_what_is_missed() -> None:
         "Not reachable within these bounds: Beam half-angle is furthest: at best 10.0° of 5.00° "
         "allowed; none of these inputs changes it."
     )
-    few = nearest({"quality_factor": 20.0}, [at_least("peak_purcell", 3)], {"quality_factor": (1, 30)})
+    few = nearest(
+        {"quality_factor": 20.0}, [at_least("peak_purcell", 3)], {"quality_factor": (1, 30)}
+    )
     assert few.failing == at_least("peak_purcell", 3)
     assert few.point["quality_factor"] == 30  # the compromise with the largest worst margin
     assert few.reason == (
@@ -416,7 +431,9 @@ def test_the_best_of_a_design_that_cannot_be_better() -> None:
     least = best({}, Goal("peak_purcell", most=False), (), {"quality_factor": (10, 1e4)})
     assert least.point["quality_factor"] == 10
     assert "the smallest found" in least.reason
-    none = best({}, "brightness_gain", (), {"numerical_aperture": (1.55, 1.6), "medium_index": (1.8, 2)})
+    none = best(
+        {}, "brightness_gain", (), {"numerical_aperture": (1.55, 1.6), "medium_index": (1.8, 2)}
+    )
     assert not none.met
     assert none.reason == "Brightness gain has no number within these bounds."
 
@@ -446,9 +463,7 @@ def test_an_empty_front_says_why() -> None:
 
 
 def test_a_front_of_goals_that_agree_is_one_design() -> None:
-    front = pareto_front(
-        {}, ("peak_purcell", "cavity_share"), (), {"mode_volume": (0.5, 100)}
-    )
+    front = pareto_front({}, ("peak_purcell", "cavity_share"), (), {"mode_volume": (0.5, 100)})
     assert [dict(point) for point in front.points] == [{"mode_volume": 0.5}]
     assert front.reason.startswith("One design is the best in both")
 
@@ -674,8 +689,8 @@ def holds_what_it_says(found: Found, requirements: Any, bounds: Any) -> None:
             assert entry.met(float(work.result(entry.quantity))), entry
 
 
-def meeting(problem: Problem, count: int, seed: int) -> tuple[int, float]:
-    """Of random designs within the bounds how many meet everything, and how near the nearest lies."""
+def by_chance(problem: Problem, count: int, seed: int, *wanted: str) -> tuple[Any, Any]:
+    """How far random designs within the bounds lie that meet everything, and quantities of them."""
     rng = np.random.default_rng(seed)
     origin, entries, far = Evaluation(problem.point), {}, np.zeros(count)
     for name, (low, high) in problem.bounds.items():
@@ -687,7 +702,8 @@ def meeting(problem: Problem, count: int, seed: int) -> tuple[int, float]:
     work, met = Evaluation({**problem.point, **entries}), np.ones(count, dtype=bool)
     for entry in problem.requirements:
         met &= entry.met(work.result(entry.quantity))
-    return int(met.sum()), math.sqrt(far[met].min()) if met.any() else math.inf
+    values = [np.broadcast_to(work.result(name), count)[met] for name in wanted]
+    return np.sqrt(far[met]), np.array(values)
 
 
 def search_by_chance(seeds: range, count: int) -> int:
@@ -697,25 +713,60 @@ def search_by_chance(seeds: range, count: int) -> int:
         problem = drawn(seed)
         found = nearest(problem.point, problem.requirements, problem.bounds)
         holds_what_it_says(found, problem.requirements, problem.bounds)
-        hits, distance = meeting(problem, count, seed)
+        distances, _ = by_chance(problem, count, seed)
         if found.met:
             # A part in a thousand: the nearest may lie on a wrinkle of the numbers.
-            assert found.distance <= distance * (1 + CLOSE), seed
+            assert found.distance <= distances.min(initial=math.inf) * (1 + CLOSE), seed
         else:
-            assert hits == 0, (seed, found.reason)
+            assert distances.size == 0, (seed, found.reason)
             out += 1
     return out
 
 
 def test_random_problems() -> None:
     """None of 4,000 random designs meets what is said to be out of reach, or is nearer."""
-    assert 5 < search_by_chance(range(40), 4000) < 35
+    assert 5 < search_by_chance(range(30), 4000) < 25
 
 
 @pytest.mark.slow
 def test_many_random_problems() -> None:
     """The same of 200 problems and 20,000 random designs each: none was missed."""
     assert 50 < search_by_chance(range(200), 20000) < 150
+
+
+@pytest.mark.parametrize("most", [True, False])
+def test_no_random_design_is_better_than_the_best(most: bool) -> None:
+    for seed in range(3000, 3015):
+        problem = drawn(seed)
+        goal = Goal(WANTED[seed % len(WANTED)], most=most)
+        found = best(problem.point, goal, problem.requirements, problem.bounds)
+        holds_what_it_says(found, problem.requirements, problem.bounds)
+        _, (values,) = by_chance(problem, 4000, seed, goal.quantity)
+        values = values[~np.isnan(values)]
+        assert found.met or not values.size, seed
+        if values.size:
+            top = values.max() if most else values.min()
+            assert found.value is not None
+            assert (found.value - top) * (1 if most else -1) >= -CLOSE * abs(top), seed
+
+
+def test_no_random_design_beats_a_front() -> None:
+    """None of 20,000 is better in both goals than a design of the front by a thousandth."""
+    problem = Problem(
+        {**START.point, "biexciton_yield": 0.1},
+        {"quality_factor": (5, 1e4), "mode_volume": (0.05, 100), "excitations_per_pulse": (0.1, 5)},
+        [at_most("half_angle", math.radians(30))],
+        {},
+    )
+    goals = ("rate_in_fibre", Goal("g2_zero", most=False))
+    front = pareto_front(problem.point, goals, problem.requirements, problem.bounds, count=10)
+    assert len(front.points) == 10
+    for point in front.points:
+        made = Found(point, met=True, reason="", distance=0.0)
+        holds_what_it_says(made, problem.requirements, problem.bounds)
+    _, (rates, purities) = by_chance(problem, 20000, 1, "rate_in_fibre", "g2_zero")
+    for rate, purity in front.values:
+        assert not np.any((rates > rate * (1 + CLOSE)) & (purities < purity * (1 - CLOSE)))
 
 
 def hidden(seed: int, width: float) -> tuple[Problem, list[Requirement]]:
@@ -743,7 +794,7 @@ def not_found(seeds: range, width: float) -> list[int]:
 
 def test_hidden_designs_are_found() -> None:
     """Windows of ± a thousandth for up to three quantities at once, met by a place that is known."""
-    assert not_found(range(1000, 1030), 1e-3) == []
+    assert not_found(range(1000, 1020), 1e-3) == []
 
 
 @pytest.mark.slow
@@ -756,7 +807,10 @@ def test_many_hidden_designs_are_found(width: float) -> None:
     ("wanted", "bounds"),
     [
         # Shares and overlaps are at most 1.
-        ([at_least("cavity_share", 1.001)], {"quality_factor": (1, 1e9), "mode_volume": (1e-4, 10)}),
+        (
+            [at_least("cavity_share", 1.001)],
+            {"quality_factor": (1, 1e9), "mode_volume": (1e-4, 10)},
+        ),
         ([at_least("placement", 1.001)], {"lateral_offset": (0, 5e-7), "axial_offset": (0, 5e-7)}),
         # F = 3Q/(4π²V) at its best corner, missed by a thousandth.
         (

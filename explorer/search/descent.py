@@ -22,14 +22,14 @@ FIRST, FINEST = 0.25, 1e-13
 #: Rounds after which a start is left where it is.
 ROUNDS = 40
 
-#: A start rests when its step is below this part of the box.
-STILL = 1e-8
+#: A start rests when its step is below this part of the box, or its gain below this part of its merit.
+STILL, LITTLE = 1e-8, 1e-9
 
 #: Starts that go for the same and came this close are one.
 SAME = 1e-4
 
-#: Places in one evaluation.
-CHUNK = 128
+#: Places in one evaluation, and starts whose steps are worked out between two pauses.
+CHUNK, FEW = 128, 8
 
 #: places (rows, n) in 0..1, problem of each row -> objective and margins (rows, 1 + m), all numbers.
 Outcome = Callable[[Array, NDArray[np.int64]], Array]
@@ -102,45 +102,46 @@ class Descent:
 
     def _probe(self, who: NDArray[np.int64]) -> Iterator[None]:
         """Find over what length each axis is a parabola, where a round came to nothing."""
-        here = self.places[who]
-        steps = probes(self.grain)
-        offsets = np.clip(here[:, None] + steps, 0, 1) - here[:, None]
+        offsets = probes(self.places[who], self.grain)
         fine = resolved((yield from self._around(who, offsets)), self.grain)
         changed = np.any(fine != self.fine[who], axis=1)
         self.fine[who] = fine
         self.reach[who[changed]] = FIRST
         self.doubt[who] = False
 
-    def _round(self, who: NDArray[np.int64]) -> Iterator[None]:
-        """Try steps of several reaches from each start; take the best that is better."""
-        here, size = self.places[who], self.places.shape[1]
+    def _model(self, who: NDArray[np.int64]) -> Generator[None, None, tuple[Array, Array]]:
+        """Slopes (k, 1 + m, n) and B^(-1/2) (k, n, n) of starts: what a step is worked out from."""
+        here, fine = self.places[who], self.fine[who]
         # One step for all that are fine: along a narrow valley the errors of two axes then cancel.
-        fine = self.fine[who]
         h = np.where(fine < COARSE, fine.min(axis=1, keepdims=True), fine)
         h = np.maximum(h, np.minimum(1e4 * self.grain, 0.25))
         middle = np.clip(here, h, 1 - h) - here
-        offsets = middle[:, None, :] + h[:, None, :] * pattern(size)
+        offsets = middle[:, None, :] + h[:, None, :] * pattern(here.shape[1])
         found = yield from self._around(who, offsets)
         slopes, curvature = differences(found, h, middle)
         slopes[:, 0] += self.pull * (here - self.target)
         curvature[:, 0] += np.diag(self.pull)
         pressed = np.einsum("km,kmij->kij", self.pressure[who], curvature[:, 1:])
-        roots = root_inverse(curvature[:, 0] - pressed)
-        trials = [
-            Trials(
-                here[row],
-                self.seen[at],
-                slopes[row],
-                roots[row],
-                self.reach[at],
-                self.fine[at] / COARSE,
-            )
-            for row, at in enumerate(who)
-        ]
+        return slopes, root_inverse(curvature[:, 0] - pressed)
+
+    def _round(self, who: NDArray[np.int64]) -> Iterator[None]:
+        """Try steps of several reaches from each start; take the best that is better."""
+        slopes, roots = yield from self._model(who)
+        scale = self.fine / COARSE
+        trials = []
+        for row, at in enumerate(who):
+            model = slopes[row], roots[row], self.reach[at], scale[at]
+            trials.append(Trials(self.places[at], self.seen[at], *model).filled())
+            if row % FEW == FEW - 1:
+                yield
         yield from self._try(who, trials)
         bent = [row for row, entry in enumerate(trials) if entry.bent()]
-        if bent:
-            yield from self._try(who[bent], [trials[row].corrected() for row in bent])
+        seconds = []
+        for row in bent:
+            seconds.append(trials[row].corrected())
+            if len(seconds) % FEW == 0:
+                yield
+        yield from self._try(who[bent], seconds)
         for at, entry in zip(who, trials, strict=True):
             self._take(at, entry)
 
@@ -151,12 +152,13 @@ class Descent:
             places = np.concatenate([entry.places() for entry in trials])
             problem = np.repeat(self.problem[who], counts)
             found = self._full(places, (yield from self._ask(places, problem)))
-            for entry, rows in zip(trials, np.split(found, np.cumsum(counts)[:-1]), strict=True):
+            parts = np.split(found, np.cumsum(counts)[:-1])
+            for entry, rows in zip(trials, parts, strict=True):
                 entry.found = rows
 
     def _take(self, at: int, entry: Trials) -> None:
         """Go on from the best trial, or look closer."""
-        best = entry.best()
+        best, before = entry.best(), float(entry.merit(self.seen[at]))
         if best is None:
             hopeless = not entry.hope() or self.reach[at].max() < FINEST
             self.going[at] = not hopeless
@@ -169,8 +171,10 @@ class Descent:
         self.pressure[at] = 0.0 if stale else taken.step.pressure
         self.doubt[at] = taken.reach < self.reach[at, taken.family] / 2
         self.reach[at, taken.family] = taken.reach
-        self.going[at] = float(np.abs(taken.step.move).max()) > STILL * float(
-            self.fine[at].max() / COARSE
+        still = STILL * float(self.fine[at].max()) / COARSE
+        gain = before - float(entry.merit(self.seen[at]))
+        self.going[at] = float(np.abs(taken.step.move).max()) > still and gain > LITTLE * abs(
+            before
         )
 
     def _join(self) -> None:

@@ -46,12 +46,22 @@ def differences(found: Array, h: Array, middle: Array) -> tuple[Array, Array]:
     return slopes, curvature
 
 
-def probes(grain: Array) -> Array:
-    """Offsets (p, n) at which to look to learn how fine differences must be."""
-    size = len(grain)
-    steps = np.maximum(np.array(LEVELS)[:, None], np.minimum(1e4 * grain, 0.25))
-    sides = [sign * h * np.eye(size) for h in steps for sign in (1, -1)]
-    return np.concatenate([*sides, np.zeros((1, size))])
+def probes(here: Array, grain: Array) -> Array:
+    """Offsets (k, p, n) from places (k, n) at which to look to learn how fine differences must be.
+
+    A step up, the middle and a step down each axis for each level, within the box.
+    """
+    one = np.eye(len(grain))
+    parts = []
+    for h in steps(grain):
+        middle = (np.clip(here, h, 1 - h) - here)[:, None, :] * one
+        parts += [middle + h * one, middle, middle - h * one]
+    return np.concatenate(parts, axis=1)
+
+
+def steps(grain: Array) -> Array:
+    """The levels (levels, n), none finer than places can tell."""
+    return np.asarray(np.maximum(np.array(LEVELS)[:, None], np.minimum(1e4 * grain, 0.25)))
 
 
 def resolved(found: Array, grain: Array) -> Array:
@@ -60,10 +70,10 @@ def resolved(found: Array, grain: Array) -> Array:
     found: outcomes (k, p, f) at the offsets of `probes`.
     """
     count, size = len(found), len(grain)
-    h = np.maximum(np.array(LEVELS)[:, None], np.minimum(1e4 * grain, 0.25))[None, :, :, None]
-    sides = found[:, :-1].reshape(count, len(LEVELS), 2, size, -1)
-    slope = (sides[:, :, 0] - sides[:, :, 1]) / (2 * h)
-    bend = (sides[:, :, 0] + sides[:, :, 1] - 2 * found[:, -1][:, None, None]) / h**2
+    h = steps(grain)[None, :, :, None]
+    up, middle, down = np.moveaxis(found.reshape(count, len(LEVELS), 3, size, -1), 2, 0)
+    slope = (up - down) / (2 * h)
+    bend = ((up - middle) + (down - middle)) / h**2
     straight = (np.abs(bend) * h < 0.1 * np.abs(slope))[:, :-1]
     same = _alike(slope, 0.2, NOISE / h) & (_alike(bend, 0.5, NOISE / h**2) | straight)
     good = np.concatenate([same.all(axis=3), np.ones((count, 1, size), dtype=bool)], axis=1)

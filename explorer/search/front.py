@@ -21,6 +21,9 @@ from .task import NEARER, Seen, Task, bent, make_task
 #: Weight of the other goal: of equals in the one the better in the other.
 OTHER = 1e-6
 
+#: The second start of an aim lies at least this far from the first.
+APART = 0.05
+
 #: Most designs of a front.
 MOST = 200
 
@@ -59,7 +62,7 @@ def front_steps(
 
 
 def _pair(goals: Any) -> tuple[Goal, Goal]:
-    if isinstance(goals, str | Goal | Mapping) or len(tuple(goals)) != 2:
+    if not isinstance(goals, list | tuple) or len(goals) != 2:
         raise InputError("a front is of two goals; give two quantities")
     one, other = (goal_of(goal) for goal in goals)
     if one.quantity == other.quantity:
@@ -77,33 +80,37 @@ class Aim:
 
 def _steps(task: Task, goals: tuple[Goal, Goal], count: int) -> Iterator[Front]:
     kept: list[Found] = []
-
-    def known() -> Front:
-        return _front(task, goals, kept)
-
-    if not task.space.names:
+    if task.space.names:
+        for _ in _search(task, count, kept):
+            yield _front(task, goals, kept)
+    else:
         task.look(task.space.start[None])
-        kept, task.over = [task.found()], True
-        yield known()
-        return
-    for _ in screen(task, sample(task.space)):
-        yield known()
-    ends, few = [Aim(0), Aim(1)], starts_for(task) // 2
-    places = [chosen(task, few, aim.goal) for aim in ends]
-    for _ in _descend(
-        task, ends, np.concatenate(places), np.repeat([0, 1], [len(one) for one in places])
-    ):
-        yield known()
-    if task.best:
-        for share in (3, 1):  # a rough front first, then evenly along it
-            aims = [*ends, *_levels(task, (count - 2) // share)]
-            for _ in _descend(task, aims, *_warm(task, aims, 2)):
-                yield known()
-        for place in _reached(task, aims):
-            kept.append(task.checked_at(place))
-            yield known()
+        kept.append(task.found())
     task.over = True
-    yield known()
+    yield _front(task, goals, kept)
+
+
+def _search(task: Task, count: int, kept: list[Found]) -> Iterator[None]:
+    """Both ends, a rough front, then evenly along it; `kept` gets the designs, each checked."""
+    yield from screen(task, sample(task.space))
+    aims, few = [Aim(0), Aim(1)], starts_for(task) // 2
+    places = [chosen(task, few, aim.goal) for aim in aims]
+    problem = np.repeat([0, 1], [len(some) for some in places])
+    yield from _descend(task, aims, np.concatenate(places), problem)
+    if not task.best:
+        return
+    for share in (3, 1):
+        aims = [Aim(0), Aim(1), *_levels(task, (count - 2) // share)]
+        starts: list[tuple[int, Array]] = []
+        for found in _warm(task, aims):
+            starts += found
+            yield
+        who = np.array([index for index, _ in starts])
+        yield from _descend(task, aims, np.array([place for _, place in starts]), who)
+    for found in _warm(task, aims):
+        made = [task.checked_at(place) for _, place in found[:1]]
+        kept += [one for one in made if one not in kept]
+        yield
 
 
 def _descend(
@@ -163,26 +170,15 @@ def _ranking(seen: Seen, aim: Aim) -> Array:
     return np.where(fits, -worth, np.inf)
 
 
-def _warm(task: Task, aims: Sequence[Aim], count: int) -> tuple[Array, NDArray[np.int64]]:
-    """The best places known for each aim, some apart from each other, and whose they are."""
+def _warm(task: Task, aims: Sequence[Aim]) -> Iterator[list[tuple[int, Array]]]:
+    """For each aim its number and place, of the best that is known and of the best apart from it."""
     seen = merged(task.seen)
-    places, who = [], []
     for index, aim in enumerate(aims):
         ranking = _ranking(seen, aim)
         first = int(np.argmin(ranking))
-        apart = np.abs(seen.places - seen.places[first]).max(axis=1) > 0.05
-        second = int(np.argmin(np.where(apart, ranking, np.inf)))
-        for at in (first, second)[:count]:
-            if np.isfinite(ranking[at]):
-                places.append(seen.places[at])
-                who.append(index)
-    return np.array(places), np.array(who, dtype=np.int64)
-
-
-def _reached(task: Task, aims: Sequence[Aim]) -> list[Array]:
-    """The best place seen for each aim, each once."""
-    places, _ = _warm(task, aims, 1)
-    return list({place.tobytes(): place for place in places}.values())
+        near = np.abs(seen.places - seen.places[first]).max(axis=1) < APART
+        second = int(np.argmin(np.where(near, np.inf, ranking)))
+        yield [(index, seen.places[at]) for at in (first, second) if np.isfinite(ranking[at])]
 
 
 def _front(task: Task, goals: tuple[Goal, Goal], kept: Sequence[Found]) -> Front:

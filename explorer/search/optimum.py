@@ -76,7 +76,7 @@ def _steps(task: Task) -> Iterator[Found]:
     if not task.best:
         # A place that meets all may be far smaller than the spacing of the sample: look closer
         # around the least unmet.
-        for _ in screen(task, around(chosen(task, 5)[2:], 1024)):
+        for _ in screen(task, around(chosen(task, 6)[1:], 1024)):
             yield task.found()
         yield from _descend(task)
     if task.best and not task.goals:

@@ -170,13 +170,19 @@ class Space:
             for name, value in self.given.items()
         }
         made |= moved
-        absent = [name for name in moved if name not in self.given]
-        if absent:
-            bare = Evaluation({name: value for name, value in made.items() if name not in absent})
-            for name in absent:
-                if float(bare.value(name)) == made[name]:
-                    del made[name]
+        for name in moved:
+            if name not in self.given and self._follows(made, name):
+                del made[name]
         return made
+
+    @staticmethod
+    def _follows(made: Mapping[str, Any], name: str) -> bool:
+        """Whether an input has the same value where it is not given."""
+        try:
+            bare = Evaluation({key: value for key, value in made.items() if key != name})
+        except InputError:
+            return False
+        return bool(float(bare.value(name)) == made[name])
 
     def reaches(self, quantity: str) -> bool:
         """Whether a quantity can depend on any input that varies."""

@@ -79,7 +79,9 @@ def chosen(task: Task, count: int, goal: int = 0) -> Array:
         np.where(seen.met, np.inf, unmet + 1e-6 * objective),
         np.where(seen.met, np.inf, objective + 0.3 * unmet),
     ]
-    picked = [0, 1]  # the given point within the bounds, and the same with what follows others
+    # The given point within the bounds, the same with what follows others, and the best known.
+    leading = rankings[0] if task.best else unmet
+    picked = list(dict.fromkeys([0, 1, int(np.argmin(leading))]))
     for share, ranking in zip((0.45, 0.8, 1.0), rankings, strict=True):
         _pick(picked, seen.places, ranking, round(share * (count - 2)) + 2)
     _pick(picked, seen.places, unmet, count)

@@ -13,7 +13,7 @@ Array = NDArray[np.float64]
 UNMET = 1e6
 
 #: Least curvature of the model, of a function of about 1 over a box of about 1.
-FLATTEST = 1e-5
+FLATTEST = 1e-6
 
 
 @dataclass(frozen=True)

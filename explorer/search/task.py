@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
@@ -27,7 +27,7 @@ FAR = 1e3
 NO_NUMBER = -1e5
 
 #: Weight of the distance where a goal comes first: of equals the nearest.
-NEARER = 1e-7
+NEARER = 1e-6
 
 #: How many of the best are kept.
 KEPT = 12
@@ -35,7 +35,9 @@ KEPT = 12
 
 def checked_requirements(requirements: Any) -> tuple[Requirement, ...]:
     """Requirements as a tuple. Raises InputError for none of them, and for a contradiction."""
-    if isinstance(requirements, Requirement | str | Mapping):
+    if isinstance(requirements, Requirement | str | Mapping) or not isinstance(
+        requirements, Iterable
+    ):
         raise InputError("requirements is a sequence of Requirement, not a single one")
     found = tuple(requirements)
     for entry in found:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -40,9 +40,8 @@ class Trials:
     second: Trials | None = None
     weight: float = 0.0
 
-    def __post_init__(self) -> None:
-        if self.tries:
-            return
+    def filled(self) -> Trials:
+        """The same with its steps worked out."""
         even = np.ones_like(self.scale)
         families = [even] if np.all(self.scale == 1) else [even, self.scale]
         for family, scale in enumerate(families):
@@ -52,6 +51,7 @@ class Trials:
         # What is unmet weighs more than the constraints press, so that no step gains by breaking them.
         pressed = min((float(entry.step.pressure.sum()) for entry in self.tries), default=0.0)
         self.weight = min(2 * pressed + 1e-3, 1e6)
+        return self
 
     def _add(self, family: int, reach: float, box: Array, margin: Array) -> None:
         last = self.tries[-1] if self.tries else None
@@ -65,10 +65,7 @@ class Trials:
     def corrected(self) -> Trials:
         """The same steps with the constraints as they are found at their ends."""
         assert self.found is not None  # the trials have been evaluated
-        second = Trials(
-            self.place, self.seen, self.slopes, self.root, self.reaches, self.scale, self.tries
-        )
-        second.tries, second.weight = [], self.weight
+        second = replace(self, tries=[], found=None)
         for entry, row in zip(self.tries, self.found, strict=True):
             margin = row[1:] - self.slopes[1:] @ entry.step.move
             second._add(entry.family, entry.reach, entry.box, margin)
