@@ -17,6 +17,7 @@ from .domain import InputError
 from .evaluate import evaluate
 from .exact import RecordError
 from .inputs import INPUTS
+from .limits import cost_of_spread, elasticities, headroom
 from .maps import Axis, Map, make_map, mesh
 from .prediction import prediction_table
 from .record import design_text, load_design, save_design
@@ -24,6 +25,9 @@ from .registry import REGISTRY as _REGISTRY
 from .registry import check as _check
 from .sampling import scattered
 from .scatter import Spread
+from .search import Found, Front, Goal, best, nearest, pareto_front
+from .sturdy import sturdiest
+from .sweep import PlanError, SweepError, factorial, sampled, sweep, sweep_to
 from .unknowns import Influence, Range, influences, ranges
 from .version import __version__
 from .whole import Lines, Pattern, Samples, WholeError
@@ -46,12 +50,16 @@ __all__ = [
     "Broadening",
     "Decision",
     "Design",
+    "Found",
+    "Front",
+    "Goal",
     "Influence",
     "InputError",
     "Lines",
     "Map",
     "Origin",
     "Pattern",
+    "PlanError",
     "Quantiles",
     "Range",
     "RecordError",
@@ -59,26 +67,38 @@ __all__ = [
     "Samples",
     "Share",
     "Spread",
+    "SweepError",
     "Unknown",
     "WholeError",
     "Yield",
     "__version__",
+    "best",
     "budget",
     "candidates",
     "combined",
+    "cost_of_spread",
     "design_text",
+    "elasticities",
     "evaluate",
+    "factorial",
+    "headroom",
     "influences",
     "keyrate",
     "load_design",
     "make_map",
     "make_yield_map",
     "mesh",
+    "nearest",
+    "pareto_front",
     "prediction_table",
     "quantiles",
     "ranges",
+    "sampled",
     "save_design",
     "scattered",
+    "sturdiest",
+    "sweep",
+    "sweep_to",
     "with_record",
     "yield_of",
 ]

@@ -4,6 +4,8 @@ import argparse
 import sys
 from collections.abc import Sequence
 
+from explorer import sweep_command
+
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run the command line; returns the exit code (2: asked for something that cannot be done)."""
@@ -28,6 +30,10 @@ def _parser() -> argparse.ArgumentParser:
         "--no-browser", action="store_true", help="print the address and open no browser"
     )
     parser.set_defaults(run=open_page)
+    commands = parser.add_subparsers(title="commands", metavar="COMMAND")
+    sweep = commands.add_parser("sweep", help="write a table of many designs from a plan in a file")
+    sweep_command.add_options(sweep)
+    sweep.set_defaults(run=sweep_command.run)
     return parser
 
 
