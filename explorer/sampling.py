@@ -7,19 +7,21 @@ the normal scores, and every input keeps its own distribution, truncated to its 
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import cache, lru_cache
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.constants import speed_of_light
 
-from .domain import FARTHEST, InputError, quoted, real_number, shown
+from .domain import CLOSEST, SPECTRUM_REACH, InputError, quoted, real_number
 from .evaluate import Evaluation, limits_of
-from .inputs import INPUTS
+from .inputs import BROADEST, INPUTS
 from .registry import dependencies
-from .scatter import Spread, check_scatter, correlation_matrix, root_of
+from .scatter import FIRST, LAST, Spread, check_scatter, correlation_matrix, root_of, values_of
+from .whole import Samples
 
 Array = NDArray[np.float64]
 
@@ -33,31 +35,42 @@ MOST = 2**22
 #: the design and not the single device.
 BUILT_ONCE = ("resonance_wavelength", "filter_centre", "magnification")
 
-#: Below this chance a truncation takes nothing that a double could show.
-NEGLIGIBLE = 1e-17
+#: Numbers of a set of points up to which it is kept for the next call.
+KEPT = 2**20
+
+#: Inputs that the ranges of others follow.
+LIMITING = frozenset[str]().union(*(limits_of(name) for name in INPUTS))
+
+#: Width of the broadest line in frequency times its wavelength [m/s].
+WIDEST = speed_of_light * BROADEST / (1 - BROADEST**2 / 4)
+
+#: How far a limit that comes from another input keeps off rounding.
+CLEAR = 1 + 1e-12
+
+
+def whole_number(given: Any, what: str, least: int, most: float = np.inf) -> int:
+    """A whole number within limits. Raises InputError."""
+    number = real_number(given)
+    if number is None or not least <= number <= most or int(given) != given:
+        ends = f"from {least} to {most}" if most < np.inf else f"from {least} on"
+        raise InputError(f"{what} is a whole number {ends}; got {quoted(given)}")
+    return int(given)
 
 
 def whole_count(count: Any, what: str = "count", most: int = MOST) -> int:
     """The draws of a call: at least `count`, BATCHES times a power of two. Raises InputError."""
-    number = real_number(count)
-    if number is None or number != int(number) or not 1 <= number <= most:
-        raise InputError(f"{what} is a whole number from 1 to {most}; got {quoted(count)}")
-    each = 1
-    while each * BATCHES < number:
-        each *= 2
-    return each * BATCHES
+    number = whole_number(count, what, 1, most)
+    return BATCHES << max(0, (-(-number // BATCHES) - 1).bit_length())
 
 
 def whole_seed(seed: Any) -> int:
     """A seed of random numbers. Raises InputError."""
-    number = None if isinstance(seed, float) else real_number(seed)
-    if number is None or number < 0:
+    if isinstance(seed, float | np.floating):  # 3.0 is one, and 2.5 must not be 2
         raise InputError(f"seed is a whole number from 0 on; got {quoted(seed)}")
-    return int(seed)
+    return whole_number(seed, "seed", 0)
 
 
-@lru_cache(maxsize=16)
-def _fractions(each: int, columns: int, seed: int, correlated: Any) -> Array:
+def _points(each: int, columns: int, seed: int, correlated: Any) -> Array:
     """Points of the unit cube, (BATCHES * each, columns), batch by batch, read-only.
 
     correlated: pairs of (column, row of the root of a correlation matrix), or ().
@@ -73,9 +86,12 @@ def _fractions(each: int, columns: int, seed: int, correlated: Any) -> Array:
     if correlated:
         places = [column for column, _ in correlated]
         root = np.array([row for _, row in correlated])
-        points[:, places] = ndtr(ndtri(np.clip(points[:, places], 2.0**-60, 1 - 2.0**-53)) @ root.T)
+        points[:, places] = ndtr(ndtri(np.clip(points[:, places], FIRST, LAST)) @ root.T)
     points.setflags(write=False)
     return points
+
+
+_kept_points = lru_cache(maxsize=16)(_points)
 
 
 @dataclass(frozen=True)
@@ -93,9 +109,9 @@ class Draws:
 
     @property
     def names(self) -> list[str]:
-        """The inputs that scatter, those first that the ranges of others follow."""
+        """The inputs that scatter, those first that the ranges or the values of others follow."""
         moving = [name for name in self.columns if not self.scatter[name].still]
-        return sorted(moving, key=lambda name: bool(limits_of(name) & set(moving)))
+        return sorted(moving, key=lambda name: len(_followed(name).intersection(moving)))
 
 
 def draws(
@@ -117,13 +133,14 @@ def draws(
             columns[name] = width
             width += 2 if scatter[name].kind == "radial" else 1
     alone = [name for name in columns if scatter[name].kind not in ("radial", "direction")]
-    involved, matrix = correlation_matrix(correlation or {}, alone)
+    involved, matrix = correlation_matrix({} if correlation is None else correlation, alone)
     rows = root_of(matrix) if involved else np.zeros((0, 0))
     correlated = tuple(
         (columns[name], tuple(row)) for name, row in zip(involved, rows.tolist(), strict=True)
     )
-    points = _fractions(each, max(width, 1), whole_seed(seed), correlated)
-    return Draws(dict(scatter), columns, points)
+    columns_wide = max(width, 1)
+    made = _kept_points if BATCHES * each * columns_wide <= KEPT else _points
+    return Draws(dict(scatter), columns, made(each, columns_wide, whole_seed(seed), correlated))
 
 
 def displaced(
@@ -137,18 +154,13 @@ def displaced(
     nominal = Evaluation(point)
     names = [name for name in drawn.names if name not in still]
     found = {**point, **_built_once(nominal, names)}
-    if not names:
-        return found
     lift = (slice(None), *(None,) * len(nominal.shape))
+    room = Room(nominal, {name: drawn.scatter[name] for name in names}, found)
     for name in names:
-        work = nominal
-        if limits_of(name) & set(names):
-            work = nominal.changed({key: found[key] for key in names if key in limits_of(name)})
-        low, high = work.domain(name)
         column = drawn.columns[name]
         wide = 2 if drawn.scatter[name].kind == "radial" else 1
         parts = [drawn.fractions[rows, column + index][lift] for index in range(wide)]
-        found[name] = _values(name, drawn.scatter[name], nominal.value(name), parts, low, high)
+        found[name] = room.values(name, parts)
     return found
 
 
@@ -164,58 +176,100 @@ def _built_once(nominal: Evaluation, names: Sequence[str]) -> dict[str, Any]:
     }
 
 
-def _values(
-    name: str, spread: Spread, centre: Any, parts: Sequence[Array], low: Any, high: Any
-) -> Array:
-    """Values of one input, SI, from fractions 0 to 1 of its distribution, truncated to low and high."""
-    if spread.kind == "direction":
-        return np.square(parts[0])
-    if not np.all(np.isfinite(centre)):
-        raise InputError(f"{name} is ∞, and what is without end cannot scatter", name)
-    if spread.kind == "radial":
-        reach = np.asarray(high) / np.sqrt(2)  # the square within the circle that is allowed
-        across = _normal(parts[0], np.abs(centre), spread.width, -reach, reach)
-        return np.hypot(across, _normal(parts[1], np.zeros(()), spread.width, -reach, reach))
-    if spread.kind == "uniform":
-        first, last = (
-            np.maximum(centre - spread.width, low),
-            np.minimum(centre + spread.width, high),
-        )
-        found = first + parts[0] * (last - first)
-    elif spread.kind == "lognormal":
-        if np.any(np.asarray(centre) <= 0):
-            text = shown(float(np.min(centre)), INPUTS[name])
-            raise InputError(
-                f"{name} = {text} has no logarithm, so its scatter cannot be lognormal", name
-            )
-        with np.errstate(divide="ignore", invalid="ignore"):
-            ends = [np.log(np.maximum(end, 0.0) / centre) for end in (low, high)]
-        found = centre * np.exp(_normal(parts[0], np.zeros(()), spread.width, *ends))
-    else:
-        found = _normal(parts[0], centre, spread.width, low, high)
-    return _inside(name, found, low, high)
+@cache
+def _followed(name: str) -> frozenset[str]:
+    """What must be drawn before an input: what its default, its range or `Room` asks for."""
+    more = {"emission_wavelength"} if name == "temperature" else set()
+    return dependencies(name) | limits_of(name) | more
 
 
-def _normal(fraction: Array, centre: Any, width: float, low: Any, high: Any) -> Array:
-    """Values of a normal distribution truncated to low..high, at fractions of it."""
-    from scipy.special import ndtr, ndtri
+@dataclass(frozen=True)
+class Room:
+    """Where the values of scattering inputs lie beside the others.
 
-    under, over = ndtr((low - centre) / width), ndtr((centre - high) / width)
-    fraction = np.clip(fraction, 2.0**-60, 1 - 2.0**-53)
-    if np.all(under < NEGLIGIBLE) and np.all(over < NEGLIGIBLE):
-        return np.asarray(centre + width * ndtri(fraction))
-    inner = under + fraction * (1 - over - under)
-    return np.asarray(centre + width * ndtri(inner))
+    An input whose range follows others stays within what was drawn of them; one that ranges follow
+    stays where the inputs that hold still are allowed. So every device is one that can be evaluated.
+    """
+
+    nominal: Evaluation
+    scatter: Mapping[str, Spread]
+    #: The point with what was drawn so far.
+    found: Mapping[str, Any]
+
+    def values(self, name: str, fractions: Sequence[Array]) -> Array:
+        """Values of an input, SI, at fractions of its distribution."""
+        return values_of(name, self.scatter[name], self.centre(name), fractions, *self.ends(name))
+
+    def centre(self, name: str) -> Any:
+        """The value about which an input scatters: one that follows others does so device by device."""
+        given = self.nominal.given
+        needs = dependencies(name, given)
+        if name in given or name in BUILT_ONCE or needs.isdisjoint(self.scatter.keys() - {name}):
+            return self.nominal.value(name)
+        return Evaluation({key: self.found[key] for key in needs if key in self.found}).value(name)
+
+    def ends(self, name: str) -> tuple[Any, Any]:
+        """The least and the greatest value of an input beside the others, SI."""
+        work, follows = self.nominal, limits_of(name)
+        if not follows.isdisjoint(self.scatter):
+            beside = (*follows, "reference_side")
+            work = Evaluation({key: self.found[key] for key in beside if key in self.found})
+        low, high = work.domain(name)
+        for least in self._least(name) if name in LIMITING else ():
+            low = np.minimum(np.maximum(low, least * CLEAR), high)
+        for most in self._most(name):
+            high = np.maximum(np.minimum(high, most / CLEAR), low)
+        return low, high
+
+    def _least(self, name: str) -> Iterator[Any]:
+        """Least values that leave room for what holds still; the ranges of others are proportional."""
+        for other in self.nominal.given - self.scatter.keys():
+            ends = (INPUTS[other].low, INPUTS[other].high) if name in limits_of(other) else ()
+            for end in (end for end in ends if callable(end)):
+                yield self.nominal.value(other) / end(**{name: 1.0})
+        for offset, width in self._rows() if name == "emission_wavelength" else ():
+            own = np.max(self.nominal.value("fast_linewidth")) if width is None else width
+            yield max(offset / (reach - 1) for reach in SPECTRUM_REACH)
+            yield own / BROADEST - offset
+
+    def _most(self, name: str) -> Iterator[Any]:
+        """Greatest values at which the spectrum, or a law of the line's width, is still allowed."""
+        law, spectrum = (self.nominal.value(whole) for whole in ("broadening", "spectrum"))
+        if law is not None and "fast_linewidth" not in self.nominal.given:
+            with np.errstate(divide="ignore"):
+                if name == "emission_wavelength":
+                    yield WIDEST / law.width(self.nominal.value("temperature"))
+                if name == "temperature":
+                    yield _hottest(law, WIDEST / self._wavelength(LAST))
+        if name == "emission_wavelength" and isinstance(spectrum, Samples):
+            yield np.diff(spectrum.offsets).min() / CLOSEST
+        first = [row[0] for row in self._rows() if row[1] is None]
+        if name == "fast_linewidth" and first:
+            yield BROADEST * (np.min(self._wavelength(FIRST)) + min(first))
+
+    def _rows(self) -> list[tuple[float, float | None]]:
+        """Offset and width of each line of the spectrum; of samples the ends."""
+        spectrum = self.nominal.value("spectrum")
+        if isinstance(spectrum, Samples):
+            return [(float(spectrum.offsets[end]), 0.0) for end in (0, -1)]
+        return [line[1:] for line in spectrum.lines] if spectrum else []
+
+    def _wavelength(self, fraction: float) -> Any:
+        """The emission wavelength at a fraction of its distribution."""
+        name = "emission_wavelength"
+        value = self.nominal.value(name)
+        return self.values(name, [np.asarray(fraction)]) if name in self.scatter else value
 
 
-def _inside(name: str, values: Array, low: Any, high: Any) -> Array:
-    """Values off the ends of a range: rounding may have put them there, or on an end that is open."""
-    entry = INPUTS[name]
-    least = np.nextafter(low, np.inf) if entry.low_open else low
-    if entry.low_open:
-        least = np.maximum(least, 1 / FARTHEST)
-    most = np.nextafter(high, -np.inf) if entry.high_open else high
-    return np.clip(values, least, most)
+def _hottest(law: Any, width: Any) -> Any:
+    """The temperature [K] up to which a law stays at a width [Hz] or below."""
+    entry = INPUTS["temperature"]
+    low, high = (np.full(np.shape(width), end) for end in (entry.low, entry.high))
+    for _ in range(64 if np.any(law.width(high) > width) else 0):
+        middle = (low + high) / 2
+        below = law.width(middle) <= width
+        low, high = np.where(below, middle, low), np.where(below, high, middle)
+    return high
 
 
 def scattered(

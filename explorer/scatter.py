@@ -1,4 +1,4 @@
-"""Scatter of an input from device to device: its kinds, which inputs they suit, and correlations."""
+"""Scatter of an input from device to device: its kinds, which inputs they suit, their values, and correlations."""
 
 from __future__ import annotations
 
@@ -9,8 +9,10 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from .domain import InputError, finite_number, quoted
+from .domain import FARTHEST, InputError, finite_number, quoted, shown
 from .inputs import INPUTS
+
+Array = NDArray[np.float64]
 
 #: Kinds of scatter, and what their width means.
 SPREADS = {
@@ -26,6 +28,15 @@ IN_PLANE = ("lateral_offset", "fibre_offset")
 
 #: The input that the direction of a dipole is told by.
 ALIGNMENT = "dipole_alignment"
+
+#: Fractions of a distribution are kept this far off its ends, where a value has no number.
+FIRST, LAST = 2.0**-60, 1 - 2.0**-53
+
+#: Below this chance a truncation takes nothing that a double could show.
+NEGLIGIBLE = 1e-17
+
+#: A normal distribution this many times wider than its range is even on it, to 1e-8.
+EVEN = 1e4
 
 #: Coefficients may miss a correlation matrix by this much, as rounded ones do.
 ROUNDING = 1e-9
@@ -117,7 +128,7 @@ def correlation_matrix(
                 raise InputError(f"a correlation names {name}, which does not scatter in a line")
         number = finite_number(value, f"the correlation of {one}|{other}")
         if not -1 <= number <= 1:
-            raise InputError(f"the correlation of {one}|{other} = {value:g} is outside -1 to 1")
+            raise InputError(f"the correlation of {one}|{other} = {number!r} is outside -1 to 1")
         if found.setdefault(frozenset((one, other)), number) != number:
             raise InputError(f"the correlation of {one} and {other} is given twice")
     involved = [name for name in INPUTS if any(name in pair for pair in found)]
@@ -140,3 +151,99 @@ def root_of(matrix: NDArray[np.float64]) -> NDArray[Any]:
     except np.linalg.LinAlgError:  # on the edge: some of them follow the others exactly
         sizes, vectors = np.linalg.eigh(matrix)
         return np.asarray(vectors * np.sqrt(np.maximum(sizes, 0.0)))
+
+
+def values_of(
+    name: str, spread: Spread, centre: Any, fractions: Sequence[Array], low: Any, high: Any
+) -> Array:
+    """Values of one input, SI, at fractions 0 to 1 of its distribution, truncated to low..high.
+
+    centre, low, high: SI, arrays that broadcast. fractions: one array, of a displacement in the plane
+    two. Where nothing of a distribution lies between low and high, the nearer end stands. Raises
+    InputError where the centre is ∞, or of a lognormal one not above 0.
+    """
+    if spread.kind == "direction":
+        return np.square(fractions[0])
+    if not np.all(np.isfinite(centre)):
+        raise InputError(f"{name} is ∞, and what is without end cannot scatter", name)
+    if spread.kind == "lognormal" and np.any(np.asarray(centre) <= 0):
+        text = shown(float(np.min(centre)), INPUTS[name])
+        raise InputError(
+            f"{name} = {text} has no logarithm, so its scatter cannot be lognormal", name
+        )
+    if INPUTS[name].low_open:
+        low = np.maximum(low, 1 / FARTHEST)
+    with np.errstate(all="ignore"):
+        found = _KINDS[spread.kind](fractions, centre, spread.width, low, high)
+    return _inside(name, found, low, high)
+
+
+def _normal(fractions: Sequence[Array], centre: Any, width: float, low: Any, high: Any) -> Array:
+    return normal_at(fractions[0], centre, width, low, high)
+
+
+def _lognormal(fractions: Sequence[Array], centre: Any, width: float, low: Any, high: Any) -> Array:
+    ends = [np.log(np.maximum(end, 0.0) / centre) for end in (low, high)]
+    return np.asarray(centre * np.exp(normal_at(fractions[0], np.zeros(()), width, *ends)))
+
+
+def _uniform(fractions: Sequence[Array], centre: Any, width: float, low: Any, high: Any) -> Array:
+    first, last = np.maximum(centre - width, low), np.minimum(centre + width, high)
+    return np.asarray(first + fractions[0] * (last - first))
+
+
+def _radial(fractions: Sequence[Array], centre: Any, width: float, low: Any, high: Any) -> Array:
+    """Distances from the middle: how far a displacement goes, then which way, within the circle allowed.
+
+    About the middle itself the first fraction alone tells the distance, as evenly as it is drawn.
+    """
+    reach, off = np.minimum(np.abs(low), high), np.abs(centre)
+    turn = 2 * np.pi * fractions[1]
+    along, across = np.cos(turn), np.sin(turn)
+    edge = np.sqrt(np.maximum(reach**2 - (off * across) ** 2, 0.0)) - off * along
+    inside = -np.expm1(-((edge / width) ** 2) / 2)  # share of displacements that way
+    far = np.minimum(width * np.sqrt(-2 * np.log1p(-fractions[0] * inside)), edge)
+    far = np.where(inside < NEGLIGIBLE, edge * np.sqrt(fractions[0]), far)
+    return np.asarray(np.hypot(off + far * along, far * across))
+
+
+_KINDS = {"normal": _normal, "lognormal": _lognormal, "uniform": _uniform, "radial": _radial}
+
+
+def normal_at(fraction: Array, centre: Any, width: float, low: Any, high: Any) -> Array:
+    """Values at fractions of a normal distribution truncated to low..high, wherever its centre is."""
+    from scipy.special import ndtr, ndtri
+
+    fraction = np.clip(fraction, FIRST, LAST)
+    size = np.minimum(width, EVEN * np.maximum(high - centre, centre - low))
+    size = np.maximum(size, np.finfo(float).tiny)
+    first, last = (low - centre) / size, (high - centre) / size
+    under, over = (np.where(one < NEGLIGIBLE, 0.0, one) for one in (ndtr(first), ndtr(-last)))
+    if not (under.any() or over.any()):
+        return np.asarray(centre + width * ndtri(fraction))
+    score = ndtri(under + fraction * (1 - over - under))
+    away = (first > 0) | (last < 0)
+    if away.any():
+        score = np.where(away, _tail(fraction, first, last), score)
+    return np.asarray(centre + size * score)
+
+
+def _tail(fraction: Array, first: Any, last: Any) -> Array:
+    """Scores at fractions of a normal distribution between two scores on one side of its centre."""
+    from scipy.special import log_ndtr, ndtri_exp
+
+    right = first > 0
+    far, near = np.where(right, -last, first), np.where(right, -first, last)  # below the centre
+    share = np.where(right, 1 - fraction, fraction)
+    ends = log_ndtr(far) + np.log1p(-share), log_ndtr(near) + np.log(share)
+    score = np.maximum(ndtri_exp(np.logaddexp(*ends)), far)
+    score = np.where(np.isfinite(log_ndtr(near)), score, near)
+    return np.asarray(np.where(right, -score, score))
+
+
+def _inside(name: str, values: Array, low: Any, high: Any) -> Array:
+    """Values off the ends of a range: rounding may have put them there, or on an end that is open."""
+    entry = INPUTS[name]
+    least = np.nextafter(low, np.inf) if entry.low_open else low
+    most = np.nextafter(high, -np.inf) if entry.high_open else high
+    return np.clip(values, least, most)

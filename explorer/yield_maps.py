@@ -2,23 +2,25 @@
 
 from __future__ import annotations
 
+from collections import deque
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import replace
 from typing import Any
 
-from .design import Requirement
-from .devices import Run, required
+from .design import Design, Requirement
+from .devices import Run, point_of, required
 from .maps import Axis, Map, make_map, mesh
-from .sampling import BATCHES
+from .sampling import BATCHES, whole_count
 from .scatter import Spread
 from .yields import PASSING, Yield, grown
 
-#: Cells along an axis of the maps that come before the whole one, of one batch each.
-COARSER = (24, 48)
+#: Cells along an axis of the maps that come before the whole one, and most devices of a run of which
+#: each shows one batch.
+COARSER = ((24, 1024), (48, 2048))
 
 
 def make_yield_map(
-    point: Mapping[str, Any],
+    point: Mapping[str, Any] | Design,
     x: Axis,
     y: Axis,
     scatter: Mapping[str, Spread],
@@ -33,14 +35,12 @@ def make_yield_map(
     `values` holds `passing_share` with `passing_low` and `passing_high`, and `margin` is of the
     designs themselves, without scatter. Raises InputError.
     """
-    *_, (_, last) = yield_map_steps(
-        point, x, y, scatter, requirements, count, seed, correlation, threads
-    )
-    return last  # type: ignore[return-value]  # the last step always is one
+    steps = yield_map_steps(point, x, y, scatter, requirements, count, seed, correlation, threads)
+    return deque(steps, maxlen=1).pop()[1]  # type: ignore[return-value]  # the last step always is one
 
 
 def yield_map_steps(
-    point: Mapping[str, Any],
+    point: Mapping[str, Any] | Design,
     x: Axis,
     y: Axis,
     scatter: Mapping[str, Spread],
@@ -57,13 +57,16 @@ def yield_map_steps(
     Pairs of the share of the work that is done, 0 to 1, and a `Map`, or None between two blocks. cautions, lines:
     as `make_map` takes its cautions and its wanted quantities.
     """
+    point = point_of(point)
     wanted, lines, marks = required(requirements), list(lines), list(cautions)
+    count = whole_count(count)
     most = max(x.count, y.count)
-    for cells in (*(cells for cells in COARSER if cells < most), most):
+    for cells, drawn in (*(pair for pair in COARSER if pair[0] < most), (most, count)):
         whole = cells == most
         across, up = (replace(axis, count=min(cells, axis.count)) for axis in (x, y))
         base = make_map(point, across, up, [*lines, *marks], wanted, marks)
-        run = Run({**point, **mesh(across, up)}, scatter, wanted, count, seed, correlation)
+        entries = {**point, **mesh(across, up)}
+        run = Run(entries, scatter, wanted, min(count, drawn), seed, correlation)
         blocks, done = max(run.blocks, 1), 0
         for found in grown(run, threads, BATCHES if whole else 1):
             done += found is None

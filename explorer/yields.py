@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import deque
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, field
@@ -13,10 +14,9 @@ from numpy.typing import NDArray
 from . import devices
 from .design import Design, Requirement
 from .devices import Counts, Job, Run, Tile
-from .domain import InputError, quoted
-from .evaluate import Evaluation
+from .domain import InputError, quoted, real_number
 from .registry import REGISTRY, Quantity
-from .sampling import BATCHES
+from .sampling import BATCHES, whole_number
 from .scatter import Spread
 
 Array = NDArray[np.float64]
@@ -40,6 +40,12 @@ REGISTRY.collective[PASSING] = Quantity(
 
 #: An interval holds the share with this probability.
 CONFIDENCE = 0.95
+
+#: Most threads of one call.
+MOST_THREADS = 1024
+
+#: Variance of rounding to a whole number.
+ROUNDED = 1 / 12
 
 #: With fewer passes or failures than this the batches say too little: their binomial interval stands.
 FEW = 24
@@ -95,46 +101,54 @@ def interval(passes: Counts, each: int) -> Share:
     """Share and interval from the passes of independent batches, (batches, ...), of `each` draws.
 
     Student's t over the batches; with few passes or failures Jeffreys' interval of the binomial, as
-    in Brown, Cai and DasGupta, Stat. Sci. 16, 101 (2001), from memory.
+    in Brown, Cai and DasGupta, Stat. Sci. 16, 101 (2001), from memory. A batch counts whole devices:
+    the variance of that rounding, 1/12, is added to that between the batches, since evenly drawn
+    ones often count the same although their share lies between two whole numbers.
     """
-    from scipy.special import betaincinv, stdtrit
+    from scipy.special import stdtrit
 
     batches = len(passes)
     count = batches * each
-    total = passes.sum(axis=0)
+    total = np.asarray(passes.sum(axis=0))
     share = total / count
-    tail = (1 - CONFIDENCE) / 2
-    low = np.where(total > 0, betaincinv(total + 0.5, count - total + 0.5, tail), 0.0)
-    high = np.where(total < count, betaincinv(total + 0.5, count - total + 0.5, 1 - tail), 1.0)
+    few = np.minimum(total, count - total) < (FEW if batches > 1 else count)
+    reach = np.zeros(total.shape)
     if batches > 1:
-        reach = stdtrit(batches - 1, 1 - tail) * passes.std(axis=0, ddof=1) / each
-        reach = reach / np.sqrt(batches)
-        enough = np.minimum(total, count - total) >= FEW
-        low = np.where(enough, np.maximum(share - reach, 0.0), low)
-        high = np.where(enough, np.minimum(share + reach, 1.0), high)
+        between = passes.var(axis=0, ddof=1) + ROUNDED
+        reach = stdtrit(batches - 1, (1 + CONFIDENCE) / 2) * np.sqrt(between / batches) / each
+    low, high = np.array(np.maximum(share - reach, 0.0)), np.array(np.minimum(share + reach, 1.0))
+    low[few], high[few] = _jeffreys(total[few], count)
     return Share(share, low, high)
 
 
-def _certain(passes: Counts, count: int) -> Share:
-    """The share where nothing scatters: exactly 0 or 1."""
-    share = passes / count
-    return Share(share, share, share)
+def _jeffreys(passes: Counts, count: int) -> tuple[Array, Array]:
+    """Jeffreys' interval of a binomial share, from none or to all where none or all pass."""
+    from scipy.special import betaincinv
+
+    number, place = np.unique(passes, return_inverse=True)  # a map asks for the same few many times
+    tail = (1 - CONFIDENCE) / 2
+    ends = [betaincinv(number + 0.5, count - number + 0.5, chance) for chance in (tail, 1 - tail)]
+    return np.where(number > 0, ends[0], 0.0)[place], np.where(number < count, ends[1], 1.0)[place]
 
 
 def _made(run: Run, passes: Counts, done: int) -> Yield:
     """A yield from the passes of the first `done` batches: (batches, 1 + requirements, *axes)."""
     shares = []
-    for index, moves in enumerate(run.moved):
+    never = np.zeros(run.shape, dtype=bool)
+    for index, moves in reversed(list(enumerate(run.moved))):  # that of all of them last
         if moves:
             found = interval(passes[:done, index], run.each)
         else:  # nothing scatters that reaches it: exactly 0 or 1
             sure = passes[0, index] / run.each
             found = Share(sure, sure, sure)
+            never |= sure == 0
+        if index == 0:
+            found = Share(found.share, found.low, np.where(never, 0.0, found.high))
         if not run.shape:
             found = Share(float(found.share), float(found.low), float(found.high))
         shares.append(found)
-    first, *others = shares
-    by_requirement = dict(zip(run.names, others, strict=True))
+    *others, first = shares
+    by_requirement = dict(zip(run.names, reversed(others), strict=True))
     return Yield(
         first.share, first.low, first.high, by_requirement, done * run.each, run.count, run
     )
@@ -157,8 +171,8 @@ def yield_of(
     `scattered`. threads: how many share the work; the result is the same. A device for which a
     required quantity has no number does not pass. Raises InputError.
     """
-    *_, last = yield_steps(point, scatter, requirements, count, seed, correlation, threads)
-    return last  # type: ignore[return-value]  # the last step always is one
+    steps = yield_steps(point, scatter, requirements, count, seed, correlation, threads)
+    return deque(steps, maxlen=1).pop()  # type: ignore[return-value]  # the last step always is one
 
 
 def yield_steps(
@@ -176,6 +190,7 @@ def yield_steps(
 
 def grown(run: Run, threads: int, upto: int = BATCHES) -> Iterator[Yield | None]:
     """A yield as it grows, batch by batch; `upto`: batches that are enough."""
+    threads = whole_number(threads, "threads", 1, MOST_THREADS)
     passes = np.zeros((BATCHES, len(run.moved), *run.shape), dtype=np.int64)
     if not run.moved[0]:  # one device tells all
         for tile in run.tiles(devices.BLOCK):
@@ -184,7 +199,9 @@ def grown(run: Run, threads: int, upto: int = BATCHES) -> Iterator[Yield | None]
             passes[one] = found[0] * run.each
         yield _made(run, passes, BATCHES)
         return
-    with ThreadPoolExecutor(max_workers=max(1, threads)) as pool:
+    devices.keep_memory()
+    pool = ThreadPoolExecutor(max_workers=threads)  # starts them when it is first used
+    try:
         for batches, jobs in run.stages():
             for tile, found in _worked(run, jobs, pool if threads > 1 else None):
                 part: Any = (slice(batches.start, batches.stop), slice(None), *tile)
@@ -193,6 +210,8 @@ def grown(run: Run, threads: int, upto: int = BATCHES) -> Iterator[Yield | None]
             yield _made(run, passes, batches.stop)
             if batches.stop >= upto:
                 return
+    finally:  # of work that is given up, what was not begun is not
+        pool.shutdown(cancel_futures=True)
 
 
 def _worked(
@@ -232,32 +251,50 @@ def _numbers(quantity: str) -> str:
 
 
 def _levels(levels: Any) -> tuple[float, ...]:
-    found = np.atleast_1d(np.asarray(levels, dtype=float))
-    if found.ndim != 1 or not ((found >= 0) & (found <= 1)).all():
+    one = real_number(levels) is not None
+    several = isinstance(levels, Sequence | np.ndarray) and not isinstance(levels, str | bytes)
+    found = [real_number(level) for level in ([levels] if one else levels if several else [])]
+    known = tuple(level for level in found if level is not None and 0 <= level <= 1)
+    if not known or len(known) < len(found):
         raise InputError(f"a level of a quantile is a number from 0 to 1; got {quoted(levels)}")
-    return tuple(found.tolist())
+    return known
 
 
 def _quantiles(run: Run, quantity: str, levels: Any) -> Quantiles:
-    from scipy.special import stdtrit
+    """Quantiles with the interval of Woodruff, J. Am. Stat. Assoc. 47, 635 (1952), from memory.
 
+    It is that of the share of devices below the quantile, read off as levels.
+    """
     wanted = _levels(levels)
     _numbers(quantity)
     shape = (len(wanted), *run.shape)
     middle, low, high = (np.empty(shape) for _ in range(3))
     missing = np.empty(run.shape)
-    reach = stdtrit(BATCHES - 1, (1 + CONFIDENCE) / 2) / np.sqrt(BATCHES)
     for tile in run.tiles(max(1, devices.BLOCK // run.count)):
-        size = tuple(part.stop - part.start for part in tile)
-        found = Evaluation(run.devices(tile, slice(None))).result(quantity)
-        values = np.broadcast_to(np.asarray(found, dtype=float), (run.count, *size))
-        batches = values.reshape(BATCHES, run.each, *size)
-        missing[tile] = np.isnan(values).mean(axis=0)
-        with np.errstate(all="ignore"):
-            at = np.nanquantile(values, wanted, axis=0)
-            each = np.nanquantile(batches, wanted, axis=1)
-            half = reach * each.std(axis=1, ddof=1)
-        here = (slice(None), *tile)
-        middle[here] = at
-        low[here], high[here] = at - half, at + half
+        values = run.values(tile, quantity)
+        ordered = np.sort(values, axis=0)  # not-a-number comes last
+        known = np.count_nonzero(~np.isnan(values), axis=0)
+        missing[tile] = (run.count - known) / run.count
+        for index, level in enumerate(wanted):
+            here: Any = (index, *tile)
+            middle[here] = _at_level(ordered, known, level)
+            below = (values <= middle[here]).reshape(BATCHES, run.each, *values.shape[1:])
+            found = interval(np.count_nonzero(below, axis=1), run.each)
+            for ends, end in ((low, found.low), (high, found.high)):
+                apart = (end - found.share) * run.count / np.maximum(known, 1)
+                ends[here] = _at_level(ordered, known, np.clip(level + apart, 0.0, 1.0))
     return Quantiles(wanted, middle, low, high, missing if run.shape else float(missing))
+
+
+def _at_level(ordered: Array, known: Any, level: Any) -> Array:
+    """A quantile of sorted values, along the first axis, of which so many are known."""
+    last = np.maximum(known - 1, 0)
+    place = level * last
+    below = place.astype(np.int64)
+    first, second = (
+        np.take_along_axis(ordered, np.minimum(at, last)[None], axis=0)[0]
+        for at in (below, below + 1)
+    )
+    with np.errstate(invalid="ignore"):
+        between = first + (place - below) * (second - first)
+    return np.asarray(np.where(first == second, first, between))

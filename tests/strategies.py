@@ -19,6 +19,8 @@ from explorer.broadening import FORMS, Broadening
 from explorer.evaluate import Evaluation
 from explorer.inputs import INPUTS
 from explorer.registry import Input, parameters
+from explorer.sampling import LIMITING
+from explorer.scatter import Spread, kinds_for
 from explorer.whole import Lines, Pattern, Samples
 
 Point = dict[str, Any]
@@ -239,6 +241,34 @@ def points(draw: st.DrawFn, *, arrays: bool = False) -> Point:
         point[name] = value if np.ndim(value) else float(value)
     Evaluation(point)  # a default that depends on what was drawn must be possible with it
     return point
+
+
+#: Widths of a scatter over its natural size: still, modest, as wide as the domain, and absurd.
+WIDTHS = (0.0, 1e-12, 1e-3, 0.1, 0.5, 2.0, 30.0, 1e6, 1e30, 1e250)
+
+
+def scatters(point: Mapping[str, Any]) -> st.SearchStrategy[dict[str, Spread]]:
+    """A scatter of one to five inputs of a point, of every kind that suits them."""
+    work = Evaluation(point)
+
+    def suits(name: str, kind: str) -> bool:
+        centre = work.value(name)
+        return bool(
+            np.all(np.isfinite(centre)) and (kind != "lognormal" or np.all(np.asarray(centre) > 0))
+        )
+
+    def spread(name: str, kind: str, width: float) -> tuple[str, Spread]:
+        size = 1.0 if kind == "lognormal" else float(np.max(np.abs(work.value(name))))
+        return name, Spread(kind, width * (size or INPUTS[name].slider[1]))
+
+    pairs = [(name, kind) for name in NUMBERS for kind in kinds_for(name) if suits(name, kind)]
+    first = [pair for pair in pairs if pair[0] in LIMITING]  # half of the time: ranges follow them
+    row = st.tuples(
+        st.one_of(st.sampled_from(first), st.sampled_from(pairs)), st.sampled_from(WIDTHS)
+    )
+    return st.lists(row, min_size=1, max_size=5).map(
+        lambda rows: dict(spread(name, kind, width) for (name, kind), width in rows)
+    )
 
 
 def element(point: Mapping[str, Any], shape: tuple[int, ...], index: tuple[int, ...]) -> Point:
