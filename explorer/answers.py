@@ -20,15 +20,14 @@ from .curves import Cut, angles, colours, cut
 from .design import Design
 from .domain import InputError
 from .evaluate import Evaluation
-from .fabrication import passing_cut
+from .fabrication import fabrication_key, passing_cut, passing_map_steps
 from .inputs import INPUTS
 from .later import CUT_CELLS, Kept, Later
 from .maps import FRONTIERS, Axis, Map, make_map, stacked
 from .question import READ_OUT, Answer, Question, fitting_axis
 from .refusals import beyond
 from .registry import REGISTRY, dependencies
-from .sentence import next_step, sentence
-from .yield_maps import yield_map_steps
+from .sentence import met_by, next_step, sentence
 from .yields import PASSING
 
 #: Longest piece of work between two chances to hear of a newer question [s].
@@ -111,25 +110,21 @@ class Answers:
                 yield self._finished(first, drawn)
 
     def _passing_map(self, question: Question, key: Any, first: Answer) -> Iterator[Answer]:
-        """The map of the devices that pass: coarse at once, the rest after a moment of rest."""
+        """The map of the devices that pass: coarse at once, the rest after a moment of rest.
+
+        What else waits for rest comes before the finest map, which takes long.
+        """
         _check_ends(question)
-        design = question.design
         x, y = (
             replace(axis, count=min(YIELD_CELLS, axis.count)) for axis in (question.x, question.y)
         )
-        steps = yield_map_steps(
-            design.point,
-            x,
-            y,
-            design.scatter,
-            design.requirements,
-            count=YIELD_DRAWS,
-            correlation=design.correlation,
-            cautions=self._marks(question),
-            lines=tuple(name for name in self._wanted(question) if name != PASSING),
-        )
-        waiting = first
-        for done, drawn in steps:
+        lines = tuple(name for name in self._wanted(question) if name != PASSING)
+        marks, waiting = self._marks(question), first
+        for done, drawn in passing_map_steps(question.design, x, y, YIELD_DRAWS, lines, marks):
+            if done > 0 and waiting.map is not None and first.map is None:
+                for answer in self._later.steps(waiting):
+                    yield answer
+                first = waiting = answer
             if drawn is not None and done < 1:
                 waiting = replace(self._finished(first, drawn), whole=False, progress=done)
                 yield replace(waiting, rest=waiting.progress == 0)
@@ -155,8 +150,9 @@ class Answers:
         yield replace(self._finished(first, drawn), whole=False, rest=True)
 
     def _finished(self, first: Answer, drawn: Map) -> Answer:
-        said = "" if first.sentence.met else self._hint(first, drawn)
-        return replace(first, map=drawn, whole=True, hint=said)
+        met = met_by(first.question.design, first.outcome)
+        said = "" if met else self._hint(first, drawn)
+        return replace(first, map=drawn, whole=True, hint=said, progress=None)
 
     def _hint(self, first: Answer, drawn: Map) -> str:
         place = (float(first.values[drawn.x.name]), float(first.values[drawn.y.name]))
@@ -241,7 +237,7 @@ class Answers:
         )
         width = float(work.value("emission_width"))
         line, fault = self._kept.part(
-            "cut", (question.cut, design.point), lambda: _cut(work, question)
+            "cut", (question.cut, _cut_key(question)), lambda: _cut(work, question)
         )
         seen_first = (question, values, outcome, marks, rows, said, wide, seen, width, beam)
         return Answer(*seen_first, map=None, cut=line, whole=False, cut_fault=fault)
@@ -310,6 +306,12 @@ def _along(design: Design, axis: Axis, quantity: str) -> Any:
         return None
     value = Evaluation({**design.point, axis.name: axis.values}).result(quantity)
     return np.asarray(value) if np.shape(value) == axis.values.shape else None
+
+
+def _cut_key(question: Question) -> Any:
+    """What a cut depends on."""
+    share = question.cut is not None and question.cut[0] == PASSING
+    return fabrication_key(question.design) if share else question.design.point
 
 
 def _cut(work: Evaluation, question: Question) -> tuple[Cut | None, str]:

@@ -2,26 +2,66 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
+from dataclasses import replace
 from typing import Any
+
+import numpy as np
 
 from .curves import Cut
 from .design import Design
 from .domain import InputError
-from .maps import Axis
+from .maps import Axis, Map, make_map
 from .unknowns import Range, drawn_point, open_names, range_of
-from .yields import Yield, yield_of, yield_steps
+from .yield_maps import yield_map_steps
+from .yields import PASSING, Yield, yield_of, yield_steps
 
 #: Draws of what is not known, and devices of each, for the range of the share that passes.
 UNKNOWN_DRAWS, UNKNOWN_DEVICES = 64, 256
 
 
 def passing_cut(design: Design, axis: Axis, count: int) -> Cut:
-    """The share of devices that pass along an input through a design. Raises InputError."""
+    """The share of devices that pass along an input through a design. Raises InputError.
+
+    Where nothing is required, every device passes.
+    """
+    if not design.requirements:
+        return Cut(axis.values, np.ones(axis.count))
     point = {**design.point, axis.name: axis.values}
     asked = (design.scatter, design.requirements)
     found = yield_of(point, *asked, count, correlation=design.correlation)
     return Cut(axis.values, found.share)
+
+
+def passing_map_steps(
+    design: Design, x: Axis, y: Axis, count: int, lines: Sequence[str], cautions: Sequence[str]
+) -> Iterator[tuple[float, Map | None]]:
+    """The map of the devices that pass as it grows, see `yield_map_steps`. Raises InputError.
+
+    Where nothing is required, every device passes.
+    """
+    if design.requirements:
+        yield from yield_map_steps(
+            design.point,
+            x,
+            y,
+            design.scatter,
+            design.requirements,
+            count=count,
+            correlation=design.correlation,
+            cautions=cautions,
+            lines=lines,
+        )
+        return
+    drawn = make_map(design.point, x, y, [*lines, *cautions], (), cautions)
+    every = {PASSING: np.ones((y.count, x.count))}
+    yield 1.0, replace(drawn, values=every | dict(drawn.values))
+
+
+def scatters(design: Design) -> bool:
+    """Whether the devices that pass are asked for: some scatter, or a share of them is wanted."""
+    wanted = bool(design.scatter) or design.passing is not None
+    return wanted and bool(design.requirements)
 
 
 def fabrication_key(design: Design) -> tuple[Any, ...]:

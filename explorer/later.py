@@ -12,7 +12,7 @@ from typing import Any
 from .curves import Cut
 from .design import Design
 from .domain import InputError
-from .fabrication import Passing, fabrication_key, passing_cut
+from .fabrication import Passing, fabrication_key, passing_cut, scatters
 from .limiting import Limits, limits_of_design
 from .question import Answer, Question, fitting_axis
 from .sentence import passing_words, sentence
@@ -58,7 +58,8 @@ class Later:
     def wanted(question: Question) -> bool:
         """Whether there is anything of the kind."""
         design = question.design
-        return bool(open_names(design) or question.ranked or design.scatter)
+        cut = question.cut is not None and question.cut[0] == PASSING and bool(design.scatter)
+        return bool(open_names(design) or question.ranked or cut or scatters(design))
 
     def steps(self, whole: Answer) -> Iterator[Answer]:
         """The whole answer again and again, and at last with everything that could wait."""
@@ -137,9 +138,9 @@ class Later:
         return found
 
     def _passing(self, whole: Answer) -> Generator[Answer, None, Passing]:
-        """The devices that pass, where something scatters and something is required."""
+        """The devices that pass, where they are asked for and something is required."""
         design = whole.question.design
-        if not (design.scatter and design.requirements):
+        if not scatters(design):
             return Passing(design)
         made: Passing = self._kept.part("passing", fabrication_key(design), lambda: Passing(design))
         for _ in made.steps():

@@ -25,8 +25,8 @@ class Limits:
     """What to improve first, for one quantity.
 
     steps: of the budget, for a photon rate, and first: the one to improve first, in words. levers:
-    inputs by what a small change of each gives. costs: of the scatter, in devices that pass. fault:
-    why something is missing. whole: nothing is still to come.
+    inputs by what a small change of each gives. costs: of the scatter, in devices that pass. fault,
+    scatter_fault: why levers or costs are missing. whole: nothing is still to come.
     """
 
     quantity: str
@@ -35,6 +35,7 @@ class Limits:
     levers: tuple[Elasticity, ...] = ()
     costs: SpreadCosts | None = None
     fault: str = ""
+    scatter_fault: str = ""
     whole: bool = False
 
 
@@ -50,10 +51,13 @@ def limits_of_design(design: Design, quantity: str) -> Iterator[Limits]:
             for levers in elasticity_steps(design, quantity):
                 found = replace(found, levers=levers)
                 yield found
+    except InputError as error:  # no slope here
+        found = replace(found, fault=str(error))
+    try:
         if design.scatter and design.requirements:
             for costs in cost_steps(design):
                 found = replace(found, costs=costs)
                 yield found
-    except InputError as error:  # no slope here, or what scatters cannot
-        found = replace(found, fault=str(error))
+    except InputError as error:  # what scatters cannot
+        found = replace(found, scatter_fault=str(error))
     yield replace(found, whole=True)

@@ -83,25 +83,30 @@ def _example(unit: str) -> str:
 
 #: A number, a sign that stands for more and less, and a width, which may be a share of the number.
 _SPREAD = re.compile(
-    r"\s*(?P<centre>.*\d.*?)\s*(?:±|\+/-|\+-)\s*(?P<width>[\d.,]+(?:e[−+-]?\d+)?)\s*(?P<unit>.*)"
+    r"\s*(?P<centre>.*\d.*?)\s*(?:±|\+/-|\+-)\s*"
+    r"(?P<width>[−+-]?[\d.,]+(?:e[−+-]?\d+)?)\s*(?P<unit>.*)",
+    re.IGNORECASE,
 )
 
 
 def read_spread(text: str, shown: str) -> tuple[float, float] | None:
     """SI value and SI width of what a person typed as '637 ± 2 nm' or '100 ± 10 %'.
 
-    A width in % is a share of the value. None where it is no such thing. shown: the unit of numbers
-    without one. Raises ReadingError for what cannot be read.
+    A width in % is a share of the value, unless the value is in % itself. A unit behind one of the two
+    is that of both. None where it is no such thing. shown: the unit of numbers without one. Raises
+    ReadingError for what cannot be read; a negative width is read as it stands.
     """
     found = _SPREAD.fullmatch(text)
     if found is None:
         return None
+    alone = _NUMBER.fullmatch(_typeset(found["centre"]))
+    own = ((alone and alone["unit"]) or "").strip()
     unit = found["unit"].strip()
-    relative = unit == "%"
-    centre = read_number(f"{found['centre']} {'' if relative else unit}".strip(), shown)
-    if relative:
+    if unit == "%" and own != "%":
+        centre = read_number(found["centre"], shown)
         return centre, abs(centre) * read_number(f"{found['width']} %", "1")
-    return centre, read_number(f"{found['width']} {unit}".strip(), shown)
+    value, width = f"{found['centre']} {'' if own else unit}", f"{found['width']} {unit or own}"
+    return read_number(value.strip(), shown), read_number(width.strip(), shown)
 
 
 #: Two numbers with a dash, dots or a word between them, and a unit behind.

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
@@ -53,7 +54,11 @@ MARKS = {"seen": "●", "from memory": "○", "measured": "◆", "typed": "✎",
 
 @dataclass(frozen=True)
 class Sentence:
-    """headline, detail, known: three lines of text; met: whether every requirement holds (None: none)."""
+    """headline, detail, known: three lines of text.
+
+    met: whether every requirement holds (None: there is none), and as many devices pass as are wanted,
+    once that is known.
+    """
 
     headline: str
     detail: str
@@ -63,11 +68,24 @@ class Sentence:
 
 @dataclass(frozen=True)
 class Devices:
-    """How many devices pass, for the headline, and what is missed of it, for the line below."""
+    """How many devices pass, for the headline, and what is said of it in the line below.
+
+    short: whether they are fewer than wanted.
+    """
 
     passing: str = ""
     missed: str = ""
+    short: bool = False
 
+
+#: Names that are no plain words, and the labels of what they name.
+_LABELS = {
+    name: entry.label
+    for known in (INPUTS, REGISTRY.quantities)
+    for name, entry in known.items()
+    if "_" in name
+}
+_NAMES = re.compile(rf"\b({'|'.join(sorted(_LABELS, key=len, reverse=True))})\b")
 
 #: Nothing is said of devices.
 NOT_ASKED = Devices()
@@ -198,16 +216,18 @@ def sentence(
         for entry in others
         if entry
     ]
-    if devices.missed:
+    if devices.missed and not devices.short:
         clauses.append(devices.missed)
     worst = hindrance(rows, design.evaluation.value("pumping") == "continuous")
     if worst:
         clauses.append(worst)
-    met = None
-    if design.requirements:
-        met = all(bool(entry.met(outcome[entry.quantity])) for entry in design.requirements)
-        if met:
-            clauses.insert(0, "every requirement is met")
+    met = met_by(design, outcome)
+    if met:
+        who = "the design itself meets every requirement"
+        clauses.insert(0, who if devices.short else "every requirement is met")
+        met = not devices.short
+    if devices.short:  # next to how many pass, at the end of the headline
+        clauses.insert(0, devices.missed)
     known = provenance(design, len(open_names(design)) if around else 0)
     headline = _headline(first, outcome, free, around)
     if devices.passing:
@@ -215,22 +235,31 @@ def sentence(
     return Sentence(headline, " · ".join(clauses), met, known)
 
 
+def in_labels(message: str) -> str:
+    """A message with the labels of inputs and quantities in place of their names."""
+    return _NAMES.sub(lambda found: _LABELS[found[0]], message)
+
+
+def met_by(design: Design, outcome: Mapping[str, Any]) -> bool | None:
+    """Whether an outcome meets every requirement of a design; None where nothing is required."""
+    met = [bool(entry.met(outcome[entry.quantity])) for entry in design.requirements]
+    return all(met) if met else None
+
+
 def passing_words(
     design: Design, passing: Yield | None, around: Range | None = None, fault: str = ""
 ) -> Devices:
     """How many fabricated devices pass: '61 (40–75) of 100 devices pass', and what is said beside."""
     if passing is None:
-        return Devices("", f"devices that pass: {fault}" if fault else "")
+        return Devices("", f"devices that pass: {in_labels(fault)}" if fault else "")
     shown = hundred(passing)
     if around is not None:
         ends = [f"{100 * end:.0f}" for end in (around.low, around.high)]
         shown += "" if ends[0] == ends[1] else f" ({'–'.join(ends)})"
     wanted = design.passing
-    missed = wanted is not None and passing.share < wanted
-    return Devices(
-        f"{shown} of 100 devices pass",
-        f"{100 * (wanted or 0):.3g} of 100 wanted ✗" if missed else "",
-    )
+    short = wanted is not None and passing.share < wanted
+    missed = f"{100 * (wanted or 0):.5g} of 100 wanted ✗" if short else ""
+    return Devices(f"{shown} of 100 devices pass", missed, short)
 
 
 def hundred(passing: Yield | Share) -> str:
@@ -238,9 +267,9 @@ def hundred(passing: Yield | Share) -> str:
     share = float(passing.share)
     if passing.low == passing.high and share in (0.0, 1.0):  # nothing scatters that matters
         return "100" if share else "0"
-    if share > 0.995:
+    if share >= 0.995:
         return "over 99"
-    if share < 0.005:
+    if share <= 0.005:
         return "under 1"
     return f"{100 * share:.0f}"
 

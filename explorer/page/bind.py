@@ -188,7 +188,7 @@ class InputRow(VBox):
         name = self.entry.name
         self._opened = not self._opened or name not in self._state.question.design.scatter
         if self._opened and name not in self._state.question.design.scatter:
-            self._state.give_spread(name, first_spread(self.entry))
+            self._state.give_spread(name, first_spread(self.entry, self._value))
         self._follow_scatter(self._state.question.design)
 
     def _follow_scatter(self, design: Design) -> None:

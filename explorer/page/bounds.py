@@ -22,6 +22,7 @@ class BoundsBox(VBox):
     def __init__(self, state: State, seat: str) -> None:
         self._state, self._seat = state, seat
         self._ends: dict[str, Ends] = {}
+        self._wrong: dict[tuple[str, int], str] = {}
         title = Label("may change, from – to")
         title.add_class("x-name")
         numbers = [(entry.label, name) for name, entry in INPUTS.items() if not entry.whole]
@@ -38,7 +39,9 @@ class BoundsBox(VBox):
         self._draw()
 
     def bounds(self) -> dict[str, Ends]:
-        """The inputs that may change, with their ends, SI."""
+        """The inputs that may change, with their ends, SI. InputError while a box holds no number."""
+        for said in self._wrong.values():
+            raise InputError(said)
         return dict(self._ends)
 
     def _add(self, change: dict[str, Any]) -> None:
@@ -55,6 +58,8 @@ class BoundsBox(VBox):
         self._draw()
 
     def _draw(self) -> None:
+        """All rows anew, with what they hold."""
+        self._wrong.clear()
         for old in self.rows.children:
             old.close()
         self.rows.children = [self._row(name) for name in self._ends]
@@ -89,15 +94,15 @@ class BoundsBox(VBox):
 
     def _typed(self, name: str, side: int, words: str) -> None:
         ends = list(self._ends[name])
-        if words == shown_end(name, ends[side]):
-            return
+        self._wrong.pop((name, side), None)
         try:
-            ends[side] = read_number(words, INPUTS[name].shown)
+            if words != shown_end(name, ends[side]):  # which may have been rounded
+                ends[side] = read_number(words, INPUTS[name].shown)
         except ReadingError as error:
-            self._state.refuse(self._seat, str(error))
-            return
-        self._state.settle(self._seat)
+            self._wrong[name, side] = str(error)
         self._ends[name] = (ends[0], ends[1])
+        said = next(iter(self._wrong.values()), "")
+        (self._state.refuse(self._seat, said) if said else self._state.settle(self._seat))
 
 
 def shown_end(name: str, value: float) -> str:

@@ -1124,7 +1124,9 @@ class MapView {
     if (!text) return;
     const wide = this.textWidth(text, this.size, 600) + 8;
     const room = { left: px - 16 - wide > plot.x, right: px + 16 + wide < plot.x + plot.w };
-    const left = room.left && (x > px || !room.right) ? px - 16 - wide : px + 16;
+    const others = path?.length > 1 ? path.map((step) => at(step)[0]) : [x]; // not on the side of these
+    const middle = others.reduce((sum, one) => sum + one, 0) / others.length;
+    const left = room.left && (middle > px || !room.right) ? px - 16 - wide : px + 16;
     this.tag(pen, text, { x: left, y: py - 11, w: wide, h: 22 }, { weight: 600, colour: theme.red });
   }
 

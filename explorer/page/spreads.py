@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from typing import Any
 
 from ipywidgets import Button, Dropdown, HBox, Label, Text
@@ -35,14 +36,16 @@ FIRST = {
 }
 
 
-def first_spread(entry: Input) -> Spread:
-    """The scatter that an input begins with when a person asks for one."""
+def first_spread(entry: Input, centre: float) -> Spread:
+    """The scatter that an input begins with, around its value, when a person asks for one."""
     if entry.name in FIRST:
         return FIRST[entry.name]
-    if entry.scale.startswith("log"):
-        return Spread("lognormal", 0.1)
     low, high = entry.slider
-    return Spread("normal", float(f"{0.02 * (high - low):.1g}"))
+    logarithmic = entry.scale.startswith("log")
+    if logarithmic and centre > 0:
+        return Spread("lognormal", 0.1)
+    size = 0.1 * math.sqrt(low * high) if logarithmic else 0.02 * (high - low)
+    return Spread("normal", float(f"{size:.1g}"))
 
 
 def unit_of(name: str, kind: str) -> str:
@@ -94,8 +97,9 @@ def other_kind(name: str, spread: Spread, kind: str, centre: float) -> Spread:
 
 
 def _sized(name: str, kind: str, centre: float) -> Spread:
-    width = 0.1 if kind == "lognormal" else 0.05 * abs(centre) or first_spread(INPUTS[name]).width
-    return Spread(kind, width)
+    if kind == "lognormal":
+        return Spread(kind, 0.1)
+    return Spread(kind, 0.05 * abs(centre) or first_spread(INPUTS[name], centre).width)
 
 
 class SpreadLine(HBox):
@@ -104,6 +108,7 @@ class SpreadLine(HBox):
     def __init__(self, state: State, name: str) -> None:
         self._state, self._name = state, name
         self._syncing = False
+        self._shown: Spread | None = None
         options = [(WORDS[kind], kind) for kind in kinds_for(name)]
         label = INPUTS[name].label
         self.kind = Dropdown(options=options, tooltip=f"How {label} scatters from device to device")
@@ -126,8 +131,10 @@ class SpreadLine(HBox):
         self._syncing = True
         self.kind.value = spread.kind
         words = width_words(self._name, spread)
-        if self.box.value != words:
+        wrong = self._name in self._state.problems and spread == self._shown
+        if self.box.value != words and not wrong:  # what was typed wrongly stays to be mended
             self.box.value = words
+        self._shown = spread
         unit = unit_of(self._name, spread.kind)
         self.unit.value = "" if unit == "1" or spread.kind == "direction" else unit
         self.box.tooltip = SPREADS[spread.kind]
@@ -144,6 +151,7 @@ class SpreadLine(HBox):
             self._state.give_spread(
                 self._name, other_kind(self._name, spread, change["new"], centre)
             )
+            self.follow(self._state.question.design)  # a kind that was refused is not shown
 
     def _typed(self, change: dict[str, Any]) -> None:
         spread = self._state.question.design.scatter.get(self._name)

@@ -20,7 +20,7 @@ from ..question import Answer, Question
 from ..sampling import displaced, draws
 from ..scatter import Spread
 from ..unknowns import spread as drawn_at
-from .proposal import Proposal, found_by_search
+from .proposal import Proposal, found_by_search, moved_to
 from .records import PLACE, as_published, placed, still_placed
 from .shortlist import Shortlist
 
@@ -110,21 +110,13 @@ class State:
     def give_spread(self, name: str, spread: Spread | None) -> None:
         """Say that an input scatters from device to device, or (None) that it no longer does."""
 
-        def change(design: Design) -> Design:
-            if spread is not None:  # refused here, beside the input, where it cannot scatter so
-                displaced(draws({name: spread}, 1), design.point)
-            return design.with_scatter(name, spread)
-
-        self.change(change, (name,))
+        self.change(lambda design: scattering(design, name, spread), (name,))
 
     def give_scattering(self, name: str, centre: float, width: float) -> None:
         """Give an input with a normal scatter around it, SI, as a person typed both."""
 
         def change(design: Design) -> Design:
-            spread = Spread("normal", width)
-            design = design.with_values(**{name: centre})
-            displaced(draws({name: spread}, 1), design.point)
-            return design.with_scatter(name, spread)
+            return scattering(design.with_values(**{name: centre}), name, Spread("normal", width))
 
         self.change(change, (name,))
 
@@ -176,12 +168,7 @@ class State:
         """Make the proposed design the present one."""
         if self.proposal is None:
             return
-        point, design = self.proposal.point, self.question.design
-        moved = {
-            name: value
-            for name, value in point.items()
-            if name not in design.point or design.point[name] != value
-        }
+        moved = moved_to(self.question.design, self.proposal.point)
         self.propose(None)
         self.change(lambda design: found_by_search(design, moved), moved)
 
@@ -275,6 +262,15 @@ class State:
             return False
         self._handle = asyncio.get_running_loop().call_later(delay, self._go_on)
         return True
+
+
+def scattering(design: Design, name: str, spread: Spread | None) -> Design:
+    """A design of which an input scatters so, or no longer. InputError where it cannot."""
+    changed = design.with_scatter(name, spread)
+    if spread is not None:
+        draws(changed.scatter, 1, correlation=changed.correlation)
+        displaced(draws({name: spread}, 1), design.point)
+    return changed
 
 
 def _in_a_loop() -> bool:

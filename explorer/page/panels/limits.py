@@ -13,7 +13,7 @@ from ...limiting import Limits
 from ...limits import Elasticity, Headroom, SpreadCosts
 from ...question import Answer
 from ...registry import REGISTRY
-from ...sentence import hundred
+from ...sentence import hundred, in_labels
 from ...units import text
 from ...unknowns import Influence
 from ...yields import Share, Yield
@@ -22,6 +22,8 @@ from ..state import State
 WORKING = '<p class="x-plain">working …</p>'
 
 NOTHING = "Nothing is given as a range. Type one, such as 3.4–3.9, into the number box of what is not known."
+
+UNASKED = "Nothing is required, so every device passes. Say what is wanted on the left."
 
 STILL = "Nothing scatters. Press ± beside a slider to say how much an input differs from device to device."
 
@@ -53,13 +55,14 @@ class LimitsPanel(VBox):
             ]
         )
         self.add_class("panel-limits")
-        self._open = False
+        self._open = self._chosen = False
         self.quantity.observe(lambda _: self._ask(), "value")
         state.on_answer(self._draw)
 
     def opened(self, is_open: bool) -> None:
         """Hear that the view is opened or closed; nothing is worked out for a closed one."""
-        if is_open and not self._state.question.ranked:
+        if is_open and not self._chosen:  # later what a person chose stays
+            self._chosen = True
             wanted = self._state.question.design.requirements
             self.quantity.value = wanted[0].quantity if wanted else "rate_in_fibre"
         self._open = is_open
@@ -74,8 +77,10 @@ class LimitsPanel(VBox):
         unit = REGISTRY.quantities[answer.question.ranked].unit
         self.improve.value = WORKING if answer.limits is None else improvements(answer.limits)
         self.list.value = WORKING if answer.ranking is None else ranked(answer.ranking, unit)
-        if not answer.question.design.scatter:
-            self.fabricate.value = f'<p class="x-plain">{escape(STILL)}</p>'
+        design = answer.question.design
+        if not design.scatter or not design.requirements:
+            why = STILL if design.requirements else UNASKED
+            self.fabricate.value = f'<p class="x-plain">{escape(why)}</p>'
         elif answer.limits is None:
             self.fabricate.value = WORKING
         else:
@@ -107,8 +112,12 @@ def improvements(limits: Limits) -> str:
             f"</caption><tbody>{rows}</tbody></table>"
         )
     if limits.fault:
-        parts.append(f'<p class="x-plain">{escape(limits.fault)}</p>')
-    return "".join(parts)
+        parts.append(_plain(limits.fault))
+    return "".join(parts) or _plain("Nothing here would change it.")
+
+
+def _plain(words: str) -> str:
+    return f'<p class="x-plain">{escape(in_labels(words))}</p>'
 
 
 def _by_gain(steps: Sequence[Headroom]) -> list[Headroom]:
@@ -122,7 +131,7 @@ def _step(row: Headroom) -> str:
     length = 0.0 if math.isinf(gain) else 100 * (1 - 1 / gain)
     shown = "" if math.isinf(gain) else f"×{text(gain, '1', 2)}"
     return _bar(
-        row.step, length, text(row.ideal, "1/s"), shown, f"{row.words.held_by}. {row.words.note}"
+        row.step, length, text(row.ideal, "1/s", 2), shown, f"{row.words.held_by}. {row.words.note}"
     )
 
 
@@ -147,15 +156,18 @@ def fabrication(limits: Limits, passing: Yield | None) -> str:
             _bar(_requirement(name), 100 * float(share.share), "", _percent(share))
             for name, share in passing.by_requirement.items()
         )
-        ends = f"{100 * float(passing.low):.3g}–{100 * float(passing.high):.3g}"
-        sure = f" (95 %: {ends})" if passing.low < passing.high else ""
+        ends = f"{100 * float(passing.low):.2g}–{100 * float(passing.high):.3g}"
+        sure = f" (95 % sure: {ends})" if passing.low < passing.high else ""
+        said = f"{hundred(passing)} of 100 devices meet everything{sure}."
         parts.append(
-            f'<p class="x-first">{hundred(passing)} of 100 devices meet everything{sure}.</p>'
+            f'<p class="x-first">{said[0].upper()}{said[1:]}</p>'
             '<table class="x-budget x-ranked"><caption>devices that meet each requirement</caption>'
             f"<tbody>{rows}</tbody></table>"
         )
     if limits.costs is not None:
         parts.append(costs(limits.costs))
+    elif limits.scatter_fault:
+        parts.append(_plain(limits.scatter_fault))
     return "".join(parts) or WORKING
 
 
@@ -196,9 +208,9 @@ def _bar(
     """A row of a ranked list: name, bar, words beside it, figure; less: the bar takes."""
     tone = ' class="x-less"' if less else ""
     return (
-        f'<tr><th scope=row title="{escape(title)}">{escape(name)}</th>'
+        f'<tr><th scope=row title="{escape(title or name)}">{escape(name)}</th>'
         f'<td class="x-bar"><b{tone} style="width:{min(length, 100.0):.1f}%"></b>'
-        f'<span class="{"x-in" if length > 60 else "x-out"}" style="--at:{length:.1f}%">{escape(inside)}</span></td>'
+        f'<span class="{"x-in" if length > 50 else "x-out"}" style="--at:{length:.1f}%">{escape(inside)}</span></td>'
         f'<td class="x-factor">{escape(factor)}</td></tr>'
     )
 
@@ -209,21 +221,18 @@ def ranked(rows: Sequence[Influence], unit: str) -> str:
         return f'<p class="x-plain">{escape(NOTHING)}</p>'
     body = "".join(_line(row, unit) for row in rows)
     return (
-        '<table class="x-budget x-ranked"><caption>share of what is open that hangs on each; the '
+        '<table class="x-budget x-ranked x-ends"><caption>share of what is open that hangs on each; the '
         "quantity at the ends of each range alone</caption>"
         f"<tbody>{body}</tbody></table>"
     )
 
 
 def _line(row: Influence, unit: str) -> str:
-    ends = " – ".join(_two(row.low, row.high, unit))
-    share = 100 * row.share
-    return (
-        f"<tr><th scope=row>{escape(INPUTS[row.name].label)}</th>"
-        f'<td class="x-bar"><b style="width:{share:.1f}%"></b>'
-        f'<span class="{"x-in" if share > 60 else "x-out"}" style="--at:{share:.1f}%">{escape(ends)}</span></td>'
-        f'<td class="x-factor">{share:.0f} %</td></tr>'
-    )
+    ends, share = _two(row.low, row.high, unit), 100 * row.share
+    number, _, same = ends[0].rpartition(" ")
+    if number and ends[1].rpartition(" ")[2] == same:  # 6.7–16 M/s
+        ends[0] = number
+    return _bar(INPUTS[row.name].label, share, f"{share:.0f} %", "–".join(ends))
 
 
 def _two(low: float, high: float, unit: str) -> list[str]:

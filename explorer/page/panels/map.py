@@ -12,6 +12,7 @@ from ...maps import Map
 from ...question import Answer, Question, fitting_axis
 from ...registry import REGISTRY
 from ...sentence import quantity_label
+from ...yields import PASSING
 from ..backdrop import Backdrop
 from ..canvas import MapCanvas
 from ..picture import described, is_free, picture_of
@@ -28,6 +29,10 @@ LAYERS = {
     "marks": "devices",
     "all_marks": "all devices",
 }
+
+#: What is said above a map of the devices that pass.
+DRAWING, STOPPED = "drawing devices", "stopped: a coarse map"
+DRAWN = "share of devices that meet everything"
 
 #: Least change of an axis fraction that is a move, not a rounding of pixels.
 STILL = 1e-9
@@ -60,9 +65,10 @@ class MapPanel(VBox):
         head.add_class("x-maphead")
         layers = HBox(list(self.switches.values()))
         layers.add_class("x-layers")
-        self.working = FloatProgress(min=0.0, max=1.0)
+        self.doing = Label("")
+        self.working = FloatProgress(min=0.0, max=1.0, tooltip="How much of the map is drawn")
         self.stop = Button(description="stop", tooltip="Leave the map as it is now")
-        self.progress = HBox([Label("drawing devices"), self.working, self.stop])
+        self.progress = HBox([self.doing, self.working, self.stop])
         self.progress.add_class("x-progress")
         self.progress.layout.display = "none"
         self.canvas = MapCanvas()
@@ -127,6 +133,7 @@ class MapPanel(VBox):
             # A map that is still of an older question is on the canvas already.
             if answer.map is not None and (answer.whole or answer.map is not self._map):
                 self._paint(answer, answer.map)
+                self._describe(answer, answer.map)
             self._place(answer)
             self._report(answer)
             self._propose()
@@ -139,11 +146,20 @@ class MapPanel(VBox):
         self.canvas.proposal = {} if proposal is None else proposal.on(question.x, question.y)
 
     def _report(self, answer: Answer) -> None:
-        """How far a map is that takes long; the row takes no room where there is nothing to say."""
+        """How far a map is that takes long; its row keeps its room, so that the map stays in place."""
         done = answer.progress
-        shown = "none" if done is None else ""
-        if self.progress.layout.display != shown:
-            self.progress.layout.display = shown
+        row = "" if answer.question.shown == PASSING else "none"
+        busy = "hidden" if done is None else "visible"
+        words = DRAWN if done is None else DRAWING
+        if done is None and not answer.whole:
+            words = STOPPED
+        for widget, shown in ((self.working, busy), (self.stop, busy)):
+            if widget.layout.visibility != shown:
+                widget.layout.visibility = shown
+        if self.progress.layout.display != row:
+            self.progress.layout.display = row
+        if self.doing.value != words:
+            self.doing.value = words
         if done is not None and (abs(done - self.working.value) > 0.02 or done == 0):
             self.working.value = done
 
@@ -182,7 +198,13 @@ class MapPanel(VBox):
         self._map = drawn
         self._drawn, self._held = key, (drawn, back)  # held, so that their ids stay theirs
         self.canvas.show(picture_of(answer, drawn, back))
-        self.canvas.description = described(answer, drawn)
+
+    def _describe(self, answer: Answer, drawn: Map) -> None:
+        """The map and the design on it in words, once a hand rests."""
+        if answer.progress is None and not answer.rest:
+            words = described(answer, drawn)
+            if words != self.canvas.description:
+                self.canvas.description = words
 
 
 def _quantities(free: bool) -> list[tuple[str, str]]:

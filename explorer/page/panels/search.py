@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
+from dataclasses import replace
 from html import escape
 from typing import Any
 
@@ -14,11 +15,12 @@ from ...inputs import INPUTS
 from ...question import Answer
 from ...registry import REGISTRY
 from ...search import Found, Front, Goal, best_steps, front_steps, nearest_steps
+from ...sentence import in_labels
 from ...sturdy import sturdiest_steps
 from ...units import text
 from ..bind import typed
 from ..bounds import BoundsBox
-from ..proposal import Proposal
+from ..proposal import Proposal, found_by_search, moved_to
 from ..state import State
 from ..work import Work
 
@@ -59,6 +61,8 @@ class SearchPanel(VBox):
         self._state = state
         self._work = Work()
         self._asked: Design | None = None
+        self._sought = ""
+        self._last: Found | Front | None = None
         self._front: Front | None = None
         self.kind = Dropdown(options=list(KINDS.items()), tooltip="What to look for")
         self.kind.add_class("x-menu")
@@ -121,7 +125,8 @@ class SearchPanel(VBox):
     def _start(self) -> None:
         self._forget()
         self._state.settle(SEAT)
-        self._asked = self._state.question.design
+        self._asked, self._sought = self._state.question.design, self.kind.value
+        self.along.value, self._last = 1, None
         try:
             steps = self._steps(self._asked)
         except InputError as error:
@@ -133,15 +138,19 @@ class SearchPanel(VBox):
     def _watched(self, steps: Iterator[Any]) -> Iterator[Any]:
         """The steps, with what is found so far said now and then."""
         for count, found in enumerate(steps):
+            self._last = found
             if count % 5 == 0:
                 self._tell(found, final=False)
             yield found
 
     def _stop(self) -> None:
         self._work.stop()
+        if self._last is not None:
+            self._tell(self._last, final=True)
         self._show()
 
     def _failed(self, error: Exception) -> None:
+        self.said.value = ""
         self._state.refuse(SEAT, str(error))
         self._show()
 
@@ -152,6 +161,7 @@ class SearchPanel(VBox):
     # ------------------------------------------------------------ showing
 
     def _tell(self, found: Found | Front, final: bool) -> None:
+        """Say and show what is found so far or, finally, at all."""
         if isinstance(found, Front):
             self._front = found if found.points else None
             self.along.max = max(len(found.points), 2)
@@ -159,40 +169,55 @@ class SearchPanel(VBox):
             if self._front is None:
                 self.said.value = _paragraph(found.reason if final else _so_far(found))
             return
-        if found.changes and (final or found.met):
-            self._propose(found.point, found.met)
-        words = found.reason if final else _so_far(found)
-        if final and found.met and found.changes:  # what changes stands in the table
-            words = (
-                "Every requirement is met." if found.value is None else words.split(", with ")[0]
-            )
+        if final:
+            found = self._in_few_digits(found)
+        reached = found.met or (self._sought == "sturdy" and bool(found.value))
+        if found.changes and (final or reached):
+            self._propose(found.point, reached)
+        words = said(found) if final else _so_far(found)
         self.said.value = _paragraph(words) + changes(found.changes) + outcome(found.outcome)
+
+    def _in_few_digits(self, found: Found) -> Found:
+        """What was found as it would be taken."""
+        if self._asked is None or not found.changes:
+            return found
+        short = found_by_search(self._asked, moved_to(self._asked, found.point))
+        moved = {
+            name: (before, float(short.evaluation.value(name)))
+            for name, (before, _) in found.changes.items()
+        }
+        return replace(
+            found, point=short.point, changes=moved, outcome=short.outcome(list(found.outcome))
+        )
 
     def _choose(self) -> None:
         """Show one design of a trade-off, and the others as a line on the map."""
-        front = self._front
-        if front is None or self._asked is None:
+        front, asked = self._front, self._asked
+        if front is None or asked is None:
             return
         index = min(self.along.value, len(front.points)) - 1
-        self._propose(front.points[index], True, front.points)
+        point = front.points[index]
+        if not self._work.busy:
+            point = found_by_search(asked, moved_to(asked, point)).point
+        self._propose(point, True, front.points)
         values = " · ".join(
             f"{REGISTRY.quantities[goal.quantity].label} "
             f"{text(float(value), REGISTRY.quantities[goal.quantity].unit)}"
             for goal, value in zip(front.goals, front.values[index], strict=True)
         )
         place = f"{index + 1} of {len(front.points)}: {values}" if len(front.points) > 1 else ""
-        point, before = front.points[index], self._asked.evaluation
+        before = asked.evaluation
         moved = {
-            name: (float(before.value(name)), float(point[name]))
-            for name in self.bounds.bounds()
-            if name in point and point[name] != before.value(name)
+            name: (float(before.value(name)), float(value))
+            for name, value in moved_to(asked, point).items()
+            if not INPUTS[name].whole
         }
         self.said.value = _paragraph(front.reason) + _paragraph(place) + changes(moved)
 
     def _propose(
         self, point: Mapping[str, Any], met: bool, path: tuple[Mapping[str, Any], ...] = ()
     ) -> None:
-        words = {"sturdy": "sturdiest", "front": "trade-off"}.get(self.kind.value, self.kind.value)
+        words = {"sturdy": "sturdiest", "front": "trade-off"}.get(self._sought, self._sought)
         self._state.propose(Proposal(dict(point), words if met else "closest", path))
 
     def _show(self) -> None:
@@ -211,7 +236,7 @@ class SearchPanel(VBox):
             widget.layout.display = "" if shown else "none"
 
     def _complain(self) -> None:
-        self.wrong.value = self._state.problems.get(SEAT, "")
+        self.wrong.value = in_labels(self._state.problems.get(SEAT, ""))
 
     # ------------------------------------------------------------ taking
 
@@ -242,6 +267,14 @@ def _paragraph(words: str) -> str:
     return f'<p class="x-first">{escape(words)}</p>' if words else ""
 
 
+def said(found: Found) -> str:
+    """What was found in a sentence; what it changes stands in the table."""
+    if found.met and found.changes and found.value is None:
+        return "Every requirement is met."
+    start, with_, _ = found.reason.partition(", with ")
+    return f"{start}." if with_ and found.changes else found.reason
+
+
 def _so_far(found: Found | Front) -> str:
     return f"searching … {found.done} of {found.starts}" if found.starts else "searching …"
 
@@ -250,11 +283,16 @@ def changes(moved: Mapping[str, tuple[float, float]]) -> str:
     """What a found design changes, as an HTML table."""
     rows = "".join(
         f"<tr><th scope=row>{escape(INPUTS[name].label)}</th>"
-        f"<td>{escape(typed(name, before, 4))} → <b>{escape(typed(name, after, 4))}</b> "
+        f"<td>{escape(_plain(name, before))} → <b>{escape(_plain(name, after))}</b> "
         f"{escape('' if INPUTS[name].shown == '1' else INPUTS[name].shown)}</td></tr>"
         for name, (before, after) in moved.items()
     )
     return f'<table class="x-moves"><tbody>{rows}</tbody></table>' if rows else ""
+
+
+def _plain(name: str, value: float) -> str:
+    """A value in four digits as its number box shows it: 11800, not 1.18e+04."""
+    return typed(name, float(f"{value:.4g}"))
 
 
 def outcome(found: Mapping[str, float]) -> str:

@@ -98,13 +98,15 @@ class WantedPanel(VBox):
         wanted = answer.question.design.passing
         self.share.layout.display = "none" if wanted is None else ""
         if wanted is not None:
-            self._shown = f"{100 * wanted:.4g} %"
-            self.box.value = self._shown
+            shown = f"{100 * wanted:.10g} %"
+            if shown != self._shown or SEAT not in self._state.problems:
+                self._shown = self.box.value = shown
             missed = answer.passing is not None and answer.passing.share < wanted
             (self.share.add_class if missed else self.share.remove_class)("x-missed")
 
     def _share_typed(self, typed: str) -> None:
         if typed == self._shown:
+            self._state.settle(SEAT)
             return
         try:
             self._require_share(read_number(typed, "%"))
