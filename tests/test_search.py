@@ -725,7 +725,7 @@ def search_by_chance(seeds: range, count: int) -> int:
 
 def test_random_problems() -> None:
     """None of 4,000 random designs meets what is said to be out of reach, or is nearer."""
-    assert 5 < search_by_chance(range(30), 4000) < 25
+    assert 2 < search_by_chance(range(10), 4000) < 8
 
 
 @pytest.mark.slow
@@ -734,9 +734,9 @@ def test_many_random_problems() -> None:
     assert 50 < search_by_chance(range(200), 20000) < 150
 
 
-@pytest.mark.parametrize("most", [True, False])
-def test_no_random_design_is_better_than_the_best(most: bool) -> None:
-    for seed in range(3000, 3015):
+def best_by_chance(seeds: range, *, most: bool) -> None:
+    """Search the best of random problems; no random design may be better."""
+    for seed in seeds:
         problem = drawn(seed)
         goal = Goal(WANTED[seed % len(WANTED)], most=most)
         found = best(problem.point, goal, problem.requirements, problem.bounds)
@@ -748,6 +748,17 @@ def test_no_random_design_is_better_than_the_best(most: bool) -> None:
             top = values.max() if most else values.min()
             assert found.value is not None
             assert (found.value - top) * (1 if most else -1) >= -CLOSE * abs(top), seed
+
+
+@pytest.mark.parametrize("most", [True, False])
+def test_no_random_design_is_better_than_the_best(most: bool) -> None:
+    best_by_chance(range(3002, 3006), most=most)
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("most", [True, False])
+def test_no_random_design_is_better_than_many_best(most: bool) -> None:
+    best_by_chance(range(3000, 3060), most=most)
 
 
 def test_no_random_design_beats_a_front() -> None:
@@ -794,7 +805,7 @@ def not_found(seeds: range, width: float) -> list[int]:
 
 def test_hidden_designs_are_found() -> None:
     """Windows of ± a thousandth for up to three quantities at once, met by a place that is known."""
-    assert not_found(range(1000, 1020), 1e-3) == []
+    assert not_found(range(1000, 1007), 1e-3) == []
 
 
 @pytest.mark.slow

@@ -4,9 +4,9 @@
     found.met, found.reason, found.point
 
 Distances count on the scales of the inputs, so inputs of different kinds compare. A search samples the
-box evenly, goes down from the best places of the sample together, and checks what it returns as one
-design by itself. The same call gives the same answer. The `…_steps` functions do the same in slices of
-some ten milliseconds and yield the best so far after each.
+box evenly, goes down from the best places of the sample (SLSQP of scipy), and checks what it returns as
+one design by itself. The same call gives the same answer. The `…_steps` functions do the same in slices
+of some tens of milliseconds and yield the best so far after each.
 """
 
 from __future__ import annotations

@@ -83,10 +83,8 @@ class Front:
 
 def label(name: str, point: Mapping[str, Any]) -> str:
     """A quantity's label; in free space there is no fibre."""
-    if (
-        name == "rate_in_fibre"
-        and point.get("destination", INPUTS["destination"].default) != "fibre"
-    ):
+    free = point.get("destination", INPUTS["destination"].default) != "fibre"
+    if free and name == "rate_in_fibre":
         return "Photons/s behind the optics"
     return REGISTRY.quantities[name].label
 

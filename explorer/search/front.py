@@ -2,27 +2,25 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ..design import Requirement
 from ..domain import InputError, quoted
 from .descent import Descent
 from .found import Found, Front, Goal, goal_of, why_front
-from .optimum import starts_for
 from .scale import Array
-from .starts import chosen, merged, sample, screen
-from .task import NEARER, Seen, Task, bent, make_task
+from .starts import chosen, sample, screen
+from .task import NEARER, Task, bent, make_task
 
 #: Weight of the other goal: of equals in the one the better in the other.
 OTHER = 1e-6
 
-#: The second start of an aim lies at least this far from the first.
-APART = 0.05
+#: Starts of each end.
+ENDS = 4
 
 #: Most designs of a front.
 MOST = 200
@@ -54,7 +52,7 @@ def front_steps(
     bounds: Mapping[str, Any],
     count: int = 24,
 ) -> Iterator[Front]:
-    """The same in slices of some ten milliseconds: what is known of the front after each."""
+    """The same in slices of some tens of milliseconds: what is known of the front after each."""
     pair = _pair(goals)
     if isinstance(count, bool) or not isinstance(count, int) or not 2 <= count <= MOST:
         raise InputError(f"a front has 2 to {MOST} designs, not {quoted(count)}")
@@ -93,46 +91,37 @@ def _steps(task: Task, goals: tuple[Goal, Goal], count: int) -> Iterator[Front]:
 def _search(task: Task, count: int, kept: list[Found]) -> Iterator[None]:
     """Both ends, a rough front, then evenly along it; `kept` gets the designs, each checked."""
     yield from screen(task, sample(task.space))
-    aims, few = [Aim(0), Aim(1)], starts_for(task) // 2
-    places = [chosen(task, few, aim.goal) for aim in aims]
-    problem = np.repeat([0, 1], [len(some) for some in places])
-    yield from _descend(task, aims, np.concatenate(places), problem)
+    ends = [Aim(0), Aim(1)]
+    places = [chosen(task, ENDS, aim.goal) for aim in ends]
+    task.done, task.starts = 0, sum(map(len, places))
+    for aim, some in zip(ends, places, strict=True):
+        yield from _descend(task, aim, some)
     if not task.best:
         return
     for share in (3, 1):
-        aims = [Aim(0), Aim(1), *_levels(task, (count - 2) // share)]
-        starts: list[tuple[int, Array]] = []
-        for found in _warm(task, aims):
-            starts += found
-            yield
-        who = np.array([index for index, _ in starts])
-        yield from _descend(task, aims, np.array([place for _, place in starts]), who)
-    for found in _warm(task, aims):
-        made = [task.checked_at(place) for _, place in found[:1]]
-        kept += [one for one in made if one not in kept]
+        aims = [*ends, *_levels(task, (count - 2) // share)]
+        task.done, task.starts = 0, len(aims)
+        for aim in aims:
+            yield from _descend(task, aim, [_nearby(task, aim)])
+    for aim in aims:
+        made = task.checked_at(_nearby(task, aim))
+        kept += [made] if made not in kept else []
         yield
 
 
-def _descend(
-    task: Task, aims: Sequence[Aim], places: Array, problem: NDArray[np.int64]
-) -> Iterator[None]:
-    """Go down from places (k, n), each towards one of the aims."""
-    goal = np.array([aim.goal for aim in aims])
-    level = np.array([aim.level for aim in aims])
+def _descend(task: Task, aim: Aim, places: Iterable[Array]) -> Iterator[None]:
+    """Go down from places (n,), one after the other, towards an aim."""
 
-    def outcome(rows: Array, who: NDArray[np.int64]) -> Array:
-        seen, at = task.look(rows), np.arange(len(rows))
-        one, other = seen.goals[at, goal[who]], seen.goals[at, 1 - goal[who]]
-        beyond = bent(other - level[who])
-        columns = [-one - OTHER * other, *(seen.margins - task.inner).T, beyond]
+    def outcome(rows: Array) -> Array:
+        seen = task.look(rows)
+        one, other = seen.goals[:, aim.goal], seen.goals[:, 1 - aim.goal]
+        columns = [-one - OTHER * other, *(seen.margins - task.inner).T, bent(other - aim.level)]
         return np.stack(columns, axis=1)
 
-    space = task.space
-    descent = Descent(outcome, places, problem, space.start, NEARER * space.width**2, space.grain)
-    for _ in descent.steps():
-        task.done, task.starts = int((~descent.going).sum()), len(places)
-        yield
-    task.done = task.starts
+    descent = Descent(outcome, task.space, NEARER, 1e-9, task.inner / 2)
+    for place in places:
+        yield from descent.steps(place)
+        task.done += 1
 
 
 def _levels(task: Task, count: int) -> list[Aim]:
@@ -156,58 +145,36 @@ def _levels(task: Task, count: int) -> list[Aim]:
 
 def _outline(task: Task) -> Array:
     """Goals (k, 2), as worth, of the designs seen that none of the others beats, in order."""
-    seen = merged(task.seen)
+    seen = task.everything()
     goals = seen.goals[seen.met]
-    goals = goals[np.lexsort((-goals[:, 1], -goals[:, 0]))]
-    ahead = np.concatenate([[-np.inf], np.maximum.accumulate(goals[:, 1])[:-1]])
-    return np.asarray(goals[goals[:, 1] > ahead][::-1])
+    return np.asarray(goals[unbeaten(goals)])
 
 
-def _ranking(seen: Seen, aim: Aim) -> Array:
-    """What is to become small of designs for an aim; ∞ where they do not serve it."""
+def unbeaten(worth: Array) -> Array:
+    """Which rows (k, 2) no other one beats in both, from the best of the second to that of the first."""
+    order = np.lexsort((-worth[:, 1], -worth[:, 0]))
+    other = worth[order, 1]
+    ahead = np.concatenate([[-np.inf], np.maximum.accumulate(other)[:-1]])[: len(other)]
+    return np.asarray(order[other > ahead][::-1])
+
+
+def _nearby(task: Task, aim: Aim) -> Array:
+    """The place (n,) of the best design that is known for an aim."""
+    seen = task.everything()
     fits = seen.met & (seen.goals[:, 1 - aim.goal] >= aim.level)
     worth = seen.goals[:, aim.goal] + OTHER * seen.goals[:, 1 - aim.goal]
-    return np.where(fits, -worth, np.inf)
-
-
-def _warm(task: Task, aims: Sequence[Aim]) -> Iterator[list[tuple[int, Array]]]:
-    """For each aim its number and place, of the best that is known and of the best apart from it."""
-    seen = merged(task.seen)
-    for index, aim in enumerate(aims):
-        ranking = _ranking(seen, aim)
-        first = int(np.argmin(ranking))
-        near = np.abs(seen.places - seen.places[first]).max(axis=1) < APART
-        second = int(np.argmin(np.where(near, np.inf, ranking)))
-        yield [(index, seen.places[at]) for at in (first, second) if np.isfinite(ranking[at])]
+    return np.asarray(seen.places[np.argmax(np.where(fits, worth, -np.inf))])
 
 
 def _front(task: Task, goals: tuple[Goal, Goal], kept: Sequence[Found]) -> Front:
-    """The designs that none of the others beats, in order."""
+    """The designs that none of the others beats, in order; of those alike in both goals the first."""
     rows = [entry for entry in kept if entry.met]
     values = np.array([[entry.outcome[goal.quantity] for goal in goals] for entry in rows])
     values = values.reshape(-1, 2)
-    sign = np.array([1.0 if goal.most else -1.0 for goal in goals])
-    order = [
-        at
-        for at in np.lexsort((-sign[1] * values[:, 1], sign[0] * values[:, 0]))
-        if not _beaten(sign * values, at)
-    ]
-    order = _distinct(values, order)
+    order: list[int] = []
+    for at in unbeaten(values * [1.0 if goal.most else -1.0 for goal in goals]):
+        if not order or not np.allclose(values[at], values[order[-1]], rtol=ALIKE, atol=0):
+            order.append(int(at))
     reason = why_front(goals, values[order], task.space.given) if order else task.found().reason
     points = tuple(rows[at].point for at in order)
     return Front(points, values[order], goals, reason, task.done, task.starts)
-
-
-def _beaten(worth: Array, at: int) -> bool:
-    """Whether another design is as good in both goals and better in one."""
-    as_good = np.all(worth >= worth[at], axis=1) & np.any(worth > worth[at], axis=1)
-    return bool(as_good.any())
-
-
-def _distinct(values: Array, order: Sequence[int]) -> list[int]:
-    """Of designs that are alike in both goals the first."""
-    kept: list[int] = []
-    for at in order:
-        if not kept or not np.allclose(values[at], values[kept[-1]], rtol=ALIKE, atol=0):
-            kept.append(int(at))
-    return kept

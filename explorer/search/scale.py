@@ -7,7 +7,6 @@ of one with a stop for ∞) the scale goes on straight, without a kink, and ends
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -60,12 +59,3 @@ class Scale:
                 left = np.maximum(1 - (place - 1) * span, 0.0)
                 value = np.where(place > 1, high / left, value)
         return np.asarray(value)
-
-
-def distance(changes: Sequence[tuple[str, float, float]]) -> float:
-    """Euclidean length of changes (input, before, after in SI), each on its input's scale."""
-    steps = [
-        Scale(name).position(after) - Scale(name).position(before)
-        for name, before, after in changes
-    ]
-    return float(np.sqrt(np.sum(np.square(steps))))

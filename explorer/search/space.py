@@ -15,7 +15,7 @@ from ..domain import InputError, quoted, real_number
 from ..evaluate import FOLLOWING, Evaluation, voiding
 from ..inputs import INPUTS
 from ..registry import dependencies
-from .scale import Array, Scale, distance
+from .scale import Array, Scale
 
 #: Relative spacing of floating-point numbers.
 GRAIN = float(np.finfo(float).eps)
@@ -200,7 +200,8 @@ class Space:
 
     def distance(self, point: Mapping[str, Any]) -> float:
         """How far a point lies from the given one, on the scales of the inputs."""
-        return distance([(name, *pair) for name, pair in self.changes(point).items()])
+        ends = [Scale(name).position(pair) for name, pair in self.changes(point).items()]
+        return float(np.linalg.norm([after - before for before, after in ends]))
 
 
 def make_space(

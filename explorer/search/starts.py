@@ -8,12 +8,14 @@ from itertools import product
 
 import numpy as np
 
-from .descent import CHUNK
 from .scale import Array
 from .space import Space
-from .task import Seen, Task
+from .task import Task
 
 SEED = 20011
+
+#: Places in one evaluation.
+CHUNK = 128
 
 #: Starts lie at least this far apart in the box, on one axis at least.
 APART = 0.12
@@ -59,55 +61,34 @@ def screen(task: Task, places: Array) -> Iterator[None]:
         yield
 
 
-def merged(seen: list[Seen]) -> Seen:
-    """Everything seen as one."""
-    return Seen(
-        *(
-            np.concatenate([getattr(entry, name) for entry in seen])
-            for name in ("places", "margins", "goals", "met", "far")
-        )
-    )
-
-
 def chosen(task: Task, count: int, goal: int = 0) -> Array:
     """Starts for a descent (k, n): the best designs, the least unmet, and some between; spread out."""
-    seen = merged(task.seen)
+    seen = task.everything()
     objective = task.objective(seen, goal)
     unmet = np.maximum(-seen.worst, 0.0)
     rankings = [
         np.where(seen.met, objective, np.inf),
         np.where(seen.met, np.inf, unmet + 1e-6 * objective),
         np.where(seen.met, np.inf, objective + 0.3 * unmet),
+        unmet,
     ]
     # The given point within the bounds, the same with what follows others, and the best known.
     leading = rankings[0] if task.best else unmet
     picked = list(dict.fromkeys([0, 1, int(np.argmin(leading))]))
-    for share, ranking in zip((0.45, 0.8, 1.0), rankings, strict=True):
-        _pick(picked, seen.places, ranking, round(share * (count - 2)) + 2)
-    _pick(picked, seen.places, unmet, count)
+    for share, ranking in zip((0.45, 0.8, 1.0, 1.0), rankings, strict=True):
+        order = np.argsort(ranking, kind="stable")
+        for at in order[np.isfinite(ranking[order])][:1024]:
+            if len(picked) >= round(share * (count - 2)) + 2:
+                break
+            if np.abs(seen.places[picked] - seen.places[at]).max(axis=1).min() > APART:
+                picked.append(int(at))
     return np.array(seen.places[picked])
 
 
-def _pick(picked: list[int], places: Array, ranking: Array, count: int) -> None:
-    """Add the best of a ranking that lie apart from those picked, until there are `count`."""
-    order = np.argsort(ranking, kind="stable")
-    order = order[np.isfinite(ranking[order])][:1024]
-    gap = np.full(len(order), np.inf)
-    for at in picked:
-        gap = np.minimum(gap, np.abs(places[order] - places[at]).max(axis=1))
-    while len(picked) < count:
-        free = np.flatnonzero(gap > APART)
-        if not free.size:
-            return
-        at = int(order[free[0]])
-        picked.append(at)
-        gap = np.minimum(gap, np.abs(places[order] - places[at]).max(axis=1))
-
-
-def around(places: Array, count: int) -> Array:
-    """Places near those given, at distances from a millionth to the whole of the box."""
+def around(places: Array, count: int, nearest: float = 1e-6, furthest: float = 1.0) -> Array:
+    """Places near those given, at distances between two parts of the box."""
     size = places.shape[1]
     drawn = even(count, size + 1, SEED + 1)
-    reach = 10 ** (-6 * drawn[:, -1])
+    reach = furthest * (nearest / furthest) ** drawn[:, -1]
     centre = places[np.arange(count) % len(places)]
     return np.clip(centre + (2 * drawn[:, :-1] - 1) * reach[:, None], 0.0, 1.0)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -43,32 +44,30 @@ def checked_requirements(requirements: Any) -> tuple[Requirement, ...]:
     for entry in found:
         if not isinstance(entry, Requirement):
             raise InputError(f"{quoted(entry)} is no Requirement")
-    for least in found:
-        for most in found:
-            if (
-                least.quantity == most.quantity
-                and least.at_least is not None
-                and most.at_most is not None
-                and least.at_least > most.at_most
-            ):
-                raise InputError(
-                    f"{least.quantity} cannot be at least {least.at_least:g} and at most "
-                    f"{most.at_most:g}: the two requirements contradict each other"
-                )
+    for name, low, high in windows(found):
+        if low > high:
+            raise InputError(
+                f"{name} cannot be at least {low:g} and at most {high:g}: "
+                "the two requirements contradict each other"
+            )
     return found
 
 
-def inner_margin(requirements: Sequence[Requirement]) -> float:
-    """The margin kept inside: no more than a quarter of the narrowest window."""
-    widths = [
-        np.log(most.at_most / least.at_least)
+def windows(requirements: Sequence[Requirement]) -> list[tuple[str, float, float]]:
+    """Quantity, lowest and highest of each pair of requirements that enclose it."""
+    return [
+        (least.quantity, least.at_least, most.at_most)
         for least in requirements
         for most in requirements
         if least.quantity == most.quantity
         and least.at_least is not None
         and most.at_most is not None
-        and least.at_least > 0
     ]
+
+
+def inner_margin(requirements: Sequence[Requirement]) -> float:
+    """The margin kept inside: no more than a quarter of the narrowest window."""
+    widths = [np.log(high / low) for _, low, high in windows(requirements) if low > 0]
     return float(min([INNER, *(width / 4 for width in widths)]))
 
 
@@ -108,7 +107,7 @@ class Task:
     starts: int = 0
     over: bool = False
 
-    @property
+    @cached_property
     def wanted(self) -> tuple[str, ...]:
         """The quantities that are asked of every place."""
         return wanted_of(self.requirements, self.goals)
@@ -166,6 +165,13 @@ class Task:
         if self.compromise is None or value[at] > self.compromise[0]:
             self.compromise = (float(value[at]), seen.places[at])
 
+    def everything(self) -> Seen:
+        """Everything seen so far as one."""
+        names = ("places", "margins", "goals", "met", "far")
+        parts = [[getattr(entry, name) for entry in self.seen] for name in names]
+        self.seen = [Seen(*map(np.concatenate, parts))]
+        return self.seen[0]
+
     def found(self) -> Found:
         """The best so far, checked as one design by itself."""
         places = [place for _, place in self.best]
@@ -177,33 +183,28 @@ class Task:
         return replace(found, reason=reason, done=self.done, starts=self.starts)
 
     def checked_at(self, place: Array) -> Found:
-        """What the design at a place is worth, checked by itself."""
+        """What the design at a place is worth, checked by itself; without its reason."""
         key = place.tobytes()
         if key not in self.checked:
-            self.checked[key] = self.found_at(self.space.point(place))
+            self.checked[key] = self._found_at(self.space.point(place))
         return self.checked[key]
 
-    def found_at(self, point: Mapping[str, Any]) -> Found:
-        """What a complete point is worth."""
+    def _found_at(self, point: Mapping[str, Any]) -> Found:
         work = Evaluation(point)
         outcome = {name: float(work.result(name)) for name in self.wanted}
         missed = [entry for entry in self.requirements if not entry.met(outcome[entry.quantity])]
-        failing = None
-        if missed:
-            sizes = np.nan_to_num(np.array(margins(outcome, missed), dtype=float), nan=-np.inf)
-            failing = missed[int(np.argmin(sizes))]
+        sizes = np.nan_to_num(np.array(margins(outcome, missed), dtype=float), nan=-np.inf)
         value = outcome[self.goals[0].quantity] if self.goals else None
-        found = Found(
+        return Found(
             Frozen(point),
             met=not missed and not (value is not None and np.isnan(value)),
             reason="",
             distance=self.space.distance(point),
             changes=Frozen(self.space.changes(point)),
             outcome=Frozen(outcome),
-            failing=failing,
+            failing=missed[int(np.argmin(sizes))] if missed else None,
             value=value,
         )
-        return replace(found, reason=self._reason(found))
 
     def _reason(self, found: Found) -> str:
         if found.failing is not None:
