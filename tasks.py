@@ -23,7 +23,11 @@ OLDEST = (3, 11)
 # task: what to install besides the project itself, and what to run (in the environment's Python)
 TASKS = {
     "open": ("", [["-m", "explorer"]]),
-    "test": ("[test]", [["-m", "pytest"]]),
+    # Two at a time, a file each: half of the tests wait for a browser or a server.
+    "test": (
+        "[test]",
+        [["-m", "pytest", "-n", "2", "--dist", "loadfile", "--no-loadscope-reorder"]],
+    ),
     "slow": ("[test]", [["-m", "pytest", "-m", "slow"]]),
     "bench": ("[test]", [["-m", "pytest", "-m", "bench", "-s", "tests/bench"]]),
     "lint": ("[test]", [["-m", "ruff", "check"], ["-m", "ruff", "format", "--check"]]),

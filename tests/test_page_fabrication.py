@@ -687,7 +687,13 @@ def test_a_new_question_drops_the_rest_of_a_map() -> None:
 def test_where_nothing_is_required_every_device_passes() -> None:
     """A design without requirement can be loaded whatever is shown."""
     state = state_of(cells=8, cut=(PASSING, "quality_factor"))
+    shown = MapPanel(state)
     state.ask(shown=PASSING)
+    assert "At the design point: 84.2 %" in shown.canvas.description
+    state.ask(design=design_of(requirements=()))
+    assert "At the design point: 100 %" in shown.canvas.description
+    state.ask(design=design_of(-1.0, scatter={}))
+    assert "At the design point: 0 %" in shown.canvas.description
     state.ask(design=design_of(requirements=()))
     assert state.problems == {}
     assert state.question.design.requirements == ()

@@ -11,7 +11,7 @@ from ..inputs import INPUTS
 from ..maps import FRONTIERS, Map
 from ..question import Answer
 from ..registry import REGISTRY
-from ..sentence import quantity_label
+from ..sentence import met_by, quantity_label
 from ..units import from_si, text
 from ..yields import PASSING
 from .backdrop import Drawn
@@ -215,12 +215,22 @@ def is_free(answer: Answer) -> bool:
     return bool(answer.values["destination"] == "free_space")
 
 
+def passing_share(answer: Answer) -> float:
+    """The share of devices that pass at the design point; not-a-number until it is worked out."""
+    if answer.passing is not None:
+        return float(answer.passing.share)
+    design = answer.question.design
+    if design.scatter and design.requirements:
+        return float("nan")
+    return 0.0 if met_by(design, answer.outcome) is False else 1.0  # every device is the design
+
+
 def described(answer: Answer, drawn: Map) -> str:
     """The map in words, for screen readers."""
     quantity = REGISTRY.shown(answer.question.shown)
     value = answer.outcome.get(answer.question.shown)
     if quantity.name == PASSING:
-        value = answer.passing.share if answer.passing else float("nan")
+        value = passing_share(answer)
     here = text(value, quantity.unit) if isinstance(value, float) else str(value)
     region = ""
     if drawn.margin is not None:

@@ -3,8 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from dataclasses import replace
-from html import escape
 from typing import Any
 
 from ipywidgets import HTML, Button, Dropdown, HBox, IntSlider, Label, VBox
@@ -18,8 +16,8 @@ from ...search import Found, Front, Goal, best_steps, front_steps, nearest_steps
 from ...sentence import in_labels
 from ...sturdy import sturdiest_steps
 from ...units import text
-from ..bind import typed
 from ..bounds import BoundsBox
+from ..findings import changes, in_few_digits, outcome, paragraph, said, so_far
 from ..proposal import Proposal, found_by_search, moved_to
 from ..state import State
 from ..work import Work
@@ -167,28 +165,15 @@ class SearchPanel(VBox):
             self.along.max = max(len(found.points), 2)
             self._choose()
             if self._front is None:
-                self.said.value = _paragraph(found.reason if final else _so_far(found))
+                self.said.value = paragraph(found.reason if final else so_far(found))
             return
-        if final:
-            found = self._in_few_digits(found)
+        if final and self._asked is not None:
+            found = in_few_digits(self._asked, found)
         reached = found.met or (self._sought == "sturdy" and bool(found.value))
         if found.changes and (final or reached):
             self._propose(found.point, reached)
-        words = said(found) if final else _so_far(found)
-        self.said.value = _paragraph(words) + changes(found.changes) + outcome(found.outcome)
-
-    def _in_few_digits(self, found: Found) -> Found:
-        """What was found as it would be taken."""
-        if self._asked is None or not found.changes:
-            return found
-        short = found_by_search(self._asked, moved_to(self._asked, found.point))
-        moved = {
-            name: (before, float(short.evaluation.value(name)))
-            for name, (before, _) in found.changes.items()
-        }
-        return replace(
-            found, point=short.point, changes=moved, outcome=short.outcome(list(found.outcome))
-        )
+        words = said(found) if final else so_far(found)
+        self.said.value = paragraph(words) + changes(found.changes) + outcome(found.outcome)
 
     def _choose(self) -> None:
         """Show one design of a trade-off, and the others as a line on the map."""
@@ -212,7 +197,7 @@ class SearchPanel(VBox):
             for name, value in moved_to(asked, point).items()
             if not INPUTS[name].whole
         }
-        self.said.value = _paragraph(front.reason) + _paragraph(place) + changes(moved)
+        self.said.value = paragraph(front.reason) + paragraph(place) + changes(moved)
 
     def _propose(
         self, point: Mapping[str, Any], met: bool, path: tuple[Mapping[str, Any], ...] = ()
@@ -261,45 +246,3 @@ def _title(words: str) -> Label:
     label = Label(words)
     label.add_class("x-title")
     return label
-
-
-def _paragraph(words: str) -> str:
-    return f'<p class="x-first">{escape(words)}</p>' if words else ""
-
-
-def said(found: Found) -> str:
-    """What was found in a sentence; what it changes stands in the table."""
-    if found.met and found.changes and found.value is None:
-        return "Every requirement is met."
-    start, with_, _ = found.reason.partition(", with ")
-    return f"{start}." if with_ and found.changes else found.reason
-
-
-def _so_far(found: Found | Front) -> str:
-    return f"searching … {found.done} of {found.starts}" if found.starts else "searching …"
-
-
-def changes(moved: Mapping[str, tuple[float, float]]) -> str:
-    """What a found design changes, as an HTML table."""
-    rows = "".join(
-        f"<tr><th scope=row>{escape(INPUTS[name].label)}</th>"
-        f"<td>{escape(_plain(name, before))} → <b>{escape(_plain(name, after))}</b> "
-        f"{escape('' if INPUTS[name].shown == '1' else INPUTS[name].shown)}</td></tr>"
-        for name, (before, after) in moved.items()
-    )
-    return f'<table class="x-moves"><tbody>{rows}</tbody></table>' if rows else ""
-
-
-def _plain(name: str, value: float) -> str:
-    """A value in four digits as its number box shows it: 11800, not 1.18e+04."""
-    return typed(name, float(f"{value:.4g}"))
-
-
-def outcome(found: Mapping[str, float]) -> str:
-    """What the required quantities are there, as an HTML table."""
-    rows = "".join(
-        f"<tr><th scope=row>{escape(REGISTRY.shown(name).label)}</th>"
-        f"<td>{escape(text(float(value), REGISTRY.shown(name).unit))}</td></tr>"
-        for name, value in found.items()
-    )
-    return f'<table class="x-moves"><tbody>{rows}</tbody></table>' if rows else ""
