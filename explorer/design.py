@@ -5,7 +5,7 @@ Frozen and hashable, so links, undo, replay and shortlists are made of designs. 
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field, fields, replace
 from functools import lru_cache
 from typing import Any
@@ -104,6 +104,17 @@ class Requirement:
         return value <= self.limit if self.at_least is None else value >= self.limit
 
 
+def all_requirements(given: Any) -> tuple[Requirement, ...]:
+    """Requirements as a tuple. Raises InputError for what is no sequence of them."""
+    if isinstance(given, Requirement | str | Mapping) or not isinstance(given, Iterable):
+        raise InputError("requirements is a sequence of Requirement, not a single one")
+    found = tuple(given)
+    for entry in found:
+        if not isinstance(entry, Requirement):
+            raise InputError(f"{quoted(entry)} is no Requirement")
+    return found
+
+
 @dataclass(frozen=True)
 class Unknown:
     """The range, SI, within which an input that is not known lies; it is not scatter."""
@@ -182,9 +193,7 @@ class Design:
             for name, value in self.point.items()
         }
         object.__setattr__(self, "point", Frozen(point))
-        if isinstance(self.requirements, Requirement | str | Mapping):
-            raise InputError("requirements is a sequence of Requirement, not a single one")
-        object.__setattr__(self, "requirements", tuple(self.requirements))
+        object.__setattr__(self, "requirements", all_requirements(self.requirements))
         for name in ("scatter", "unknowns", "origins", "correlation", "data"):
             if not isinstance(getattr(self, name), Mapping):
                 raise InputError(f"{name} = {quoted(getattr(self, name))} is no mapping from names")
@@ -211,9 +220,6 @@ class Design:
                     self.evaluation.changed({name: end})
                 else:
                     _check_alone(name, end)
-        for requirement in self.requirements:
-            if not isinstance(requirement, Requirement):
-                raise InputError(f"{quoted(requirement)} is no Requirement")
 
     def _check_share(self) -> None:
         if self.passing is not None:

@@ -16,7 +16,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from .design import Design, Requirement
+from .design import Design, Requirement, all_requirements
 from .domain import InputError, quoted
 from .evaluate import Evaluation
 from .inputs import INPUTS
@@ -231,14 +231,8 @@ def point_of(point: Mapping[str, Any] | Design) -> dict[str, Any]:
 
 
 def required(requirements: Iterable[Requirement]) -> tuple[Requirement, ...]:
-    if isinstance(requirements, Requirement | str | Mapping) or not isinstance(
-        requirements, Iterable
-    ):
-        raise InputError("requirements is a sequence of Requirement, not a single one")
-    found = tuple(requirements)
-    for entry in found:
-        if not isinstance(entry, Requirement):
-            raise InputError(f"{quoted(entry)} is no Requirement")
+    """Requirements as a tuple, one at least. Raises InputError."""
+    found = all_requirements(requirements)
     if not found:
         raise InputError("a yield needs a requirement: without one every device passes")
     return found

@@ -65,7 +65,7 @@ def whole_count(count: Any, what: str = "count", most: int = MOST) -> int:
 
 def whole_seed(seed: Any) -> int:
     """A seed of random numbers. Raises InputError."""
-    if isinstance(seed, float | np.floating):  # 3.0 is one, and 2.5 must not be 2
+    if isinstance(seed, float | np.floating):
         raise InputError(f"seed is a whole number from 0 on; got {quoted(seed)}")
     return whole_number(seed, "seed", 0)
 
@@ -138,9 +138,9 @@ def draws(
     correlated = tuple(
         (columns[name], tuple(row)) for name, row in zip(involved, rows.tolist(), strict=True)
     )
-    columns_wide = max(width, 1)
-    made = _kept_points if BATCHES * each * columns_wide <= KEPT else _points
-    return Draws(dict(scatter), columns, made(each, columns_wide, whole_seed(seed), correlated))
+    width = max(width, 1)
+    made = _kept_points if BATCHES * each * width <= KEPT else _points
+    return Draws(dict(scatter), columns, made(each, width, whole_seed(seed), correlated))
 
 
 def displaced(
@@ -282,11 +282,12 @@ def scattered(
     """A fabrication run: the point of so many devices, ready for `evaluate`.
 
     point: input name -> SI value; arrays (a map) may broadcast. scatter: input name -> `Spread`,
-    around the point's own value and truncated to the input's domain. count: devices, rounded up to 16
-    times a power of two: 16 batches of scrambled Sobol points, one batch after the other. correlation:
-    'one|other' -> coefficient of their normal scores.
+    around the point's own value and truncated to the input's domain beside the others (see `Room`).
+    count: devices, rounded up to 16 times a power of two: 16 batches of scrambled Sobol points, one
+    batch after the other. correlation: 'one|other' -> coefficient of their normal scores.
     Scattering inputs come as arrays of shape (count, *axes of the point); the rest stays as it was.
     `resonance_wavelength`, `filter_centre` and `magnification`, where they follow others by default,
-    follow the design, not each device. Raises InputError.
+    follow the design; whatever else follows others follows each device, and scatters about that.
+    Raises InputError.
     """
     return displaced(draws(scatter, count, seed, correlation), point)

@@ -54,8 +54,8 @@ def yield_map_steps(
 ) -> Iterator[tuple[float, Map | None]]:
     """The same as it grows, from few cells and draws on.
 
-    Pairs of the share of the work that is done, 0 to 1, and a `Map`, or None between two blocks. cautions, lines:
-    as `make_map` takes its cautions and its wanted quantities.
+    Pairs of the share of the work that is done, 0 to 1, and a `Map`, or None between two blocks.
+    cautions, lines: as `make_map` takes its cautions and its wanted quantities.
     """
     point = point_of(point)
     wanted, lines, marks = required(requirements), list(lines), list(cautions)

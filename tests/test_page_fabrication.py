@@ -25,6 +25,7 @@ from explorer.fabrication import passing_cut
 from explorer.inputs import INPUTS
 from explorer.page.bind import InputRow
 from explorer.page.canvas import unpack
+from explorer.page.findings import DEVICES, survival
 from explorer.page.panels.cut import CutPanel
 from explorer.page.panels.headline import HeadlinePanel
 from explorer.page.panels.limits import LEVERS, LimitsPanel
@@ -1493,3 +1494,14 @@ def test_what_cannot_be_sought_is_refused_in_one_sentence(
         sturdiest(**given)
     one_sentence(str(caught.value))
     assert said in str(caught.value)
+
+
+def test_a_find_says_how_many_of_its_devices_would_pass() -> None:
+    """The same share as `yield_of` gives; nothing is said where nothing scatters."""
+    design = first_question().design
+    point = {**design.point, "quality_factor": 30.7, "mode_volume": 0.42}
+    passing = yield_of(point, design.scatter, design.requirements, DEVICES)
+    words = survival(design, point)
+    assert f"{100 * passing.share:.0f} of 100 such devices would pass" in words
+    assert "most devices that pass" in words
+    assert survival(replace(design, scatter={}), point) == ""

@@ -246,6 +246,15 @@ def test_without_scatter_a_map_is_exactly_that_of_the_margin(kind: str) -> None:
     assert np.array_equal(share, drawn.values["passing_high"])
 
 
+def test_what_is_built_once_does_not_scatter_with_what_it_follows() -> None:
+    """The resonance is where the design puts it, so the width of the resonator is that of the design."""
+    wanted = [Requirement("resonator_linewidth", at_most=1.1 * value("resonator_linewidth"))]
+    found = yield_of({}, {"emission_wavelength": Spread("normal", 50e-9)}, wanted)
+    assert (found.share, found.low, found.high) == (1.0, 1.0, 1.0)
+    own = {"resonance_wavelength": Spread("normal", 50e-9)}
+    assert 0.5 < yield_of({}, own, wanted).share < 1
+
+
 def test_what_fails_for_certain_fails_with_what_scatters() -> None:
     """A requirement that nothing that scatters reaches, and that is missed, leaves no doubt."""
     scatter = {"optics_transmission": Spread("normal", 0.1)}

@@ -5,14 +5,24 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import replace
 from html import escape
+from typing import Any
 
 from ..design import Design
+from ..domain import InputError
 from ..inputs import INPUTS
 from ..registry import REGISTRY
 from ..search import Found, Front
+from ..sentence import hundred
 from ..units import text
+from ..yields import yield_of
 from .bind import typed
 from .proposal import found_by_search, moved_to
+
+#: Devices drawn to say how many of a found design would pass.
+DEVICES = 1024
+
+#: Below this share of devices a sturdier design is worth looking for.
+STURDY = 0.8
 
 
 def in_few_digits(asked: Design, found: Found) -> Found:
@@ -39,6 +49,21 @@ def said(found: Found) -> str:
         return "Every requirement is met."
     start, with_, _ = found.reason.partition(", with ")
     return f"{start}." if with_ and found.changes else found.reason
+
+
+def survival(asked: Design, point: Mapping[str, Any]) -> str:
+    """How many devices of a found design would pass, scattering as the design that was asked about."""
+    if not (asked.scatter and asked.requirements):
+        return ""
+    wanted = (asked.scatter, asked.requirements)
+    try:
+        passing = yield_of(point, *wanted, DEVICES, correlation=asked.correlation)
+    except InputError:  # what cannot scatter there
+        return ""
+    words = f"{hundred(passing)} of 100 such devices would pass."
+    if passing.share < STURDY:
+        words += " To look for a sturdier one, choose “most devices that pass”."
+    return f'<p class="x-plain">{escape(words[0].upper() + words[1:])}</p>'
 
 
 def so_far(found: Found | Front) -> str:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import Any
@@ -10,8 +10,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from ..design import Frozen, Requirement
-from ..domain import InputError, quoted
+from ..design import Frozen, Requirement, all_requirements
+from ..domain import InputError
 from ..evaluate import Evaluation
 from ..maps import margins
 from .found import Found, Goal, why_best, why_met, why_missed
@@ -36,14 +36,7 @@ KEPT = 12
 
 def checked_requirements(requirements: Any) -> tuple[Requirement, ...]:
     """Requirements as a tuple. Raises InputError for none of them, and for a contradiction."""
-    if isinstance(requirements, Requirement | str | Mapping) or not isinstance(
-        requirements, Iterable
-    ):
-        raise InputError("requirements is a sequence of Requirement, not a single one")
-    found = tuple(requirements)
-    for entry in found:
-        if not isinstance(entry, Requirement):
-            raise InputError(f"{quoted(entry)} is no Requirement")
+    found = all_requirements(requirements)
     for name, low, high in windows(found):
         if low > high:
             raise InputError(

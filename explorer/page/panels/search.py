@@ -17,7 +17,7 @@ from ...sentence import in_labels
 from ...sturdy import sturdiest_steps
 from ...units import text
 from ..bounds import BoundsBox
-from ..findings import changes, in_few_digits, outcome, paragraph, said, so_far
+from ..findings import changes, in_few_digits, outcome, paragraph, said, so_far, survival
 from ..proposal import Proposal, found_by_search, moved_to
 from ..state import State
 from ..work import Work
@@ -75,6 +75,7 @@ class SearchPanel(VBox):
         self.along = IntSlider(
             min=1, max=2, value=1, readout=False, tooltip="Which design of the trade-off"
         )
+        self.along.add_class("x-slider")
         self.wrong = Label("")
         self.wrong.add_class("x-wrong")
         buttons = HBox([self.go, self.stop, self.take, self.drop])
@@ -173,7 +174,10 @@ class SearchPanel(VBox):
         if found.changes and (final or reached):
             self._propose(found.point, reached)
         words = said(found) if final else so_far(found)
-        self.said.value = paragraph(words) + changes(found.changes) + outcome(found.outcome)
+        table = changes(found.changes) + outcome(found.outcome)
+        if final and self._asked is not None and self._sought != "sturdy":
+            table += survival(self._asked, found.point)
+        self.said.value = paragraph(words) + table
 
     def _choose(self) -> None:
         """Show one design of a trade-off, and the others as a line on the map."""
@@ -197,7 +201,8 @@ class SearchPanel(VBox):
             for name, value in moved_to(asked, point).items()
             if not INPUTS[name].whole
         }
-        self.said.value = paragraph(front.reason) + paragraph(place) + changes(moved)
+        alive = "" if self._work.busy else survival(asked, point)
+        self.said.value = paragraph(front.reason) + paragraph(place) + changes(moved) + alive
 
     def _propose(
         self, point: Mapping[str, Any], met: bool, path: tuple[Mapping[str, Any], ...] = ()
