@@ -17,9 +17,7 @@ PROJECT = tomllib.loads(Path("pyproject.toml").read_text(encoding="utf-8"))["pro
 def tests(session: nox.Session) -> None:
     """The quick tests, browser included where there is one."""
     session.install("-e", ".[test]")
-    session.run(
-        "pytest", "-n", "2", "--dist", "loadfile", "--no-loadscope-reorder", *session.posargs
-    )
+    session.run("pytest", "-n", "2", "--dist", "loadfile", *session.posargs)
 
 
 @nox.session

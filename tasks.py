@@ -23,10 +23,10 @@ OLDEST = (3, 11)
 # task: what to install besides the project itself, and what to run (in the environment's Python)
 TASKS = {
     "open": ("", [["-m", "explorer"]]),
-    # Two at a time, a file each: half of the tests wait for a browser or a server.
+    # Two files at a time: half of the tests wait for a browser or a server.
     "test": (
         "[test]",
-        [["-m", "pytest", "-n", "2", "--dist", "loadfile", "--no-loadscope-reorder"]],
+        [["-m", "pytest", "-n", "2", "--dist", "loadfile"]],
     ),
     "slow": ("[test]", [["-m", "pytest", "-m", "slow"]]),
     "bench": ("[test]", [["-m", "pytest", "-m", "bench", "-s", "tests/bench"]]),

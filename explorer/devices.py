@@ -208,9 +208,8 @@ def _part(value: Array, tile: Tile) -> Array:
 def _counted(met: Any, batches: int, count: int, size: tuple[int, ...]) -> Any:
     """How many devices of each batch, along the first axis, are met: (batches, *size)."""
     each = count // batches
-    if met.ndim <= len(size) or met.shape[0] == 1:  # all devices are alike in this
-        alike = met.reshape(met.shape[-len(size) :]) if size and met.ndim else met.reshape(())
-        return np.where(alike, each, 0)
+    if met.ndim <= len(size):  # all devices are alike in this
+        return np.where(met, each, 0)
     return np.count_nonzero(met.reshape(batches, each, *met.shape[1:]), axis=1)
 
 

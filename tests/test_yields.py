@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import time
 from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
@@ -451,6 +452,21 @@ def test_quantiles_are_numpys_and_leave_out_what_has_no_number() -> None:
     assert found.values == pytest.approx(np.nanquantile(many, LEVELS), rel=1e-12)
 
 
+def test_the_interval_of_a_quantile_is_that_of_the_share_below_it() -> None:
+    """Woodruff's, by hand, where some devices have no number: levels are of those that have one."""
+    point = {"quality_factor": 1e4, "lifetime": 1e-12, "mode_volume": 2e-6}
+    scatter = {"mode_volume": Spread("lognormal", 1.0)}
+    many = evaluate(scattered(point, scatter, 1024), ["rate_enhancement"])["rate_enhancement"]
+    found = quantiles(point, scatter, "rate_enhancement", 0.3, 1024)
+    below = many <= found.values[0]
+    share = interval(below.reshape(BATCHES, 64).sum(axis=1), 64)
+    known = 1 - np.isnan(many).mean()
+    for end, level in ((found.low[0], share.low), (found.high[0], share.high)):
+        expected = np.nanquantile(many, 0.3 + (level - below.mean()) / known)
+        assert end == pytest.approx(expected, rel=1e-12)
+    assert found.low[0] < found.values[0] < found.high[0]
+
+
 def test_quantiles_where_nothing_has_a_number() -> None:
     point = {"quality_factor": 1e4, "lifetime": 1e-12, "mode_volume": 1e-8}
     found = quantiles(point, {"mode_volume": Spread("lognormal", 0.1)}, "rate_enhancement")
@@ -731,12 +747,22 @@ def test_along_the_emission_each_cell_has_its_own_resonance() -> None:
     assert fixed.values[PASSING][2, 0] == 0.0
 
 
-def test_work_that_is_given_up_stops() -> None:
-    steps = yield_map_steps(QUESTION.point, *AXES, SCATTER, WANTED, 2048, threads=2)
-    for _, drawn in steps:
-        if drawn is not None:
-            break
+def test_work_that_is_given_up_is_not_finished_first(monkeypatch: Any) -> None:
+    """Of the many blocks that wait for two threads, a few are begun; the rest is dropped."""
+    begun = []
+    work = Run.passes
+
+    def slowly(run: Run, job: Any) -> Any:
+        begun.append(job)
+        time.sleep(0.01)
+        return work(run, job)
+
+    monkeypatch.setattr(devices, "BLOCK", 64)
+    monkeypatch.setattr(Run, "passes", slowly)
+    steps = yield_steps(grid("still"), SCATTER, WANTED, 1024, threads=2)
+    assert next(steps) is None
     steps.close()
+    assert len(begun) < 10 < Run(grid("still"), SCATTER, WANTED, 1024, 0, None).blocks / BATCHES
     with pytest.raises(StopIteration):
         next(steps)
 

@@ -55,7 +55,7 @@ class Browser:
         size = {"width": width, "height": height, "deviceScaleFactor": 1, "mobile": False}
         self.driver.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", size)
 
-    def open(self, url: str, drawn: str = DRAWN, seconds: float = 60) -> float:
+    def open(self, url: str, drawn: str = DRAWN, seconds: float = 120) -> float:
         """Open the address, wait until `drawn` is shown and return the seconds it took."""
         begin = time.perf_counter()
         self.driver.get(url)
