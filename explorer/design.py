@@ -5,13 +5,15 @@ Frozen and hashable, so links, undo, replay and shortlists are made of designs. 
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field, fields, replace
 from functools import lru_cache
 from typing import Any
 
+from .built import MOST, Built
 from .domain import InputError, finite_number, quoted, shown
 from .evaluate import Evaluation, evaluated, limits_of
+from .frozen import Frozen
 from .inputs import INPUTS
 from .registry import REGISTRY
 from .scatter import Spread, check_scatter, correlation_matrix
@@ -21,40 +23,6 @@ LONGEST_TEXT = 4000
 
 #: Where the value of an input comes from.
 ORIGINS = ("seen", "from memory", "measured", "typed", "default")
-
-
-class Frozen(Mapping[str, Any]):
-    """A read-only mapping with a hash, in the order it was given."""
-
-    __slots__ = ("_entries", "_hash")
-
-    def __init__(self, entries: Mapping[str, Any] | None = None) -> None:
-        self._entries = dict(entries or {})
-        self._hash = hash(frozenset(self._entries.items()))
-
-    def __getitem__(self, key: str) -> Any:
-        return self._entries[key]
-
-    def __iter__(self) -> Iterator[str]:
-        return iter(self._entries)
-
-    def __len__(self) -> int:
-        return len(self._entries)
-
-    def __hash__(self) -> int:
-        return self._hash
-
-    def __eq__(self, other: object) -> bool:
-        return isinstance(other, Mapping) and self._entries == dict(other)
-
-    def __repr__(self) -> str:
-        return repr(self._entries)
-
-    def __reduce__(self) -> tuple[Any, ...]:
-        return Frozen, (self._entries,)
-
-    def __or__(self, other: Mapping[str, Any]) -> Frozen:
-        return Frozen({**self._entries, **other})
 
 
 def _text(value: Any, what: str) -> None:
@@ -163,7 +131,8 @@ class Design:
     of `Requirement`. scatter, unknowns, origins: input name -> `Spread`, `Unknown`, `Origin`.
     correlation: pairs of scattering inputs -> coefficient, keys 'one|other'. passing: share of the
     fabricated devices that must meet every requirement, or None. emitter, resonator, optic: keys of
-    the catalogue records that the values came from. data: names of measured files -> hash. Raises InputError for anything that cannot be one.
+    the catalogue records that the values came from. data: names of measured files -> SHA-256. built:
+    devices that were measured, each with a name of its own. Raises InputError for anything that cannot be one.
     """
 
     point: Mapping[str, Any] = field(default_factory=Frozen)
@@ -180,6 +149,7 @@ class Design:
     resonator: str = ""
     optic: str = ""
     data: Mapping[str, str] = field(default_factory=Frozen)
+    built: tuple[Built, ...] = ()
     #: The point being evaluated; what was worked out once is kept.
     evaluation: Evaluation = field(init=False, repr=False, compare=False)
 
@@ -202,6 +172,7 @@ class Design:
         check_scatter(self.scatter)
         correlation_matrix(self.correlation)
         self._check_share()
+        self._check_built()
         self._check_texts()
 
     def _check_companions(self) -> None:
@@ -229,6 +200,18 @@ class Design:
                     f"the share of devices that must pass = {share:g} is outside 0 to 1"
                 )
             object.__setattr__(self, "passing", share)
+
+    def _check_built(self) -> None:
+        object.__setattr__(self, "built", tuple(self.built))
+        names = [device.name for device in self.built if isinstance(device, Built)]
+        if len(names) < len(self.built):
+            raise InputError("built holds something that is no Built")
+        if len(set(names)) < len(names):
+            raise InputError("two measured devices have the same name")
+        if len(names) > MOST:
+            raise InputError(f"a design carries at most {MOST} measured devices")
+        for device in self.built:
+            self.evaluation.changed(device.point)
 
     def _check_texts(self) -> None:
         if not isinstance(self.decision, Decision):

@@ -13,19 +13,26 @@ from pathlib import Path
 from typing import Any
 
 from .atomic import write_whole
-from .broadening import Broadening
 from .budget import budget_rows
 from .design import Decision, Design, Origin, Requirement, Unknown
 from .domain import InputError, quoted
 from .exact import RecordError, number_in, parse, serialise, value_of
 from .inputs import INPUTS
 from .limits import headroom
+from .record_parts import (
+    read_built,
+    read_number,
+    read_whole,
+    written_built,
+    written_number,
+    written_whole,
+)
 from .registry import REGISTRY
 from .scatter import Spread
-from .schema import FOLLOWS, FORMAT, VERSION, problems
-from .units import si_unit, text, to_si, unit_name
+from .schema import FORMAT, VERSION, problems
+from .units import text
 from .version import __version__
-from .whole import Lines, Pattern, Samples, WholeError
+from .whole import WholeError
 from .yields import Share, Yield, yield_of
 
 #: Largest record that is read [bytes].
@@ -34,48 +41,11 @@ LARGEST = 20_000_000
 Json = dict[str, Any]
 
 
-def _number(value: float, unit: str) -> Json:
-    return {"value": number_in(value, unit), "unit": unit}
-
-
-def _whole(value: Any) -> Any:
-    """A whole value in JSON: a word, or a table with its units."""
-    if isinstance(value, Lines):
-        rows = [
-            [
-                number_in(share, "1"),
-                number_in(offset, "nm"),
-                FOLLOWS if width is None else number_in(width, "nm"),
-            ]
-            for share, offset, width in value.lines
-        ]
-        return {"kind": "lines", "units": ["1", "nm", "nm"], "rows": rows}
-    if isinstance(value, Samples):
-        rows = [
-            [number_in(offset, "nm"), number_in(count, "1")]
-            for offset, count in zip(value.offsets.tolist(), value.counts.tolist(), strict=True)
-        ]
-        return {"kind": "samples", "units": ["nm", "1/nm"], "rows": rows}
-    if isinstance(value, Pattern):
-        rows = [
-            [number_in(angle, "rad"), number_in(power, "1")]
-            for angle, power in zip(value.angles.tolist(), value.powers.tolist(), strict=True)
-        ]
-        return {"kind": "pattern", "units": ["rad", "1/sr"], "rows": rows}
-    if isinstance(value, Broadening):
-        rows = [
-            [form, number_in(size, "1"), number_in(more, "1")] for form, size, more in value.terms
-        ]
-        ends = {end: _number(getattr(value, end), "K") for end in ("low", "high")}
-        return {"kind": "broadening", "units": ["", "Hz", ""], "rows": rows, **ends}
-    return value
-
-
 def _input(name: str, value: Any) -> Json:
     entry = INPUTS[name]
     if entry.whole:
-        return {"value": _whole(value)}
-    return _number(float(value), entry.shown)
+        return {"value": written_whole(value)}
+    return written_number(float(value), entry.shown)
 
 
 def _inputs(design: Design) -> Json:
@@ -96,7 +66,10 @@ def _outcome(design: Design) -> Json:
     for name, value in design.outcome().items():
         quantity = REGISTRY.quantities[name]
         if quantity.kind == "number":
-            found[name] = {**_number(value, quantity.unit), "shown": text(value, quantity.unit)}
+            found[name] = {
+                **written_number(value, quantity.unit),
+                "shown": text(value, quantity.unit),
+            }
         else:
             found[name] = {"value": value}
     return found
@@ -105,7 +78,7 @@ def _outcome(design: Design) -> Json:
 def _requirement(requirement: Requirement) -> Json:
     unit = REGISTRY.quantities[requirement.quantity].unit
     side = "at_most" if requirement.at_least is None else "at_least"
-    return {"quantity": requirement.quantity, side: _number(requirement.limit, unit)}
+    return {"quantity": requirement.quantity, side: written_number(requirement.limit, unit)}
 
 
 def _budget(design: Design) -> list[Json]:
@@ -116,7 +89,7 @@ def _budget(design: Design) -> list[Json]:
         rows.append(
             {
                 "step": row.step,
-                "total": _number(row.total, "1/s"),
+                "total": written_number(row.total, "1/s"),
                 "factor": factor,
                 "streams": streams,
             }
@@ -160,8 +133,8 @@ def record_of(design: Design) -> Json:
         **({} if design.passing is None else {"passing": number_in(design.passing, "1")}),
         "unknowns": {
             name: {
-                "low": _number(unknown.low, INPUTS[name].shown),
-                "high": _number(unknown.high, INPUTS[name].shown),
+                "low": written_number(unknown.low, INPUTS[name].shown),
+                "high": written_number(unknown.high, INPUTS[name].shown),
             }
             for name, unknown in design.unknowns.items()
         },
@@ -174,6 +147,7 @@ def record_of(design: Design) -> Json:
         "budget": _budget(design),
         **_devices(design),
         "headroom": _headroom(design),
+        **({"measured": written_built(design)} if design.built else {}),
         "cautions": _cautions(design),
         "sources": _sources(design),
     }
@@ -223,7 +197,7 @@ def _cautions(design: Design) -> list[Json]:
 
 def _spread(name: str, spread: Spread) -> Json:
     unit = "1" if spread.kind in ("lognormal", "direction") else INPUTS[name].shown
-    return {"kind": spread.kind, "width": _number(spread.width, unit)}
+    return {"kind": spread.kind, "width": written_number(spread.width, unit)}
 
 
 def design_text(design: Design | Mapping[str, Any]) -> str:
@@ -298,49 +272,15 @@ def migrated(record: Any, name: str) -> Json:
     return record
 
 
-def _read_whole(entry: Any) -> Any:
-    if isinstance(entry, str):
-        return entry
-    rows = entry["rows"]
-    if entry["kind"] == "lines":
-        return Lines(
-            [
-                (
-                    value_of(share, "1"),
-                    value_of(offset, "nm"),
-                    None if width == FOLLOWS else value_of(width, "nm"),
-                )
-                for share, offset, width in rows
-            ]
-        )
-    if entry["kind"] == "broadening":
-        terms = [(form, value_of(size, "1"), value_of(more, "1")) for form, size, more in rows]
-        ends = (_si(entry[end], f"the {end} end of a broadening", "K") for end in ("low", "high"))
-        return Broadening(terms, *ends)
-    kind, unit = (Samples, "nm") if entry["kind"] == "samples" else (Pattern, "rad")
-    return kind([value_of(row[0], unit) for row in rows], [value_of(row[1], "1") for row in rows])
-
-
-def _si(entry: Any, what: str, unit: str) -> float:
-    """SI value of a {value, unit}; the unit must be one of the same kind."""
-    try:
-        name = unit_name(entry["unit"])
-    except ValueError as error:
-        raise RecordError(f"{what}: {error}") from error
-    if si_unit(name) != si_unit(unit):
-        raise RecordError(f"{what} is given in {entry['unit']!r}; it takes {unit}")
-    if name == "°":  # no power of ten lies between it and its SI unit
-        return to_si(value_of(entry["value"], "1"), name)
-    return value_of(entry["value"], name)
-
-
 def _read_point(given: Json) -> dict[str, Any]:
     point: dict[str, Any] = {}
     for name, entry in given.items():
         row = INPUTS.get(name)
         if row is None:
             raise InputError(f"{name!r:.80} is no input")
-        point[name] = _read_whole(entry["value"]) if row.whole else _si(entry, name, row.shown)
+        point[name] = (
+            read_whole(entry["value"]) if row.whole else read_number(entry, name, row.shown)
+        )
     return point
 
 
@@ -349,7 +289,7 @@ def _read_requirement(entry: Json) -> Requirement:
     if quantity is None:
         raise InputError(f"{entry['quantity']!r:.60} is no quantity that can be required")
     limits = {
-        side: _si(entry[side], f"the requirement on {quantity.name}", quantity.unit)
+        side: read_number(entry[side], f"the requirement on {quantity.name}", quantity.unit)
         for side in ("at_least", "at_most")
         if side in entry
     }
@@ -359,12 +299,12 @@ def _read_requirement(entry: Json) -> Requirement:
 def _read_spread(name: str, entry: Json) -> Spread:
     shown = INPUTS[name].shown if name in INPUTS else "1"
     unit = "1" if entry["kind"] in ("lognormal", "direction") else shown
-    return Spread(entry["kind"], _si(entry["width"], f"the scatter of {name}", unit))
+    return Spread(entry["kind"], read_number(entry["width"], f"the scatter of {name}", unit))
 
 
 def _read_unknown(name: str, entry: Json) -> Unknown:
     unit = INPUTS[name].shown if name in INPUTS else "1"
-    ends = (_si(entry[end], f"the range of {name}", unit) for end in ("low", "high"))
+    ends = (read_number(entry[end], f"the range of {name}", unit) for end in ("low", "high"))
     return Unknown(*ends)
 
 
@@ -381,5 +321,6 @@ def _design(record: Json) -> Design:
         note=record["note"],
         decision=Decision(**record["decision"]),
         data=record["data"],
+        built=tuple(read_built(entry) for entry in record.get("measured", ())),
         **record["records"],
     )

@@ -13,6 +13,7 @@ from pathlib import Path
 from typing import Any
 
 from .broadening import FORMS, Broadening
+from .built import LONGEST_NAME, MOST
 from .design import LONGEST_TEXT, ORIGINS
 from .inputs import INPUTS
 from .registry import REGISTRY, Input
@@ -172,7 +173,7 @@ def _open_slots() -> Json:
             "description": "share of fabricated devices that pass",
         },
         "headroom": {**table, "description": "what each step alone could give back"},
-        "measured": {**table, "description": "fits of measured data with their intervals"},
+        "measured": _measured(),
         "bounds": {
             **_by_input(
                 lambda row: _object({"low": _with_unit(row.shown), "high": _with_unit(row.shown)})
@@ -181,6 +182,28 @@ def _open_slots() -> Json:
         },
         "shown": {"type": "object", "description": "what the page showed"},
         "passing": {"type": "number", "description": "share of devices that must pass"},
+    }
+
+
+def _measured() -> Json:
+    """Devices that were built and measured."""
+    value = _object(
+        {"value": _NUMBER, "low": _NUMBER, "high": _NUMBER, "unit": _TEXT, "predicted": _NUMBER},
+        ["value", "low", "high", "unit"],
+    )
+    device = _object(
+        {
+            "name": {"type": "string", "minLength": 1, "maxLength": LONGEST_NAME},
+            "inputs": _by_input(lambda row: _with_unit(row.shown)),
+            "values": {"type": "object", "additionalProperties": value},
+            "files": {"type": "array", "items": _TEXT, "maxItems": 50},
+        }
+    )
+    return {
+        "type": "array",
+        "items": device,
+        "maxItems": MOST,
+        "description": "devices that were measured, with the intervals, and what is predicted for them",
     }
 
 

@@ -12,10 +12,10 @@ PACKAGE = Path(__file__).resolve().parent.parent / "explorer"
 
 #: From the ground up. A module imports from the lines above its own, never from its own or below.
 LAYERS = (
-    ("units", "whole", "version"),
+    ("units", "whole", "version", "frozen"),
     ("registry", "exact", "broadening", "keyrate", "atomic"),
     ("inputs", "physics", "domain"),
-    ("evaluate", "scatter"),
+    ("evaluate", "scatter", "built"),
     ("design", "budget", "published", "reading"),
     ("catalogue",),
     ("maps", "unknowns", "sampling", "combine", "measured", "advice"),
@@ -29,6 +29,7 @@ LAYERS = (
     ("later",),
     ("answers",),
     ("schema",),
+    ("record_parts",),
     ("record", "scenario"),
     ("__init__", "sweep_file"),
     ("serve", "sweep_command"),

@@ -12,8 +12,9 @@ from numpy.typing import NDArray
 
 from explorer.curves import Colours, colours
 from explorer.evaluate import Evaluation
-from explorer.page.panels.colours import ColoursPanel, limits, written
+from explorer.page.panels.colours import ColoursPanel
 from explorer.page.plot import Curve, Frame, Plot
+from explorer.page.ticks import limits, written
 
 
 def sent(plot: Plot) -> tuple[dict[str, Any], list[NDArray[np.float32]]]:

@@ -21,6 +21,7 @@ from .panels.headline import HeadlinePanel
 from .panels.keylink import KeyLinkPanel
 from .panels.limits import LimitsPanel
 from .panels.map import MapPanel
+from .panels.measured import MeasuredPanel
 from .panels.search import SearchPanel
 from .panels.shortlist import ShortlistPanel
 from .panels.values import ValuesPanel
@@ -45,7 +46,11 @@ class Explorer(Box):
         style = HTML(f"<style>{(Path(__file__).parent / 'page.css').read_text('utf-8')}</style>")
         style.layout.display = "none"
         sheets = Sheets(
-            {"Candidates": CandidatesPanel(state), "Published devices": DevicesPanel(state)}
+            {
+                "Candidates": CandidatesPanel(state),
+                "Published devices": DevicesPanel(state),
+                "Measured data": MeasuredPanel(state),
+            }
         )
         light = (BudgetPanel(state), AnglesPanel(state), ColoursPanel(state), CutPanel(state))
         self.views = Views(

@@ -68,13 +68,17 @@ class Band:
 
 @dataclass(frozen=True)
 class Mark:
-    """A small triangle at a place, with a name beside it and a longer text on hover."""
+    """A small triangle at a place, with a name beside it and a longer text on hover.
+
+    own: a device of the user's, which was measured: a disc, and never dropped for room.
+    """
 
     x: float  # axis fraction
     y: float  # axis fraction
     text: str
     tooltip: str = ""
     key: str = ""  # handed to the handlers of ``on_mark``
+    own: bool = False
 
 
 @dataclass(frozen=True)

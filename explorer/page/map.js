@@ -972,7 +972,7 @@ class MapView {
     bands.filter((band) => band.own).forEach(bandTag);
     for (const mark of marks) {
       this.paintMark(pen, mark);
-      this.tag(pen, mark.text, places.choose(this.markPlaces(mark, marks)));
+      this.tag(pen, mark.text, places.choose(this.markPlaces(mark, marks), mark.own));
     }
     bands.filter((band) => !band.own).forEach(bandTag);
     for (const line of picture.lines) {
@@ -1040,12 +1040,16 @@ class MapView {
   paintMark(pen, mark) {
     const [x, y] = [this.toX(mark.x), this.toY(mark.y)];
     pen.beginPath();
-    pen.moveTo(x, y - 7);
-    pen.lineTo(x + 7, y + 5.5);
-    pen.lineTo(x - 7, y + 5.5);
+    if (mark.own) {
+      pen.arc(x, y, 6, 0, 2 * Math.PI);
+    } else {
+      pen.moveTo(x, y - 7);
+      pen.lineTo(x + 7, y + 5.5);
+      pen.lineTo(x - 7, y + 5.5);
+    }
     pen.closePath();
-    pen.strokeStyle = this.theme.ink;
-    pen.fillStyle = this.theme.paper;
+    pen.strokeStyle = mark.own ? this.theme.paper : this.theme.ink;
+    pen.fillStyle = mark.own ? this.theme.ink : this.theme.paper;
     pen.lineWidth = 2;
     pen.fill();
     pen.stroke();

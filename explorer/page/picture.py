@@ -15,7 +15,7 @@ from ..sentence import met_by, quantity_label
 from ..units import from_si, text
 from ..yields import PASSING
 from .backdrop import Drawn
-from .canvas import AxisScale, ColourScale, Line, Picture
+from .canvas import AxisScale, ColourScale, Line, Mark, Picture
 from .canvas import Label as Note
 
 #: Most decades that a logarithmic colour scale spans by itself.
@@ -28,8 +28,8 @@ MASKS = 8
 FIRST = 12
 
 
-def picture_of(answer: Answer, drawn: Map, back: Drawn) -> Picture:
-    """Everything that the canvas draws for an answer."""
+def picture_of(answer: Answer, drawn: Map, back: Drawn, own: tuple[Mark, ...] = ()) -> Picture:
+    """Everything that the canvas draws for an answer; own: marks of measured devices."""
     question = answer.question
     name = question.shown if question.shown in drawn.values else next(iter(drawn.values))
     layers = question.layers
@@ -52,14 +52,17 @@ def picture_of(answer: Answer, drawn: Map, back: Drawn) -> Picture:
         ),
         labels=notes(border, drawn, answer),
         bands=back.bands if "all_bands" in layers else tuple(b for b in back.bands if b.own),
-        marks=back.marks
-        if "all_marks" in layers
-        else back.marks[:FIRST]
-        if "marks" in layers
-        else (),
+        marks=own + published_marks(back, layers),
         top=back.top if "scales" in layers else None,
         right=back.right if "scales" in layers else None,
     )
+
+
+def published_marks(back: Drawn, layers: frozenset[str]) -> tuple[Mark, ...]:
+    """The published devices that these layers show."""
+    if "all_marks" in layers:
+        return back.marks
+    return back.marks[:FIRST] if "marks" in layers else ()
 
 
 def axis_scale(name: str, low: float, high: float, log: bool) -> AxisScale:

@@ -133,6 +133,12 @@ class State:
         """Take only some inputs of a published resonator, with their origins."""
         self.change(lambda design: placed(design, key, names), names)
 
+    def take_built(self, name: str) -> None:
+        """Move the resonator to that of a measured device."""
+        found = next((row for row in self.question.design.built if row.name == name), None)
+        if found is not None:
+            self.give(**found.point)
+
     def reading(self, name: str) -> float:
         """A quantity of the present design, also one that the answer does not carry."""
         if name in self.answer.outcome:

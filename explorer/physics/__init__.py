@@ -10,6 +10,7 @@ from . import (
     outcome,
     photons,
     purity,
+    sampled_outcome,
     spectra,
 )
 
@@ -23,5 +24,6 @@ __all__ = [
     "outcome",
     "photons",
     "purity",
+    "sampled_outcome",
     "spectra",
 ]

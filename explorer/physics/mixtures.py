@@ -1,4 +1,4 @@
-"""Several lines and measured spectra that wander, and their light inside a filter.
+"""Several lines that wander, and their light inside a filter.
 
 The total exchange rate stands in the single line's form; over slow wandering the outcome is averaged
 over rigid shifts of the whole spectrum. Inside a filter the product of line and resonance is used:
@@ -12,8 +12,8 @@ from typing import Any
 import numpy as np
 
 from ..registry import part, variant
-from ..whole import Lines, Samples
-from .wandering import average_over_samples, average_over_shifts
+from ..whole import Lines
+from .wandering import average_over_shifts
 from .window import outgoing_window
 
 
@@ -98,51 +98,6 @@ def averaged_lines(*, lines_average: Any, lines_at: Any, outcome_of: Any) -> Any
     return lines_average(lambda shift: outcome_of(sum(row[0] for row in lines_at(shift))))
 
 
-@part
-def averaged_samples(
-    *, measured: Any, detuning: Any, resonator_linewidth: Any, samples_average: Any, outcome_of: Any
-) -> Any:
-    """Of a measured spectrum that wanders as a whole: mean rate, share and lifetime."""
-
-    def outcome(shift: Any) -> Any:
-        return outcome_of(
-            measured(
-                lambda line, offset, width: line.overlap(-offset, width),
-                detuning + shift,
-                resonator_linewidth,
-            )
-        )
-
-    return samples_average(outcome)
-
-
-@part
-def samples_average(
-    *, measured: Any, detuning: Any, resonator_linewidth: Any, slow_deviation: Any
-) -> Any:
-    """A function that averages an outcome over the shifts of a measured spectrum.
-
-    Right to 1e-6 and better for a resonator wider than two samples; for a narrower one as far as
-    the samples' own noise allows (see `average_over_samples`). Seen at worst on a smooth spectrum
-    that is cut at its ends: 3e-5 for shares, rates and light inside a filter, 1e-3 for the lifetime
-    beside a resonance far narrower than the wandering. The nodes do not follow a filter: where the
-    spectrum is over a hundred times narrower than its wandering, the light inside is right to 1e-2 of
-    the whole only.
-    """
-    half = resonator_linewidth / 2
-
-    def average(outcome: Any) -> Any:
-        return average_over_samples(
-            outcome=outcome,
-            sigma=slow_deviation,
-            step=np.maximum(measured(lambda line: line.step), half),
-            centre=-detuning,
-            feature=measured(lambda line: line.fwhm) / 2 + half,
-        )
-
-    return average
-
-
 @variant("mode_rate", spectrum=Lines)
 def mode_rate_of_lines(*, averaged_lines: Any) -> Any:
     """Mean rate of several lines that wander together."""
@@ -159,24 +114,6 @@ def share_of_lines(*, averaged_lines: Any) -> Any:
 def lifetime_of_lines(*, averaged_lines: Any) -> Any:
     """Lifetime in the device, several lines that wander together."""
     return averaged_lines[2]
-
-
-@variant("mode_rate", spectrum=Samples)
-def mode_rate_of_samples(*, averaged_samples: Any) -> Any:
-    """Mean rate of a measured spectrum that wanders as a whole."""
-    return averaged_samples[0]
-
-
-@variant("cavity_share", spectrum=Samples)
-def share_of_samples(*, averaged_samples: Any) -> Any:
-    """Share of the mode, a measured spectrum that wanders as a whole."""
-    return averaged_samples[1]
-
-
-@variant("device_lifetime", spectrum=Samples)
-def lifetime_of_samples(*, averaged_samples: Any) -> Any:
-    """Lifetime in the device, a measured spectrum that wanders as a whole."""
-    return averaged_samples[2]
 
 
 def _lines_light(rows: Any, edges: Any, kappa: Any) -> Any:
@@ -222,47 +159,4 @@ def window_of_lines(
     # Cells without an edge take the resonance in its place: nodes are there already.
     edges = [np.where(np.isfinite(edge), edge, 0.0) for edge in filter_edges]
     passed, share = lines_average(outcome, edges)
-    return passed / share
-
-
-@part
-def sampled_light(
-    *, measured: Any, detuning: Any, resonator_linewidth: Any, filter_edges: Any
-) -> Any:
-    """A function of a rigid shift: overlap of a measured spectrum, and that inside the filter."""
-
-    def light(shift: Any) -> Any:
-        offset = detuning + shift
-        total = measured(
-            lambda line, centre, width: line.overlap(centre, width), -offset, resonator_linewidth
-        )
-        passed = measured(
-            lambda line, centre, width, lower, upper: line.window(centre, width, lower, upper),
-            -offset,
-            resonator_linewidth,
-            filter_edges[0] - offset,
-            filter_edges[1] - offset,
-        )
-        return total, passed
-
-    return light
-
-
-@variant("mode_light_window", spectrum=Samples, slow_linewidth=0)
-def window_of_still_samples(*, sampled_light: Any) -> Any:
-    """Share of the mode's light inside the filter, a measured spectrum."""
-    total, passed = sampled_light(0.0)
-    return passed / total
-
-
-@variant("mode_light_window", spectrum=Samples)
-def window_of_samples(*, sampled_light: Any, weight_of: Any, samples_average: Any) -> Any:
-    """The same where the spectrum wanders as a whole: weighted by the share of the mode."""
-
-    def outcome(shift: Any) -> Any:
-        total, passed = sampled_light(shift)
-        share = weight_of(total)
-        return share * passed / total, share
-
-    passed, share = samples_average(outcome)
     return passed / share

@@ -7,7 +7,7 @@ The density s(ω) of `sampled` shifted by a Gaussian of standard deviation σ, a
 import numpy as np
 from numpy.typing import ArrayLike
 
-from .sampled import Floats, each_distinct, parts, window_share
+from .sampled_pieces import Floats, each_distinct, parts, window_share
 from .window_line import gaussian_share
 
 #: Where the integrand is cut beside an edge, in σ: half a σ apart, and 1e-19 lies beyond.

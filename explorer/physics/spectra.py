@@ -143,14 +143,6 @@ def overlap_of_lines(
     return total
 
 
-@variant("spectral_overlap", spectrum=Samples)
-def overlap_of_samples(*, measured: Any, detuning: Any, resonator_linewidth: Any) -> Any:
-    """The same for a measured spectrum: the exact integral of its piecewise-linear form."""
-    return measured(
-        lambda line, offset, width: line.overlap(-offset, width), detuning, resonator_linewidth
-    )
-
-
 @part
 def filter_edges(*, filter_width: Any, filter_centre: Any, resonance_wavelength: Any) -> Any:
     """Lower and upper edge of the filter minus the resonance [rad/s].

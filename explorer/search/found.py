@@ -10,8 +10,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from ..design import Frozen, Requirement, written
+from ..design import Requirement, written
 from ..domain import InputError, quoted
+from ..frozen import Frozen
 from ..inputs import INPUTS
 from ..registry import REGISTRY
 from ..units import text

@@ -10,9 +10,10 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from ..design import Frozen, Requirement, all_requirements
+from ..design import Requirement, all_requirements
 from ..domain import InputError
 from ..evaluate import Evaluation
+from ..frozen import Frozen
 from ..maps import margins
 from .found import Found, Goal, why_best, why_met, why_missed
 from .scale import Array

@@ -14,6 +14,7 @@ from ...registry import REGISTRY
 from ...sentence import quantity_label
 from ...yields import PASSING
 from ..backdrop import Backdrop
+from ..built import KEY, BuiltMarks
 from ..canvas import MapCanvas
 from ..picture import described, is_free, picture_of
 from ..scales import rounded
@@ -43,7 +44,7 @@ class MapPanel(VBox):
 
     def __init__(self, state: State) -> None:
         self._state = state
-        self._backdrop = Backdrop()
+        self._backdrop, self._built = Backdrop(), BuiltMarks()
         self._drawn: tuple[Any, ...] = ()
         self._held: tuple[Any, ...] = ()
         self._map: Map | None = None
@@ -124,6 +125,9 @@ class MapPanel(VBox):
         self._place(self._state.answer)
 
     def _marked(self, key: str) -> None:
+        if key.startswith(KEY):
+            self._state.take_built(key.removeprefix(KEY))
+            return
         self._state.take_place(key, (self._state.question.x.name, self._state.question.y.name))
 
     def _draw(self, answer: Answer) -> None:
@@ -191,13 +195,13 @@ class MapPanel(VBox):
                 widget.value = value
 
     def _paint(self, answer: Answer, drawn: Map) -> None:
-        back = self._backdrop.of(answer)
-        key = (id(drawn), answer.question.layers, id(back), self._free)
+        back, own = self._backdrop.of(answer), self._built.of(answer)
+        key = (id(drawn), answer.question.layers, id(back), id(own), self._free)
         if key == self._drawn:
             return
         self._map = drawn
-        self._drawn, self._held = key, (drawn, back)  # held, so that their ids stay theirs
-        self.canvas.show(picture_of(answer, drawn, back))
+        self._drawn, self._held = key, (drawn, back, own)  # held, so that their ids stay theirs
+        self.canvas.show(picture_of(answer, drawn, back, own))
 
     def _describe(self, answer: Answer, drawn: Map) -> None:
         """The map and the design on it in words, once a hand rests."""

@@ -1,0 +1,216 @@
+"""One fit for all kinds of measured data: maximum likelihood, and intervals from its profile.
+
+Fisher scoring goes to the best fit, Migrad of Minuit (James & Roos, Comput. Phys. Commun. 10, 343
+(1975)) confirms or betters it, and MINOS follows the likelihood of one parameter, the others at
+their best, until it has fallen by what the level asks. Where MINOS gives up, profiles by scoring
+take its place. Everything in slices, so that a page stays alive.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Generator, Iterator, Sequence
+from dataclasses import dataclass, field
+from typing import Any, TypeVar
+
+import numpy as np
+
+from ..domain import InputError, finite_number
+from .data import DataError, Estimate
+from .noise import Array, Noise
+from .scoring import NDArrayBool, Problem, covariance, profile_end, score_steps
+
+Result = TypeVar("Result")
+
+#: Model evaluations of one slice of Migrad; fewer where there are many points.
+SLICE = 150
+
+#: MINOS runs at a stretch; where points times parameters exceed this, profiles by scoring, which can
+#: be had in slices, take its place.
+MINOS_POINTS = 6000
+
+#: A limit further off than this, in steps, is kept from Minuit, whose transformation loses digits there.
+DISTANT = 100.0
+
+
+@dataclass(frozen=True)
+class Parameter:
+    """A number to fit. step: a change that matters, by which it is scaled; > 0."""
+
+    name: str
+    start: float
+    step: float
+    low: float = -math.inf
+    high: float = math.inf
+
+
+@dataclass(frozen=True, eq=False)
+class Fit:
+    """A best fit. values, errors (standard errors) in the order of the parameters, (k,).
+
+    estimates: of the parameters that were asked for. expected: the model, (n,). deviance: or the sum
+    of squares where the noise is even, of which `size` is then the standard deviation. at_limit:
+    parameters that lie at a limit. unsure: those with an end of the interval that was not found.
+    valid: whether Migrad confirms the minimum.
+    """
+
+    names: tuple[str, ...]
+    values: Array
+    errors: Array
+    covariance: Array
+    expected: Array
+    deviance: float
+    size: float
+    estimates: dict[str, Estimate] = field(default_factory=dict)
+    at_limit: frozenset[str] = frozenset()
+    unsure: frozenset[str] = frozenset()
+    valid: bool = True
+
+    def __getitem__(self, name: str) -> float:
+        return float(self.values[self.names.index(name)])
+
+    def error(self, name: str) -> float:
+        """Standard error of a parameter."""
+        return float(self.errors[self.names.index(name)])
+
+
+def checked_level(level: Any) -> float:
+    """A level of confidence, or InputError."""
+    number = finite_number(level, "level")
+    if not 0.5 <= number <= 0.9999:
+        raise InputError(f"level = {number:g} is outside its range: from 0.5 to 0.9999")
+    return number
+
+
+def finish(steps: Iterator[Result | None]) -> Result:
+    """What a fit in slices yields last."""
+    last: Result | None = None
+    for last in steps:  # noqa: B007
+        pass
+    assert last is not None
+    return last
+
+
+def fit_steps(
+    model: Callable[[Array], Array],
+    noise: Noise,
+    parameters: Sequence[Parameter],
+    *,
+    wanted: Sequence[str] = (),
+    level: float = 0.95,
+) -> Generator[None, None, Fit]:
+    """A best fit in slices; returns it.
+
+    model: parameters (k,) -> expected values (n,). wanted: parameters that get an interval. Raises
+    DataError where there are no more points than parameters.
+    """
+    if noise.values.size <= len(parameters):
+        raise DataError(f"{noise.values.size} points are too few to fit {len(parameters)} numbers")
+    steps = np.array([one.step for one in parameters])
+    origin = np.array([one.start for one in parameters])
+    low = (np.array([one.low for one in parameters]) - origin) / steps
+    high = (np.array([one.high for one in parameters]) - origin) / steps
+    problem = Problem(lambda place: model(origin + steps * place), noise, low, high)
+    free = np.ones(len(parameters), dtype=bool)
+    place = yield from score_steps(problem, np.clip(np.zeros(free.size), low, high), free)
+    degrees = noise.values.size - free.size
+    if noise.even:
+        least = 1e-28 * float(np.mean(noise.values**2)) + 1e-300
+        squared = max(problem.objective(place) / degrees, least)
+        problem = Problem(problem.model, noise, low, high, squared)
+    names = tuple(one.name for one in parameters)
+    minuit, place, valid = yield from _confirmed(problem, place, names, free)
+    touching = problem.touching(place)
+    spread = covariance(problem, place, free & ~touching)
+    expected = problem.model(place)
+    deviance = noise.deviance(expected)
+    size = math.sqrt(deviance / degrees) if noise.even else 1.0
+    sigmas = _sigmas(level, degrees if noise.even else None)
+    estimates, unsure = {}, set()
+    for name in wanted:
+        index = names.index(name)
+        ends, sure = yield from _interval(problem, minuit, place, index, sigmas, spread)
+        value = float(origin[index] + steps[index] * place[index])
+        scaled = [float(origin[index] + steps[index] * end) for end in ends]
+        estimates[name] = Estimate(value, min(scaled[0], value), max(scaled[1], value))
+        if not sure:
+            unsure.add(name)
+    return Fit(
+        names,
+        origin + steps * place,
+        steps * np.sqrt(np.diag(spread)),
+        spread * np.outer(steps, steps),
+        expected,
+        deviance,
+        size,
+        estimates,
+        frozenset(name for name, touch in zip(names, touching, strict=True) if touch),
+        frozenset(unsure),
+        valid,
+    )
+
+
+def _sigmas(level: float, degrees: int | None) -> float:
+    """Half the width of an interval in standard errors: normal, or Student's where noise is even."""
+    from scipy import special
+
+    if degrees is None:
+        return float(special.ndtri((1 + level) / 2))
+    return float(special.stdtrit(degrees, (1 + level) / 2))
+
+
+def _confirmed(
+    problem: Problem, place: Array, names: tuple[str, ...], free: NDArrayBool
+) -> Generator[None, None, tuple[Any, Array, bool]]:
+    """Migrad from where scoring came to rest, in slices, then scoring again for the last digits."""
+    from iminuit import Minuit
+
+    minuit = Minuit(lambda place: problem.objective(np.asarray(place)), place, name=names)
+    minuit.errordef, minuit.strategy, minuit.print_level = 1.0, 1, 0
+    minuit.limits = [
+        (None if low < -DISTANT else low, None if high > DISTANT else high)
+        for low, high in zip(problem.low, problem.high, strict=True)
+    ]
+    error = np.sqrt(np.diag(covariance(problem, place, free & ~problem.touching(place))))
+    minuit.errors = np.clip(np.where(error > 0, error, 0.1), 1e-6, 10.0)
+    calls = max(SLICE, 600_000 // problem.noise.values.size)
+    for turn in range(10):
+        yield None
+        minuit.migrad(ncall=calls * 2 ** max(0, turn - 4), iterate=1)
+        if minuit.fmin is None or not minuit.fmin.has_reached_call_limit:
+            break
+    found = np.clip(np.array(minuit.values), problem.low, problem.high)
+    better = problem.objective(found) < problem.objective(place) - 1e-9
+    best = yield from score_steps(problem, found if better else place, free, damping=1e-6, most=20)
+    return minuit, best, bool(minuit.valid)
+
+
+def _interval(
+    problem: Problem, minuit: Any, place: Array, index: int, sigmas: float, spread: Array
+) -> Generator[None, None, tuple[tuple[float, float], bool]]:
+    """Both ends of the interval of one parameter, scaled, and whether both are sure.
+
+    spread: scaled covariance, (k, k).
+    """
+    yield None
+    points = problem.noise.values.size * place.size
+    if minuit.valid and points <= MINOS_POINTS and not problem.touching(place).any():
+        from scipy import special
+
+        asked = sigmas if sigmas >= 1 else float(special.chdtr(1, sigmas**2))
+        minuit.minos(minuit.parameters[index], cl=asked)
+        merror = minuit.merrors[minuit.parameters[index]]
+        if merror.is_valid:
+            middle = minuit.values[index]
+            return (middle + merror.lower, middle + merror.upper), True
+    ends, sure = [], True
+    variance = spread[index, index]
+    guess = min(max(math.sqrt(variance), 1e-6), 1e3) if variance > 0 else 0.1
+    direction = spread[index] / variance if variance > 0 else np.zeros(place.size)
+    for sign in (-1.0, 1.0):
+        end, found = yield from profile_end(
+            problem, place, index, direction, sigmas**2, sign * sigmas * guess
+        )
+        ends.append(end)
+        sure = sure and found
+    return (ends[0], ends[1]), sure

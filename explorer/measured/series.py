@@ -1,0 +1,74 @@
+"""Rows in the order of their axis, with repeated ones made one."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .data import Array, Dropped
+from .pairs import Pairs, Rows
+
+
+@dataclass(frozen=True)
+class Series:
+    """Rows in ascending order of an axis without repetition.
+
+    axis, values, lines, repeats (how many rows were averaged): (n,).
+    """
+
+    axis: Array
+    values: Array
+    lines: Rows
+    repeats: Array
+    notes: list[str]
+    dropped: list[Dropped]
+
+
+def order_note(axis: Array, *, rising: bool = True) -> list[str]:
+    """What is said of an axis that was sorted. rising: whether it is expected to rise in the file."""
+    steps = np.diff(axis)
+    if (steps >= 0).all() or (not rising and (steps <= 0).all()):
+        return []
+    if (steps <= 0).all():
+        return ["the axis runs backwards in the file: sorted"]
+    return ["the axis is not in order in the file: sorted"]
+
+
+def averaged(pairs: Pairs, axis: Array, values: Array, *, rising: bool = True) -> Series:
+    """Rows sorted by `axis`, those of the same place averaged and listed as dropped.
+
+    axis: in any unit, (n,), of the rows of `pairs`; values: (n,).
+    """
+    order = np.argsort(axis, kind="stable")
+    places, rows, lines = axis[order], values[order], pairs.lines[order]
+    new = np.concatenate(([True], np.diff(places) > 0))
+    starts = np.flatnonzero(new)
+    repeats = np.diff(np.append(starts, places.size)).astype(np.float64)
+    notes = order_note(axis, rising=rising)
+    if starts.size == places.size:
+        return Series(places, rows, lines, repeats, notes, [])
+    mean = np.add.reduceat(rows, starts) / repeats
+    notes.append(f"{places.size - starts.size} rows repeat a place on the axis: averaged")
+    return Series(
+        places[starts], mean, lines[starts], repeats, notes, repeated(pairs, order, new, "averaged")
+    )
+
+
+def repeated(pairs: Pairs, order: Rows, new: NDArray[np.bool_], what: str) -> list[Dropped]:
+    """Rows that repeat the place of an earlier one. order: of the rows; new: (n,), in that order."""
+    first = np.maximum.accumulate(np.where(new, np.arange(new.size), 0))
+    found: list[Dropped] = []
+    again: Any = np.flatnonzero(~new)
+    for index in again.tolist():
+        row, earlier = order[index], order[first[index]]
+        found.append(
+            Dropped(
+                int(pairs.lines[row]),
+                f"{pairs.first[row]:.10g} {pairs.unit} stands in line {pairs.lines[earlier]} "
+                f"already: {what}",
+            )
+        )
+    return sorted(found, key=lambda one: one.line)

@@ -1,0 +1,60 @@
+"""Overlaps of a measured spectrum with many resonances at one place, from a few of them.
+
+The overlap is a sum of 1/(1+4x²/κ²) with positive weights, each analytic in log κ within π/2 of the
+real axis and, within 1.2 of it, at most 1/cos 1.2 = 2.8 times as large as on it. So a polynomial in
+log κ converges relative to the overlap itself, whatever the spectrum, the place and the window.
+"""
+
+from functools import lru_cache
+
+import numpy as np
+from numpy.polynomial.chebyshev import chebpts1, chebvander
+from numpy.typing import ArrayLike
+
+from .sampled import SampledLine
+from .sampled_pieces import Floats
+
+#: Length of a panel in log κ, and its nodes: ρ = 1.2/0.9 + √(1+(1.2/0.9)²) = 3, 3^-28 = 4e-14.
+LENGTH, NODES = 1.8, 28
+
+_POINTS = chebpts1(NODES)
+_TO_COEFFICIENTS = chebvander(_POINTS, NODES - 1).T * (2 / NODES)
+_TO_COEFFICIENTS[0] /= 2
+
+
+@lru_cache(maxsize=256)
+def _panel(line: SampledLine, number: int, place: tuple[float, float, float]) -> Floats:
+    """Chebyshev coefficients over one panel of log κ."""
+    centre, lower, upper = place
+    kappa = np.exp((number + (1 + _POINTS) / 2) * LENGTH)
+    rows = np.stack(np.broadcast_arrays(centre, kappa, lower, upper), axis=-1)
+    return np.asarray(_TO_COEFFICIENTS @ line.rows(rows))
+
+
+def still_window(
+    line: SampledLine, centre: ArrayLike, kappa: ArrayLike, lower: ArrayLike, upper: ArrayLike
+) -> Floats:
+    """As `SampledLine.window`, within 2e-10 relative; quick where only the linewidth varies.
+
+    At one centre and one window the overlap follows panels of log κ that are kept; else each is
+    worked out for itself.
+    """
+    place = [np.asarray(value, np.float64) for value in (centre, lower, upper)]
+    kappa = np.asarray(kappa, np.float64)
+    if not all(value.size == 1 for value in place):
+        return line.window(centre, kappa, lower, upper)
+    shape = np.broadcast_shapes(kappa.shape, *(value.shape for value in place))
+    key = (float(place[0].item()), float(place[1].item()), float(place[2].item()))
+    at = np.log(kappa.ravel()) / LENGTH
+    number = np.floor(at)
+    result = np.empty(at.shape)
+    for one in np.unique(number):
+        inside = number == one
+        basis = chebvander(2 * (at[inside] - one) - 1, NODES - 1)
+        result[inside] = basis @ _panel(line, int(one), key)
+    return result.reshape(shape)
+
+
+def still_overlap(line: SampledLine, centre: ArrayLike, kappa: ArrayLike) -> Floats:
+    """As `SampledLine.overlap`, within 2e-10 relative (see `still_window`)."""
+    return still_window(line, centre, kappa, -np.inf, np.inf)
