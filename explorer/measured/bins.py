@@ -17,6 +17,8 @@ _OFF: Final = 0.05
 _MOST_OFF: Final = 0.3
 #: Distance, in bins, up to which the times of the file are used as they stand.
 _EXACT: Final = 1e-6
+#: Farthest bin from the first one.
+_MOST_BINS: Final = 10_000_000
 
 
 def histogram(pairs: Pairs) -> tuple[Array, Array, float, list[str], list[Dropped]]:
@@ -60,6 +62,13 @@ def _grid(pairs: Pairs, kept: Rows) -> tuple[Array, float, list[str]]:
     """The grid through the times of the kept rows, which rise."""
     values = pairs.first[kept]
     numbers, start, width = _fitted(values)
+    if numbers[-1] > _MOST_BINS:
+        row = int(np.argmax(numbers > _MOST_BINS))
+        raise pairs.error(
+            f"{values[row]:.10g} {pairs.unit} lies more than {_MOST_BINS:,} bins of {width:.6g} "
+            f"{pairs.unit} from the first time",
+            int(kept[row]),
+        )
     off = np.abs(values - start - width * numbers) / width
     allowed = np.full(off.shape, _OFF)
     if off.max() > _OFF:

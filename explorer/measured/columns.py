@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+import unicodedata
 from dataclasses import dataclass, replace
 from typing import Final
 
@@ -85,7 +86,7 @@ UNITS: Final = _units()
 def _spellings() -> dict[str, str]:
     """Other spellings, all in lower case, and the usual name."""
     found = {name.lower(): name for name in UNITS if name not in ("PHz", "mHz", "MHz")}
-    found |= {"mhz": "MHz", "phz": "PHz", "a": "Å", "ang": "Å", "å": "Å", "\u212b".lower(): "Å"}
+    found |= {"mhz": "MHz", "phz": "PHz", "ang": "Å", "å": "Å", "\u212b".lower(): "Å"}
     for word in ("angstrom", "ångström", "ångstrom", "angström"):
         found |= {word: "Å", f"{word}s": "Å"}
     for word in ("deg", "degs", "degree", "degrees", "º", "˚", "\\degree"):
@@ -147,9 +148,14 @@ _BARE: Final = {"a", "m", "s", "ch", "bin", "index", "channel", "pixel", "px", "
 
 def known_unit(text: str) -> Unit | None:
     """The unit of an axis that a text names, in any spelling; 'N unit' is a channel's width."""
-    plain = " ".join(text.split()).replace("μ", "µ").replace("\\mu", "µ").strip("$\"' ")
-    if plain in UNITS:
-        return UNITS[plain]
+    plain = (
+        unicodedata.normalize("NFC", " ".join(text.split()))
+        .replace("μ", "µ")
+        .replace("\\mu", "µ")
+        .strip("$\"' ")
+    )
+    if plain in UNITS or plain == "A":
+        return UNITS["Å" if plain == "A" else plain]
     if plain in ("MeV", "mHz", "Ms", "Ps", "Mm", "Pm", "MRAD", "Mrad", "MS", "PS", "MM", "PM"):
         return None  # not the small unit that the same letters name
     lower = plain.lower()
@@ -199,15 +205,23 @@ def read_label(cell: str) -> Label:
         marked = not text[found.end(1) : found.start(2)].isspace()
         if known_unit(last) and (marked or last.lower() not in _BARE):
             return Label(text, found[1].strip(), last)
-    return Label(text, text, "")
+    return Label(text, name or text, "")
+
+
+def unit_inside(text: str) -> str:
+    """The first unit of an axis in a line of words, in brackets, behind a slash or behind 'in'."""
+    marked = [next(filter(None, found.groups())) for found in _BRACKETS.finditer(text)]
+    marked += re.findall(r"(?:\bin\s+|/\s*)([^\s,;:/]{1,16})", text)
+    known = [(one, known_unit(one)) for one in marked]
+    return next((one for one, unit in known if unit and unit.family != "channel"), "")
 
 
 def is_units_row(cells: list[str]) -> bool:
-    """Whether all cells are units, in brackets or not, or empty, the first or second of an axis."""
+    """Whether the first cell is a unit of an axis, in brackets or not, and the others may be units."""
     plain = [cell.strip(" \t\"'") for cell in cells]
     known = [bool(known_unit(one) or known_unit(one.strip("()[]{}"))) for one in plain]
     others = [one for one, yes in zip(plain, known, strict=True) if not yes]
-    return any(known[:2]) and all(len(one) <= 16 for one in others)
+    return known[0] and all(len(one) <= 16 for one in others)
 
 
 def axis_unit(text: str, kind: str) -> Unit:

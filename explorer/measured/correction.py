@@ -13,7 +13,7 @@ from .axes import axis_values, vacuum_wavelengths
 from .columns import KINDS
 from .data import Array, DataError, Dropped
 from .pairs import Pairs, Rows
-from .series import averaged
+from .series import averaged, linear
 
 #: Values below zero of at most this share of the largest are taken for noise around a background.
 NOISE_BELOW_ZERO: Final = 0.1
@@ -47,15 +47,22 @@ class Curve:
         return self.pairs.document.error(reason, line)
 
 
-def curve_of(pairs: Pairs, *, counting: bool) -> Curve:
+def curve_of(pairs: Pairs, *, counting: bool, least: int = 2) -> Curve:
     """Sorted by wavelength, repeated wavelengths averaged. counting: whether values may be counts.
 
-    Raises DataError for a wavelength that no emitter of this tool has.
+    Raises DataError for a wavelength that no emitter of this tool has, and for fewer than `least`
+    different ones.
     """
     wavelengths = _in_range(pairs)
-    values = pairs.second
+    notes: list[str] = []
+    values = linear(pairs, notes)
+    counting = counting and values is pairs.second
     known = counting and counts_photons(values, pairs.value_unit)
     series = averaged(pairs, wavelengths, values, rising=pairs.unit.family == "length")
+    if series.axis.size < least:
+        raise pairs.error(
+            f"the rows hold {series.axis.size} different wavelengths, {least} are needed", 0
+        )
     gain = 1.0 / series.repeats if known else None
     floor = np.zeros_like(series.values) if known else None
     return Curve(
@@ -65,7 +72,7 @@ def curve_of(pairs: Pairs, *, counting: bool) -> Curve:
         series.lines,
         gain,
         floor,
-        [*pairs.notes, *series.notes],
+        [*pairs.notes, *series.notes, *notes],
         [*pairs.dropped, *series.dropped],
     )
 

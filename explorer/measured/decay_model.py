@@ -23,7 +23,8 @@ def bin_numbers(data: Histogram) -> NDArray[np.int64]:
     """Number of each bin on the even grid that starts with the first one."""
     if data.times.size < 2:
         raise DataError("a histogram of one bin cannot be fitted", data.name)
-    numbers = np.rint((data.times - data.times[0]) / data.width).astype(np.int64)
+    steps = np.rint((data.times - data.times[0]) / data.width)
+    numbers: NDArray[np.int64] = np.asarray(steps, dtype=np.int64)
     if np.any(np.diff(numbers) < 1):
         raise DataError("two bins lie at the same time", data.name)
     if numbers[-1] >= MOST_BINS:

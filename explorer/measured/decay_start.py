@@ -79,7 +79,8 @@ def best_start(
     for shift in shifts:
         columns = [bins(float(one), float(shift)) for one in lifetimes] + [np.ones(counts.size)]
         matrix = np.stack(columns, axis=1) * weight[:, None]
-        triangle = np.linalg.qr(np.column_stack([matrix, counts * weight]), mode="r")
+        stacked = np.column_stack([matrix, counts * weight])
+        triangle: Array = np.asarray(np.linalg.qr(stacked, mode="r"))
         for first in range(len(lifetimes)):
             for second in range(first) if components == 2 else (first,):
                 use = [*sorted({first, second}, reverse=True), len(lifetimes)]

@@ -91,7 +91,8 @@ def prepared(
         def tail(lifetime: float, shift: float) -> Array:  # noqa: ARG001
             shares = tail_bins(count=count, width=data.width, lifetime=lifetime)[offset]
             # What earlier pulses left decays alike, so that they only raise the tail.
-            return shares if period is None else shares / -np.expm1(-period / lifetime)
+            earlier = 1.0 if period is None else -np.expm1(-period / lifetime)
+            return np.asarray(shares / earlier)
 
         return Work(bins=tail, notes=tuple(notes), **shared)
     return _with_response(data, response, shared, bin_of, tuple(notes))

@@ -30,7 +30,7 @@ SLICE = 150
 MINOS_POINTS = 6000
 
 #: A limit further off than this, in steps, is kept from Minuit, whose transformation loses digits there.
-DISTANT = 100.0
+DISTANT = 200.0
 
 
 @dataclass(frozen=True)
@@ -68,6 +68,11 @@ class Fit:
 
     def __getitem__(self, name: str) -> float:
         return float(self.values[self.names.index(name)])
+
+    def normal(self, name: str, level: float) -> Estimate:
+        """A parameter with an interval from its standard error."""
+        value, half = self[name], _sigmas(level, None) * self.error(name)
+        return Estimate(value, value - half, value + half)
 
     def error(self, name: str) -> float:
         """Standard error of a parameter."""
@@ -165,7 +170,7 @@ def _confirmed(
     """Migrad from where scoring came to rest, in slices, then scoring again for the last digits."""
     from iminuit import Minuit
 
-    minuit = Minuit(lambda place: problem.objective(np.asarray(place)), place, name=names)
+    minuit = Minuit(lambda place: min(problem.objective(place), 1e30), place, name=names)
     minuit.errordef, minuit.strategy, minuit.print_level = 1.0, 1, 0
     minuit.limits = [
         (None if low < -DISTANT else low, None if high > DISTANT else high)

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .data import Estimate
 from .engine import Fit
@@ -46,7 +47,7 @@ class Fitted:
 
 
 def common(
-    data: Any, level: float, fit: Fit, noise: Noise, where: Array | None = None
+    data: Any, level: float, fit: Fit, noise: Noise, where: NDArray[np.int64] | None = None
 ) -> dict[str, Any]:
     """The fields of `Fitted` but the cautions. where: indices of the fitted points, None for all."""
     good = goodness(noise, fit.expected, fit.values.size)
@@ -66,7 +67,7 @@ def common(
     }
 
 
-def _spread(size: int, where: Array, values: Array) -> Array:
+def _spread(size: int, where: NDArray[np.int64], values: Array) -> Array:
     full = np.full(size, np.nan)
     full[where] = values
     return full

@@ -12,15 +12,12 @@ from .axes import shifted
 from .correction import refuse_negative
 from .data import Array, Dropped
 from .pairs import Pairs
-from .series import averaged, order_note
+from .series import averaged, linear, order_note
 
 #: Angle that a file must reach for the share that goes up [rad].
 _REACHES: Final = math.radians(175.0)
-#: Largest level of a decibel scale that is taken for one.
-_MOST_DECIBELS: Final = 1000.0
 #: Printed numbers of radians are taken for quarter turns within this [rad].
 _NEAR_QUARTER: Final = 1e-4
-_LINEAR: Final = ("db", "dbm", "dbi", "decibel", "decibels", "dbr", "dbc")
 
 
 @dataclass(frozen=True)
@@ -37,7 +34,7 @@ class Folded:
 def folded(pairs: Pairs) -> Folded:
     """The pattern over the angle from the axis. Raises DataError."""
     notes = order_note(pairs.first)
-    powers = _linear(pairs, notes)
+    powers = linear(pairs, notes)
     refuse_negative(pairs, powers, pairs.lines, notes, "values")
     quarter = 90.0 if pairs.unit.name == "°" else math.pi / 2
     series = averaged(pairs, _turned(pairs, quarter), powers)
@@ -47,19 +44,6 @@ def folded(pairs: Pairs) -> Folded:
     share = upward_share(angles, values) if angles[-1] >= _REACHES else None
     angles, values = _upper(pairs, angles, values, share, notes)
     return Folded(angles, values, share, notes, [*pairs.dropped, *series.dropped])
-
-
-def _linear(pairs: Pairs, notes: list[str]) -> Array:
-    """Powers; a level in decibels becomes one."""
-    if pairs.value_unit.strip().lower() not in _LINEAR:
-        return pairs.second
-    far = np.abs(pairs.second) > _MOST_DECIBELS
-    if far.any():
-        row = int(np.argmax(far))
-        raise pairs.error(f"{pairs.second[row]:.6g} {pairs.value_unit} is no level of a power", row)
-    notes.append(f"levels in {pairs.value_unit} were made powers, ten to the tenth of each")
-    # Relative to the highest, so that no power runs out of range.
-    return np.asarray(10.0 ** ((pairs.second - pairs.second.max()) / 10.0))
 
 
 def _turned(pairs: Pairs, quarter: float) -> Array:
@@ -89,16 +73,16 @@ def _one_side(angles: Array, powers: Array, half: float, notes: list[str]) -> tu
     if not ((angles < 0) & ~ends).any():
         order = np.argsort(np.abs(angles), kind="stable")
         return _merged(np.abs(angles)[order], powers[order])
-    right, left = (angles >= 0) | ends, (angles <= 0) | ends
+    if not ((angles > 0) & ~ends).any():
+        notes.append("angles on one side of the axis, below zero: taken as above")
+        order = np.argsort(np.abs(angles), kind="stable")
+        return _merged(np.abs(angles)[order], powers[order])
     sides = []
-    for side in (right, left):
+    for side in ((angles >= 0) | ends, (angles <= 0) | ends):
         place = np.abs(angles[side])
         order = np.argsort(place, kind="stable")
         sides.append(_merged(place[order], powers[side][order]))
-    (first, _), (second, behind) = sides
-    if not ((angles > 0) & ~ends).any():
-        notes.append("angles on one side of the axis, below zero: taken as above")
-        return second, behind
+    (first, _), (second, _) = sides
     places = np.union1d(first, second)
     total, weight = np.zeros(places.size), np.zeros(places.size)
     for place, value in sides:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Generator, Iterator
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -40,7 +40,8 @@ class G2Fit(Fitted):
     bunching, bunching_time [s]: its height over the far level and its decay, or None. areas, pulsed:
     (delay, counts, error) in windows of one period, and window_g2 the central one over the mean of
     the others: no model, background included; None without such windows. side_p_value: chance that
-    side peaks as unequal come of noise, None with fewer than two.
+    side peaks as unequal come of noise, None with fewer than two. g², decay_time, background and
+    bunching have intervals of their profiles, centre, far_level and period of their standard errors.
     """
 
     g2_zero: float
@@ -138,7 +139,7 @@ def _result(
     share: float,
     level: float,
 ) -> G2Fit:
-    of = fit.estimates
+    of = {name: fit.estimates.get(name, fit.normal(name, level)) for name in fit.names}
     g2 = of["g2"]
     pulsed = pumping == "pulsed"
     fields = common(data, level, fit, noise)
@@ -149,7 +150,11 @@ def _result(
     windows = window_areas(data, fit["centre"], fit["period"]) if pulsed else ()
     ratio, side = _windows(windows)
     emitter = mapped(g2, lambda value: 1 + (value - 1) / share**2)
-    areas = tuple((fit["centre"] + one * fit["period"], area, error) for one, area, error in windows) if pulsed else ()
+    areas = (
+        tuple((fit["centre"] + one * fit["period"], area, error) for one, area, error in windows)
+        if pulsed
+        else ()
+    )
     return G2Fit(
         **fields,
         cautions=g2_cautions(data, fields, fit, noise, pulsed, jitter, emitter, side),

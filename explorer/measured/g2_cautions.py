@@ -85,10 +85,14 @@ def _continuous(data: Coincidences, fit: Fit, decay: float, jitter: float) -> li
     if 2 * decay < 3 * data.width:
         told.append("the dip is narrower than three bins: its depth hangs on the model")
     if jitter > decay:
-        told.append("the jitter is wider than the dip: its depth hangs on how well the jitter is known")
+        told.append(
+            "the jitter is wider than the dip: its depth hangs on how well the jitter is known"
+        )
     if jitter == 0 and 2 * decay < 10 * data.width:
         told.append("no jitter is given and the dip is only a few bins wide: g²(0) may be too high")
     span = min(data.times[-1] - fit["centre"], fit["centre"] - data.times[0])
     if span < 4 * decay:
-        told.append(f"the far level is not reached: the data end {span / decay:.1f} decay times from zero")
+        told.append(
+            f"the far level is not reached: the data end {span / decay:.1f} decay times from zero"
+        )
     return told

@@ -8,13 +8,13 @@ from collections.abc import Callable, Generator
 import numpy as np
 
 from .data import Coincidences, DataError
-from .decay_start import coarse
 from .engine import Fit, Parameter, fit_steps
 from .g2_model import dip_share
 from .noise import Array, Noise
+from .spectrum_model import strongest_box
 
-#: Dip widths that are tried first.
-TRIES = 14
+#: A dip stands out where it is this many standard deviations below the rest.
+CLEAR = 4.0
 
 
 def continuous_steps(
@@ -24,14 +24,15 @@ def continuous_steps(
     if data.times.size < 10:
         raise DataError("fewer than ten bins cannot be fitted", data.name)
     noise = Noise.poisson(data.counts)
-    parameters = _parameters(data, jitter, bunching)
+    parameters = _parameters(data, bunching)
     yield None
     names = [one.name for one in parameters]
     model = _model(data, names, jitter)
     if not data.counting:
         fit = yield from fit_steps(model, noise, parameters, level=level)
         noise = noise.scaled_to(fit.expected, len(parameters))
-    fit = yield from fit_steps(model, noise, parameters, wanted=names, level=level)
+    wanted = [name for name in names if name not in ("level", "centre")]
+    fit = yield from fit_steps(model, noise, parameters, wanted=wanted, level=level)
     return fit, noise
 
 
@@ -53,47 +54,33 @@ def _model(data: Coincidences, names: list[str], jitter: float) -> Callable[[Arr
     return model
 
 
-def _parameters(data: Coincidences, jitter: float, bunching: bool) -> list[Parameter]:
-    """Where the fit starts: the best of a table of widths and centres."""
-    level, centre, decay, depth = _deepest(data, jitter)
+def _parameters(data: Coincidences, bunching: bool) -> list[Parameter]:
+    """Where the fit starts: the stretch with fewest counts."""
+    level, centre, decay, depth = _deepest(data)
     span = float(data.times[-1] - data.times[0])
     low, high = math.log(data.width / 100), math.log(5 * span)
     central = min(max(1 - depth, 0.05), 0.95)
     parameters = [
         Parameter("g2", central, 0.05, 0.0),
-        Parameter("level", math.log(level), 0.05),
+        Parameter("level", math.log(level), 0.05, math.log(level) - 6, math.log(level) + 6),
         Parameter("decay", math.log(decay), 0.1, low, high),
         Parameter("centre", centre, 0.1 * decay, centre - span / 4, centre + span / 4),
     ]
     if bunching:
-        parameters.append(Parameter("bunching", 0.2, 0.05, 0.0))
-        far = max(math.log(span / 6 / decay), 1.0)
-        parameters.append(Parameter("reach", far, 0.1, 0.2, far + 6))
+        parameters.append(Parameter("bunching", 0.2, 0.05, 0.0, 100.0))
+        longest = max(math.log(span / 2 / decay), 1.0)
+        parameters.append(Parameter("reach", max(longest - 1, 0.7), 0.1, 0.2, longest))
     return parameters
 
 
-def _deepest(data: Coincidences, jitter: float) -> tuple[float, float, float, float]:
-    """Far level, centre, decay and depth of the dip that takes most of the deviance."""
-    many, _ = coarse(data.counts)
-    groups = np.arange(0, data.counts.size, max(min(many, data.counts.size // 60), 1))
-    counts = np.add.reduceat(data.counts, groups)
-    size = np.diff(np.append(groups, data.counts.size))
-    times = np.add.reduceat(data.times, groups) / size
-    rate = counts / size
-    span = float(times[-1] - times[0])
-    weight = size / max(float(np.mean(rate)), 1e-12)
-    best = (-np.inf, float(np.mean(rate)), 0.0, span / 20, 0.5)
-    for decay in np.geomspace(data.width, span / 4, TRIES):
-        wide = math.hypot(decay, jitter)
-        for centre in np.arange(times[0] + span / 8, times[-1] - span / 8, max(wide / 2, span / 300)):
-            edges = np.stack([times - data.width / 2, times + data.width / 2])
-            dip = dip_share(edges=edges, decay=decay, jitter=jitter, centre=float(centre))
-            middle = np.sum(weight * dip) / np.sum(weight)
-            slope = np.sum(weight * (dip - middle) * rate) / np.sum(weight * (dip - middle) ** 2)
-            gain = slope**2 * np.sum(weight * (dip - middle) ** 2) if slope < 0 else 0.0
-            far = float(np.sum(weight * rate) / np.sum(weight) - slope * middle)
-            if gain > best[0] and far > 0:
-                best = gain, far, float(centre), float(decay), min(max(-slope / far, 0.05), 1.0)
-    if best[0] < 12:
+def _deepest(data: Coincidences) -> tuple[float, float, float, float]:
+    """Far level, centre, decay and depth of the stretch whose lack of counts stands out most."""
+    blocks = np.array_split(data.counts, min(20, data.counts.size // 4))
+    level = max(float(np.quantile([np.mean(block) for block in blocks], 0.75)), 1e-9)
+    lack, noise = level - data.counts, np.full(data.counts.shape, level)
+    centre, width, area, score = strongest_box(data.times, lack, noise, data.width)
+    if score < CLEAR:
         raise DataError("no dip stands out of the noise", data.name)
-    return best[1:]
+    decay = width / (2 * math.log(2))
+    depth = area / (2 * decay * level)
+    return level, centre, decay, min(max(depth, 0.05), 0.95)

@@ -13,24 +13,25 @@ import numpy as np
 from .noise import Array
 
 
-def peak_integral(*, delay: Array, decay: float, jitter: float) -> Array:
+def peak_integral(*, delay: Array, decay: float, jitter: float, tail: Array | None = None) -> Array:
     r"""Integral of a peak from −∞ to each delay.
 
     .. math:: \Phi(t/\sigma) + \tfrac12 (E(-t) - E(t)), \quad
        E(t) = \tfrac12 e^{\sigma^2/2\tau^2 - t/\tau}\,{\rm erfc}\frac{\sigma/\tau - t/\sigma}{\sqrt2}
 
     delay, decay τ [s], jitter σ: standard deviation of the Gaussian [s], 0 for none. Beyond eight
-    σ of Gaussian and shift the pure exponential is used, right to 1e-15.
+    σ of Gaussian and shift the pure exponential is used, right to 1e-15. tail: e^(−|t|/τ), if known.
     """
     distance = np.abs(delay)
+    tail = np.exp(-distance / decay) if tail is None else tail
     if jitter <= 0:
-        tail = np.exp(-distance / decay) / 2
-        return np.asarray(np.where(delay < 0, tail, 1 - tail))
+        return np.asarray(np.where(delay < 0, tail / 2, 1 - tail / 2))
     ratio = jitter / decay
-    tail = np.exp(np.minimum(ratio**2 / 2 - distance / decay, 0.0)) / 2
-    far = distance > (8 + ratio) * jitter
-    result = np.where(delay < 0, tail, 1 - tail)
-    near = ~far
+    if ratio > 30:  # all of it is near, and the factor of the tail could overflow
+        return _near(delay / jitter, ratio)
+    half = np.exp(ratio**2 / 2) / 2 * tail
+    result = np.where(delay < 0, half, 1 - half)
+    near = distance <= (8 + ratio) * jitter
     if near.any():
         result[near] = _near(delay[near] / jitter, ratio)
     return np.asarray(result)
@@ -114,16 +115,19 @@ class Train:
 
     def _cell(self, place: Array, weights: Array, left: Array, right: Array) -> Array:
         """Integral within the cell of a peak, up to a place counted from the peak."""
-        own = weights * peak_integral(delay=place, decay=self.decay, jitter=self.jitter)
-        ratio = self.jitter / self.decay
-        rise = np.exp(ratio**2 / 2 + (place - self.period) / self.decay)
-        fall = np.exp(ratio**2 / 2 - (place + self.period) / self.decay)
-        return np.asarray(own + (right * rise - left * fall) / 2)
+        tail = np.exp(-np.abs(place) / self.decay)
+        own = peak_integral(delay=place, decay=self.decay, jitter=self.jitter, tail=tail)
+        total = weights * own
+        if self.period > 600 * self.decay:
+            return np.asarray(total)
+        keep = np.exp(-self.period / self.decay)
+        near, far = keep / tail, keep * tail
+        after = place >= 0
+        both = right * np.where(after, near, far) - left * np.where(after, far, near)
+        return np.asarray(total + np.exp((self.jitter / self.decay) ** 2 / 2) / 2 * both)
 
 
-def dip_share(
-    *, edges: Array, decay: float, jitter: float, centre: float
-) -> Array:
+def dip_share(*, edges: Array, decay: float, jitter: float, centre: float) -> Array:
     r"""Mean over each bin of :math:`e^{-|t|/\tau}` convolved with a Gaussian of unit area.
 
     edges: of n bins, (n + 1,) or two rows (2, n) [s]; jitter: standard deviation [s].

@@ -27,9 +27,13 @@ def pulsed_steps(
     period = period or found_period(data, full_counts(data))
     span = float(data.times[-1] - data.times[0]) + data.width
     if span < 2 * period:
-        raise DataError("the delays span less than two periods: no side peak to compare with", data.name)
+        raise DataError(
+            "the delays span less than two periods: no side peak to compare with", data.name
+        )
     if jitter > period / 16:
-        raise DataError("the jitter is too large for the period: the peaks cannot be told apart", data.name)
+        raise DataError(
+            "the jitter is too large for the period: the peaks cannot be told apart", data.name
+        )
     yield None
     parameters = _parameters(data, period, jitter, background, bunching)
     names = [one.name for one in parameters]
@@ -38,8 +42,8 @@ def pulsed_steps(
     if not data.counting:
         fit = yield from fit_steps(model, noise, parameters, level=level)
         noise = noise.scaled_to(fit.expected, len(parameters))
-    wanted = [name for name in names if name != "centre"]
-    fit = yield from fit_steps(model, noise, parameters, wanted=[*wanted, "centre"], level=level)
+    wanted = [name for name in names if name not in ("area", "period", "centre")]
+    fit = yield from fit_steps(model, noise, parameters, wanted=wanted, level=level)
     return fit, noise
 
 
@@ -84,9 +88,10 @@ def _parameters(
     central = max(float(np.sum(data.counts[~side] - level)) / bins / area, 0.02)
     error = 1 / math.sqrt(area)
     span = float(data.times[-1] - data.times[0])
+    reach = max(span / 8, period)
     parameters = [
         Parameter("g2", central, max(error * math.sqrt(max(central, 0.05)), 1e-4), 0.0),
-        Parameter("area", math.log(area), 0.1),
+        Parameter("area", math.log(area), 0.1, math.log(area) - 6, math.log(area) + 6),
         Parameter("decay", math.log(decay), 0.1, math.log(data.width / 100), math.log(20 * period)),
         Parameter("period", period, 0.1 * decay * period / span, 0.9 * period, 1.1 * period),
         Parameter("centre", centre, 0.1 * decay, centre - period / 4, centre + period / 4),
@@ -95,9 +100,9 @@ def _parameters(
         step = max(0.1 * level, 0.01 * area * data.width / period)
         parameters.append(Parameter("background", max(level, 0.2 * step), step, 0.0))
     if bunching:
-        parameters.append(Parameter("bunching", 0.3, 0.1, 0.0))
-        low, high = math.log(period / 5), math.log(20 * span)
-        parameters.append(Parameter("reach", math.log(span / 8), 0.3, low, high))
+        parameters.append(Parameter("bunching", 0.3, 0.1, 0.0, 100.0))
+        low, high = math.log(period / 5), math.log(max(span / 2, 2 * period))
+        parameters.append(Parameter("reach", math.log(reach), 0.3, low, high))
     return parameters
 
 

@@ -71,8 +71,9 @@ def window_areas(
     for one in range(int(number[0]), int(number[-1]) + 1):
         inside = number == one
         low, high = centre + (one - 0.5) * period, centre + (one + 0.5) * period
-        ends = data.times[0] - data.width / 2 <= low + data.width / 2, (
-            high - data.width / 2 <= data.times[-1] + data.width / 2
+        ends = (
+            data.times[0] - data.width / 2 <= low + data.width / 2,
+            (high - data.width / 2 <= data.times[-1] + data.width / 2),
         )
         if not all(ends) or np.sum(inside) < np.floor(period / data.width - 1e-6):
             continue

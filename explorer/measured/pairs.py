@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from typing import Final, TypeVar
@@ -11,9 +10,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ..domain import quoted
-from .cells import DELIMITERS, Writing, is_missing, is_number, numbers, split, writings
-from .columns import KINDS, UNITS, Label, Unit, axis_unit, known_unit
+from .cells import DELIMITERS, split
+from .columns import Unit
 from .data import Array, DataError, Dropped
+from .meaning import called, check_units, pass_index, units_of
+from .numerals import Writing, is_missing, is_number, numbers, writings
 from .table import Columns, Table, find_table
 from .text import Document
 
@@ -27,9 +28,6 @@ _LARGEST: Final = 1e100
 
 #: Largest share of the rows that may be left out.
 _MOST_DROPPED: Final = 0.1
-
-_COUNTED: Final = re.compile(r"(?:counts?|cts|photons?|events?|clicks?)\s*/\s*\S", re.IGNORECASE)
-_NUMBERING: Final = re.compile(r"channels?|ch\.?|bins?|index|pixels?|px", re.IGNORECASE)
 
 
 @dataclass
@@ -92,15 +90,15 @@ def understand(document: Document, request: Request, use: Callable[[Pairs], Resu
 def _readings(document: Document, request: Request) -> Iterator[Pairs]:
     """The two columns in every way of writing that fits all cells."""
     if request.units is not None:
-        _check_units(document, request.units)
+        check_units(document, request.units)
     table = find_table(document, request.columns)
     if request.columns is None:
-        _pass_index(table, request)
-    unit, value_unit, unit_notes = _units(table, request)
+        pass_index(table, request.kind, request.units)
+    unit, value_unit, unit_notes = units_of(table, request.kind, request.units)
     columns = split(table.rows, table.delimiter, table.wanted)
     ways = writings(columns)
     for way in ways:
-        notes = [*_written(table, way, len(ways) > 1), *_called(table, unit), *unit_notes]
+        notes = [*_written(table, way, len(ways) > 1), *called(table, unit), *unit_notes]
         pairs = _pairs(table, columns, way, request.least)
         if request.most is not None and len(pairs[0]) > request.most:
             raise document.error(
@@ -108,89 +106,6 @@ def _readings(document: Document, request: Request) -> Iterator[Pairs]:
                 int(pairs[2][request.most]),
             )
         yield Pairs(document, *pairs[:4], unit, value_unit, notes, pairs[4])
-
-
-def _check_units(document: Document, units: tuple[str, str]) -> None:
-    pair = isinstance(units, tuple | list) and len(units) == 2
-    if not pair or not all(isinstance(one, str) for one in units):
-        raise document.error(f'units is a pair such as ("nm", "counts"), not {quoted(units)}')
-
-
-def _fits(label: Label, kind: str) -> bool:
-    """Whether a label has a unit of the axis."""
-    found = known_unit(label.unit) if label.unit else None
-    return found is not None and found.family in KINDS[kind].families and found.family != "channel"
-
-
-def _pass_index(table: Table, request: Request) -> None:
-    """Step over a column that only counts the rows, where the header says which is the axis."""
-    if table.width < 3 or request.units is not None:
-        return
-    label = table.label(0)
-    if _fits(label, request.kind) or (label.axis and not _numbering(label)):
-        return
-    first, third = split(table.rows[:5000], table.delimiter, (0, 2))
-    whole = [int(cell) for cell in first if cell.isascii() and cell.isdigit() and len(cell) < 9]
-    if not whole or whole != list(range(whole[0], whole[0] + len(first))) or whole[0] > 1:
-        return
-    if not any(map(is_number, third)):
-        return
-    if _fits(table.label(1), request.kind):
-        table.wanted, table.counted = (1, 2), True
-        return
-    raise table.document.error(
-        "the first column only counts the rows: say which columns are wanted, such as "
-        "columns=(1, 2), or give units",
-        table.numbers[0],
-    )
-
-
-def _numbering(label: Label) -> bool:
-    return bool(_NUMBERING.match(label.name or label.unit))
-
-
-def _units(table: Table, request: Request) -> tuple[Unit, str, list[str]]:
-    """Units of both columns and what is to be said of them."""
-    kind, given = request.kind, request.units
-    first, second = (table.label(at) for at in table.wanted)
-    value = given[1] if given and given[1] else _value_unit(second, KINDS[kind].values)
-    if given and given[0]:
-        try:
-            return _with_width(table, axis_unit(given[0], kind), None), value, []
-        except DataError as error:
-            raise table.document.error(error.reason, error.line) from None
-    line = table.units or table.header
-    if not first.unit and _fits(second, kind):
-        raise table.document.error(
-            f"the unit of the axis stands at the second column, {quoted(second.text)}: say which "
-            "column is the axis, such as columns=(1, 0)",
-            line,
-        )
-    if first.unit or (_numbering(first) and "channel" in KINDS[kind].families):
-        try:
-            unit = axis_unit(first.unit or "channel", kind)
-        except DataError as error:
-            raise table.document.error(error.reason, line) from None
-        return _with_width(table, unit, line), value, []
-    unit = UNITS[KINDS[kind].usual]
-    return unit, value, [f"no unit in the file: taken as {unit}"]
-
-
-def _with_width(table: Table, unit: Unit, line: int | None) -> Unit:
-    if unit.family == "channel":
-        raise table.document.error(
-            "the axis counts channels: give the width of one by units, such as "
-            'units=("16 ps", "counts")',
-            line,
-        )
-    return unit
-
-
-def _value_unit(label: Label, usual: str) -> str:
-    """That of the second column, as the file has it, else the usual one."""
-    if _COUNTED.match(label.text):
-        return label.text[:40]
-    return label.unit[:40] or usual
 
 
 def _written(table: Table, way: Writing, doubtful: bool) -> list[str]:
@@ -202,25 +117,6 @@ def _written(table: Table, way: Writing, doubtful: bool) -> list[str]:
         notes.append(f"three digits behind every comma or point: {way} fits the whole file")
     if table.comments:
         notes.append(f"{table.comments} lines of remarks among the rows were passed over")
-    return notes
-
-
-def _called(table: Table, unit: Unit) -> list[str]:
-    """Sentences on the columns: which is what, and which are not used."""
-    names = [table.label(at).text for at in table.wanted]
-    places = [f"column {at + 1}" for at in table.wanted]
-    called = [
-        f"{place} {quoted(name)}" if name else place
-        for place, name in zip(places, names, strict=True)
-    ]
-    notes = [f"the axis is {called[0]} in {unit}, the values are {called[1]}"]
-    if table.counted:
-        notes.append("column 1 only counts the rows")
-    others = [at for at in range(table.width) if at not in table.wanted]
-    if others:
-        words = [quoted(table.label(at).text) if table.label(at).text else at + 1 for at in others]
-        shown = ", ".join(map(str, words[:5])) + (" and more" if len(words) > 5 else "")
-        notes.append(f"columns that are not used: {shown}")
     return notes
 
 
@@ -240,11 +136,13 @@ def _pairs(
             f"{bad.size} of {lines.size} rows hold no two numbers; here {reasons[0]}",
             int(lines[bad[0]]),
         )
-    _refuse_second(table, first, good)
+    _refuse_second(table, columns, first, good)
     if (left := int(good.sum())) < least:
-        every = sorted([*(one.line for one in dropped), *table.numbers[:1]])
-        where = dropped[0].line if dropped else every[0]
-        raise table.document.error(f"only {left} rows of two numbers, {least} are needed", where)
+        where = dropped[0].line if dropped else table.numbers[0]
+        raise table.document.error(
+            f"only {left} {'row' if left == 1 else 'rows'} of two numbers, {least} are needed",
+            where,
+        )
     kept = np.flatnonzero(good)
     cells = [printed[row] for row in kept.tolist()] if bad.size else printed
     return first[kept], second[kept], lines[kept], cells, [*table.dropped, *dropped]
@@ -262,12 +160,15 @@ def _why(first: str, second: str) -> str:
     return f"{quoted(first)} and {quoted(second)} are not both numbers of a usable size"
 
 
-def _refuse_second(table: Table, first: Array, good: NDArray[np.bool_]) -> None:
+def _refuse_second(
+    table: Table, columns: list[list[str]], first: Array, good: NDArray[np.bool_]
+) -> None:
     """DataError where a second table begins: words among the rows, and the axis starts again."""
     words = [
         row
         for row in np.flatnonzero(~good).tolist()
         if sum(sign.isalpha() for sign in table.rows[row][:200]) > 3
+        and not all(is_missing(column[row]) for column in columns)
     ]
     for row in words[:20]:
         later = np.flatnonzero(good[row:]) + row

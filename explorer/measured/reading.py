@@ -53,8 +53,8 @@ def read_spectrum(
     those in the header; the axis in nm, µm, Å, pm, m, eV, meV, THz, GHz or cm-1, nm where none is
     named. columns: positions from 0 or labels of the two, the first two where None. of: "counts",
     photons per unit of the file's axis, or "power", which is made photons by a factor λ. background:
-    a file or a number in the counts of the file, taken away. response: a file of relative sensitivity
-    over wavelength, divided out. An axis of energy, frequency or wavenumber brings its Jacobian.
+    a number in the counts of the file, or a file that is read with the same units and columns, taken
+    away. response: a file of relative sensitivity over wavelength, divided out. An axis of energy, frequency or wavenumber brings its Jacobian.
 
     Whole counts of 10 or more have counting noise: `gain` and `floor` say which; otherwise these are
     None. Raises DataError with file, line and reason.
@@ -62,11 +62,17 @@ def read_spectrum(
     document = load(source, name)
     if of not in OF:
         raise document.error(f'of is "counts" or "power", not {quoted(of)}')
-    dark = background if background is None else _number_or_curve(background, document)
-    sensitivity = None if response is None else _curve(response, counting=False)
+    dark: Curve | float | None = None
+    if isinstance(background, int | float | np.integer | np.floating):
+        dark = float(background)
+    elif background is not None:
+        same = Request("spectrum", units, columns, least=2, most=MOST_SAMPLES)
+        dark = _curve(background, "background", same)
+    own = Request("spectrum", None, None, least=2, most=MOST_SAMPLES)
+    sensitivity = None if response is None else _curve(response, "response", own)
 
     def use(pairs: Pairs) -> Spectrum:
-        curve = curve_of(pairs, counting=of == "counts")
+        curve = curve_of(pairs, counting=of == "counts", least=5)
         if dark is not None:
             take_background(curve, dark)
         refuse_negative(pairs, curve.values, curve.lines, curve.notes, "counts")
@@ -78,24 +84,13 @@ def read_spectrum(
     return understand(document, Request("spectrum", units, columns, most=MOST_SAMPLES), use)
 
 
-def _number_or_curve(given: Source | float, document: Document) -> Curve | float:
-    """A background: a number as it is, a file as a curve."""
-    if isinstance(given, int | float | np.integer | np.floating):
-        return given if not isinstance(given, np.generic) else float(given)
-    if given is None:
-        raise document.error("a background is a file or a number")
-    return _curve(given, counting=True)
-
-
-def _curve(source: Source, *, counting: bool) -> Curve:
-    """A background or a response over wavelength, by its own file's name in errors."""
-    request = Request("spectrum", None, None, least=2, most=MOST_SAMPLES)
+def _curve(source: Source, what: str, request: Request) -> Curve:
+    """A background or a response over wavelength, with its own file's name in errors."""
+    given = isinstance(source, bytes | bytearray | memoryview)
     return understand(
-        load(
-            source, "" if not isinstance(source, bytes | bytearray | memoryview) else "second file"
-        ),
+        load(source, what if given else ""),
         request,
-        lambda pairs: curve_of(pairs, counting=counting),
+        lambda pairs: curve_of(pairs, counting=what == "background"),
     )
 
 

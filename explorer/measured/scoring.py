@@ -42,14 +42,27 @@ class Problem:
 
     def objective(self, place: Array) -> float:
         """The deviance, over the squared size of even noise."""
-        value = self.noise.deviance(self.model(place)) / self.size
-        return value if np.isfinite(value) else 1e30
+        try:
+            value = self.noise.deviance(self.model(place)) / self.size
+        except (OverflowError, ZeroDivisionError):  # so far out that the model has no number
+            return math.inf
+        return value if np.isfinite(value) else math.inf
 
     def slopes(self, place: Array, free: NDArrayBool) -> Array:
         """Derivatives of the model by its free parameters, (n, k); zeros for the others."""
         slopes = np.zeros((self.noise.values.size, place.size))
         for index in np.flatnonzero(free):
             slopes[:, index] = self._slope(place, int(index), REACH)
+        return slopes
+
+    def rough_slopes(self, place: Array, free: NDArrayBool, expected: Array) -> Array:
+        """The same to one side only; expected: the model at the place."""
+        slopes = np.zeros((self.noise.values.size, place.size))
+        for index in np.flatnonzero(free):
+            moved = place.copy()
+            reach = REACH if place[index] + REACH <= self.high[index] else -REACH
+            moved[index] += reach
+            slopes[:, index] = (self.model(moved) - expected) / reach
         return slopes
 
     def fine_slopes(self, place: Array, free: NDArrayBool) -> Array:
@@ -80,42 +93,50 @@ def score_steps(
     damping: float = DAMPING,
     enough: float = ENOUGH,
     most: int = 200,
+    care: int = 1,
 ) -> Generator[None, None, Array]:
     """From a place to the best fit of the free parameters, one yield a step; returns the place.
 
     damping: Marquardt's, to begin with; small where the place is near. enough: a step is the last
-    where the deviance falls by less than this. most: steps.
+    where the deviance falls by less than this, or by what was foretold to this. most: steps. care:
+    with which slopes are taken.
     """
     value = problem.objective(place)
     for _ in range(most):
         yield None
-        equations = _equations(problem, place, free)
-        gain = 0.0
+        equations = _equations(problem, place, free, care)
+        gain, foretold = 0.0, 0.0
         for _ in range(24):
             step = _step(problem, place, free, equations, damping)
             trial = np.clip(place + step, problem.low, problem.high)
             moved = problem.objective(trial)
             if moved <= value:
+                ahead = equations[0] @ step
+                foretold = float(2 * ahead @ equations[1] - ahead @ ahead)
                 gain, place, value = value - moved, trial, moved
                 damping = max(damping / 5, 1e-12)
                 break
             damping = min(3 * damping, 1e12)
-        if gain <= enough * (value / place.size if problem.noise.even else 1.0):
+        little = enough * (value / problem.noise.values.size if problem.noise.even else 1.0)
+        if gain <= little or (damping < 1e-5 and abs(gain - foretold) <= little):
             break
     return place
 
 
 def _equations(
-    problem: Problem, place: Array, free: NDArrayBool, fine: bool = False
+    problem: Problem, place: Array, free: NDArrayBool, care: int = 1
 ) -> tuple[Array, Array]:
     """R and Qᵀr of the weighted slopes of all parameters and the weighted residuals.
 
     Columns of parameters that are not free are zero. Triangular, so that no digits are lost as they
-    are in the normal equations.
+    are in the normal equations. care: of the slopes, 0 to 2.
     """
     expected = problem.model(place)
     weight = 1 / np.sqrt(problem.noise.variance(expected) * problem.size)
-    slopes = problem.fine_slopes(place, free) if fine else problem.slopes(place, free)
+    if care == 0:
+        slopes = problem.rough_slopes(place, free, expected)
+    else:
+        slopes = (problem.slopes if care == 1 else problem.fine_slopes)(place, free)
     orthogonal, triangle = np.linalg.qr(weight[:, None] * slopes)
     return triangle, orthogonal.T @ (weight * (problem.noise.values - expected))
 
@@ -152,7 +173,7 @@ def _step(
 
 def covariance(problem: Problem, place: Array, free: NDArrayBool) -> Array:
     """Inverse of the Fisher information of the free parameters, zeros elsewhere, (k, k)."""
-    triangle, _ = _equations(problem, place, free, fine=True)
+    triangle, _ = _equations(problem, place, free, care=2)
     part = triangle[:, free]
     lengths = np.maximum(np.sqrt(np.sum(part**2, axis=0)), 1e-150)
     inverse = np.linalg.pinv(part / lengths, rcond=1e-14) / lengths[:, None]
@@ -175,12 +196,12 @@ def profile_end(
     limit = float(problem.high[index] if first > 0 else problem.low[index])
     search = _Search(float(best[index]), first, limit, rise)
     base, start = problem.objective(best), best
-    for _ in range(40):
+    for _ in range(14):
         trial = search.trial()
         place = np.clip(start + direction * (trial - start[index]), problem.low, problem.high)
         place[index] = trial
         place = yield from score_steps(
-            problem, place, others, damping=1e-6, enough=1e-4 * rise, most=25
+            problem, place, others, damping=1e-6, enough=1e-4 * rise, most=12, care=0
         )
         if search.told(problem.objective(place) - base):
             return search.inside, True

@@ -3,13 +3,18 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Final
 
 import numpy as np
 from numpy.typing import NDArray
 
 from .data import Array, Dropped
 from .pairs import Pairs, Rows
+
+#: Largest level of a decibel scale that is taken for one.
+_MOST_DECIBELS: Final = 1000.0
+#: Names of such a scale, in lower case.
+_LEVELS: Final = ("db", "dbm", "dbi", "decibel", "decibels", "dbr", "dbc")
 
 
 @dataclass(frozen=True)
@@ -72,3 +77,15 @@ def repeated(pairs: Pairs, order: Rows, new: NDArray[np.bool_], what: str) -> li
             )
         )
     return sorted(found, key=lambda one: one.line)
+
+
+def linear(pairs: Pairs, notes: list[str]) -> Array:
+    """The second column; levels in decibels become powers, relative to the highest."""
+    if pairs.value_unit.strip().lower() not in _LEVELS:
+        return pairs.second
+    far = np.abs(pairs.second) > _MOST_DECIBELS
+    if far.any():
+        row = int(np.argmax(far))
+        raise pairs.error(f"{pairs.second[row]:.6g} {pairs.value_unit} is no level of a power", row)
+    notes.append(f"levels in {pairs.value_unit} were made powers, ten to the tenth of each")
+    return np.asarray(10.0 ** ((pairs.second - pairs.second.max()) / 10.0))

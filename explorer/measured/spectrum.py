@@ -121,12 +121,12 @@ def _fitted(layout: Layout, sidebands: int, level: float) -> Generator[None, Non
     guess, score = first_guess(layout, noise)
     if score < CLEAR:
         raise DataError("no line stands above the noise", data.name)
-    for more in range(sidebands + 1):
-        if more:
-            layout = replace(layout, count=layout.count + 1)
-            guess = with_line(layout, noise, guess, expected)  # noqa: F821
+    fit = yield from fit_steps(layout.model, noise, layout.parameters(guess), level=level)
+    for _ in range(sidebands):
+        guess = with_line(layout, noise, layout.read(fit.values), fit.expected)
+        layout = replace(layout, count=layout.count + 1)
         fit = yield from fit_steps(layout.model, noise, layout.parameters(guess), level=level)
-        guess, expected = layout.read(fit.values), fit.expected
+    guess = layout.read(fit.values)
     guess = _ordered(guess, layout)
     fit = yield from fit_steps(
         layout.model, noise, layout.parameters(guess), wanted=_wanted(layout), level=level

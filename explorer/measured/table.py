@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
-import re
+import itertools
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import Final
 
 from ..domain import quoted
-from .cells import DELIMITERS, cut, delimiter_of, is_missing, is_number
-from .columns import Label, is_units_row, known_unit, read_label
+from .cells import cut, delimiter_of
+from .columns import Label, read_label
 from .data import DataError, Dropped
+from .header import MOST_CELLS, Header, header_cells, read_header
+from .numerals import is_missing, is_number
 from .text import Document
 
 #: Positions from 0 or labels of the two columns that are wanted.
@@ -19,10 +21,6 @@ Columns = tuple[int | str, int | str]
 #: Rows in a run that make a table; fewer are taken only where there is no such run.
 _RUN: Final = 3
 
-#: Lines above the table in which its header may stand, and cells of it that are looked at.
-_ABOVE: Final = 4
-_MOST_CELLS: Final = 1000
-
 _COMMENT: Final = ("#", "%", "!", "*", "//", "'", ";")
 
 
@@ -30,17 +28,14 @@ _COMMENT: Final = ("#", "%", "!", "*", "//", "'", ";")
 class Table:
     """The rows of a file. wanted: positions of the two columns. width: cells in the first row.
 
-    labels: of all columns, empty where there is no header; header, units: the lines in which they
-    stand. rows: the lines; numbers: theirs in the file. comments: how many were passed over. counted:
+    head: labels of all columns and the lines in which they stand. rows: the lines; numbers: theirs in the file. comments: how many were passed over. counted:
     whether the first column only counts the rows.
     """
 
     document: Document
     delimiter: str
     wanted: tuple[int, int]
-    labels: list[Label] = field(default_factory=list)
-    header: int | None = None
-    units: int | None = None
+    head: Header = field(default_factory=Header)
     rows: list[str] = field(default_factory=list)
     numbers: list[int] = field(default_factory=list)
     comments: int = 0
@@ -50,7 +45,8 @@ class Table:
 
     def label(self, position: int) -> Label:
         """That of a column, empty where it has none."""
-        return self.labels[position] if position < len(self.labels) else Label("", "", "")
+        labels = self.head.labels
+        return labels[position] if position < len(labels) else Label("", "", "")
 
 
 def find_table(document: Document, columns: Columns | None) -> Table:
@@ -63,8 +59,8 @@ def find_table(document: Document, columns: Columns | None) -> Table:
         wanted = _by_label(document, columns or (0, 1), delimiter)
     table = Table(document, delimiter, wanted)
     start = _start(table)
-    table.width = len(cut(document.lines[start], delimiter, _MOST_CELLS))
-    _read_header(table, start)
+    table.width = len(cut(document.lines[start], delimiter, MOST_CELLS))
+    table.head = read_header(document.lines[:start], delimiter, wanted, table.width)
     _collect(table, start)
     _refuse_two_commas(table)
     return table
@@ -77,10 +73,10 @@ def _positions(document: Document, columns: Columns | None) -> tuple[int, int] |
     if isinstance(columns, str) or not isinstance(columns, Sequence) or len(columns) != 2:
         raise document.error(f"columns is a pair such as (0, 1), not {quoted(columns)}")
     for one in columns:
-        whole = isinstance(one, int) and not isinstance(one, bool) and 0 <= one < _MOST_CELLS
+        whole = isinstance(one, int) and not isinstance(one, bool) and 0 <= one < MOST_CELLS
         if not whole and not isinstance(one, str):
             raise document.error(
-                f"a column is a position from 0 to {_MOST_CELLS - 1} or a label, not {quoted(one)}"
+                f"a column is a position from 0 to {MOST_CELLS - 1} or a label, not {quoted(one)}"
             )
     first, second = columns
     if first == second:
@@ -92,7 +88,7 @@ def _by_label(document: Document, columns: Columns, delimiter: str) -> tuple[int
     """Positions of columns that are given by label, from the first line that holds them."""
     missing = ""
     for line in document.lines[:10_000]:
-        cells = _header_cells(line[:100_000], delimiter, None)
+        cells = header_cells(line[:100_000], delimiter, None)
         names = [_names(cell) for cell in cells]
         found: list[int] = []
         for one in columns:
@@ -119,6 +115,8 @@ def _no_table(document: Document, wanted: tuple[int, int]) -> DataError:
     """Why no line holds two numbers."""
     ones = 0
     first = None
+    if all(not line.strip() or line.lstrip().startswith(_COMMENT) for line in document.lines):
+        return document.error("every line is a remark")
     for number, line in enumerate(document.lines, 1):
         cells = line[:200].replace(";", " ").replace("\t", " ").split()
         if len(cells) == 1 and is_number(cells[0].strip('"')):
@@ -157,39 +155,39 @@ def is_comment(line: str, delimiter: str) -> bool:
         )
     if line[0] == ";" and delimiter == ";":
         return False
-    if line[0] in "#'":
+    if line[0] == "#":
         cells = cut(line, delimiter, 2)
-        return not (is_missing(cells[0]) and len(cells) > 1 and is_number(cells[1]))
+        return not (len(cells) > 1 and is_missing(cells[0]))
     return True
 
 
 def _start(table: Table) -> int:
     """Index of the first row; numbers that stand alone above go into `dropped`."""
     lines, most = table.document.lines, max(table.wanted) + 1
-    first, run, single, alone = -1, 0, -1, []
+    run: list[int] = []
+    alone: list[list[int]] = []
+    sure = False
     for index, raw in enumerate(lines):
         line = raw.strip()
-        if line and is_comment(line, table.delimiter):
+        if not line or is_comment(line, table.delimiter):
             continue
-        cells = cut(raw, table.delimiter, most) if line else []
+        cells = cut(raw, table.delimiter, most)
         pair = [cells[at] if at < len(cells) else "" for at in table.wanted]
-        sure = [is_number(cell) for cell in pair]
-        if run and any(sure) and all(map(_number_or_missing, pair)):
-            run += 1
-        elif all(sure):
-            first, run = index, 1
-        elif run:
-            alone += [first + 1]
-            single, run = (first if single < 0 else single), 0
-        if run >= _RUN:
-            break
+        if any(pair) and len(cells) > 1 and all(map(_number_or_missing, pair)):
+            run.append(index)
+            sure = sure or all(map(is_number, pair))
+            if sure and len(run) >= _RUN:
+                break
+        else:
+            alone += [run] if sure else []
+            run, sure = [], False
     else:
-        if run == 0 or single >= 0:
-            return single if single >= 0 else first
+        return [*alone, run][0][0]
     table.dropped += [
-        Dropped(number, "numbers that stand alone above the table") for number in alone
+        Dropped(index + 1, "numbers that stand alone above the table")
+        for index in itertools.chain(*alone)
     ]
-    return first
+    return run[0]
 
 
 def _number_or_missing(cell: str) -> bool:
@@ -210,77 +208,12 @@ def _collect(table: Table, start: int) -> None:
         table.numbers.append(number)
 
 
-def _read_header(table: Table, start: int) -> None:
-    """Labels and units from the lines above the table."""
-    lines = table.document.lines
-    above = [index for index in range(max(0, start - 50), start) if lines[index].strip()]
-    found = []
-    for index in reversed(above[-_ABOVE:]):
-        cells = _header_cells(lines[index][:100_000], table.delimiter, table.width)
-        if len(cells) > max(table.wanted) and not is_number(cells[table.wanted[0]]):
-            found.append((index + 1, cells))
-    for at, (number, cells) in enumerate(found):
-        if not is_units_row([cells[one] for one in table.wanted]):
-            continue
-        names = next((row for row in found[at + 1 :]), None)
-        title = names[1] if names else [""] * len(cells)
-        table.header, table.units = names[0] if names else number, number
-        table.labels = [
-            Label(f"{name} {unit}".strip(), name, _bare(unit))
-            for name, unit in zip([*title, *[""] * len(cells)], cells, strict=False)
-        ]
-        return
-    named = [
-        (number, labels)
-        for number, cells in found
-        for labels in [[read_label(cell) for cell in cells]]
-    ]
-    chosen = next((row for row in named if any(label.axis for label in row[1])), None)
-    if chosen or named:
-        table.header, table.labels = chosen or named[0]
-
-
-def _bare(unit: str) -> str:
-    plain = unit.strip(" \t\"'")
-    return plain[1:-1].strip() if plain[:1] in "([{" and plain[-1:] in ")]}" else plain
-
-
-def _header_cells(line: str, delimiter: str, width: int | None) -> list[str]:
-    """Cells of a header, which may be a remark or be parted in another way than the rows."""
-    text = line.strip().lstrip("#%!*;/'").strip() if line.strip()[:1] != ";" else line
-    usual = _merged(cut(text, delimiter, _MOST_CELLS), width)
-    if width is None or len(usual) == width:
-        return usual
-    ways = [_merged(cut(text, other, _MOST_CELLS), width) for other in DELIMITERS if other != " "]
-    ways += [re.split(r"\s{2,}|\t", text), re.split(r"(?<=[\])])\s+", text), text.split()]
-    for cells in ways:
-        if len(cells) == width:
-            return [cell.strip() for cell in cells]
-    return usual if delimiter != " " and len(usual) > 1 and read_label(usual[0]).axis else []
-
-
-def _merged(cells: list[str], width: int | None) -> list[str]:
-    """Cells of a header in which a unit behind a comma belongs to the label before it."""
-    while len(cells) > (width or 2) and not cells[-1]:
-        cells = cells[:-1]
-    if width is None or len(cells) <= width:
-        return cells
-    merged: list[str] = []
-    for cell in cells:
-        inside = known_unit(cell) or known_unit(cell.strip("()[]{}")) or cell[:1] in "(["
-        if inside and merged and merged[-1] and len(cells) > width:
-            merged[-1] = f"{merged[-1]}, {cell}" if known_unit(cell) else f"{merged[-1]} {cell}"
-        else:
-            merged.append(cell)
-    return merged
-
-
 def _refuse_two_commas(table: Table) -> None:
     """DataError where commas seem to stand both between columns and in numbers."""
     if table.delimiter != ",":
         return
-    sample = [cut(row, ",", _MOST_CELLS) for row in table.rows[:50]]
-    labels = len([label for label in table.labels if label.text])
+    sample = [cut(row, ",", MOST_CELLS) for row in table.rows[:50]]
+    labels = len([label for label in table.head.labels if label.text])
     for cells, number in zip(sample, table.numbers, strict=False):
         full = [cell for cell in cells if cell]
         whole = all(cell.lstrip("+-").isdigit() for cell in full)

@@ -89,6 +89,8 @@ def load(source: Source, name: str = "") -> Document:
         raise DataError("the file is empty", name)
     text, encoding = _decoded(data, name)
     text = text.removeprefix("\ufeff").rstrip("\x1a\x00")
+    if not text.strip():
+        raise DataError("the file is empty", name)
     if "\r" in text:
         text = re.sub("\r+\n|\r", "\n", text)
     if not text.isascii():
@@ -111,8 +113,8 @@ def _too_large(size: int) -> str:
 def _bytes(source: Source, name: str) -> tuple[bytes, str]:
     """The bytes and the name; a file that is too large is not read."""
     if isinstance(source, bytes | bytearray | memoryview):
-        if len(memoryview(source).cast("B")) > LARGEST:
-            raise DataError(_too_large(len(memoryview(source).cast("B"))), plain_name(name))
+        if (size := memoryview(source).nbytes) > LARGEST:
+            raise DataError(_too_large(size), plain_name(name))
         return bytes(source), plain_name(name)
     if not isinstance(source, str | os.PathLike):
         raise DataError(

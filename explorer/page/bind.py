@@ -21,6 +21,9 @@ from .state import State
 #: Longest label that takes its symbol along.
 SHORT = 18
 
+#: Significant digits in which a box shows what nobody typed, by kind of origin.
+DIGITS = {"default": 4, "measured": 5}
+
 #: The input that a given spectrum stands in for: its row says so and takes nothing.
 IDLE = "fast_linewidth"
 
@@ -165,12 +168,12 @@ class InputRow(VBox):
     def _follow(self, answer: Answer, anew: bool = False) -> None:
         name = self.entry.name
         value = float(np.asarray(answer.values[name]).reshape(()))
-        given = name in answer.question.design.point
         self._syncing = True
         try:
             idle = name == IDLE and stands_in(answer.values["spectrum"])
             if anew or name not in self._state.problems:
-                self.box.value = "spectrum" if idle else typed(name, value, 12 if given else 4)
+                digits = DIGITS.get(answer.question.design.origin(name).kind, 12)
+                self.box.value = "spectrum" if idle else typed(name, value, digits)
             self.box.disabled = self.slider.disabled = idle
             self._value = value
             stop = self._scale.stop(value)

@@ -108,9 +108,8 @@ def table(design: Design) -> str:
         return f'<p class="x-plain">{escape(NO_DEVICE)}</p>'
     rows = "".join(_rows(design, device) for device in design.built)
     return (
-        '<table class="x-built"><thead><tr><th scope=col>device</th><th scope=col>quantity</th>'
-        "<th scope=col>measured</th><th scope=col>predicted</th></tr></thead>"
-        f"<tbody>{rows}</tbody></table>"
+        '<table class="x-built"><thead><tr><td></td><th scope=col>measured</th>'
+        f"<th scope=col>predicted</th></tr></thead>{rows}</table>"
     )
 
 
@@ -119,17 +118,17 @@ def _rows(design: Design, device: Built) -> str:
         says = predicted(design, device)
     except InputError:
         says = {}
-    lines = []
+    lines = [f"<tr><th scope=rowgroup colspan=3>{escape(device.name)}</th></tr>"]
     for name, estimate in device.measured.items():
         value = says.get(name, math.nan)
         fits = estimate.low <= value <= estimate.high
-        shown = escape(number(value, name))
+        words = number(value, name) + ("" if fits else _beyond(estimate, value))
         lines.append(
-            f"<td>{escape(REGISTRY.quantities[name].label)}</td><td>{escape(interval(estimate, name))}</td>"
-            f'<td class="{"x-fits" if fits else "x-apart"}">{shown if fits else shown + _beyond(estimate, value)}</td>'
+            f"<tr><th scope=row>{escape(REGISTRY.quantities[name].label)}</th>"
+            f"<td>{escape(interval(estimate, name))}</td>"
+            f'<td class="{"x-fits" if fits else "x-apart"}">{escape(words)}</td></tr>'
         )
-    first = f'<th scope=row rowspan="{len(lines)}">{escape(device.name)}</th>'
-    return "".join(f"<tr>{first if i == 0 else ''}{line}</tr>" for i, line in enumerate(lines))
+    return f"<tbody>{''.join(lines)}</tbody>"
 
 
 def _beyond(estimate: Estimate, value: float) -> str:

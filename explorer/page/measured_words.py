@@ -69,17 +69,33 @@ def found(data: Any, fit: Any) -> Iterator[tuple[str, Estimate, str]]:
     elif isinstance(data, Decay):
         yield from _times(fit)
     elif isinstance(data, Coincidences):
-        yield "g²(0)", fit.g2_zero, "1"
-        if fit.emitter_g2_zero is not None and fit.signal_share < 1:
-            yield "g²(0) of the emitter alone", fit.emitter_g2_zero, "1"
-        if fit.decay_time is not None:
-            yield (
-                "Decay of the peaks" if fit.pumping == "pulsed" else "Width of the dip",
-                fit.decay_time,
-                "s",
-            )
-        if fit.period is not None:
-            yield "Period", fit.period, "s"
+        yield from _peaks(fit)
+
+
+def g2_of(fit: Any) -> Estimate:
+    """The fitted g²(0), as detected."""
+    return Estimate(fit.g2_zero, fit.low, fit.high)
+
+
+def _peaks(fit: Any) -> Iterator[tuple[str, Estimate, str]]:
+    yield "g²(0)", g2_of(fit), "1"
+    if fit.signal_share < 1:
+        yield "of the emitter alone", fit.emitter_g2_zero, "1"
+    if fit.window_g2 is not None:
+        bare = Estimate(fit.window_g2, fit.window_g2, fit.window_g2)
+        yield "windows, no model", bare, "1"
+    yield (
+        ("Decay of a peak" if fit.pumping == "pulsed" else "Width of the dip"),
+        fit.decay_time,
+        "s",
+    )
+    if fit.period is not None:
+        yield "Period", fit.period, "s"
+    if fit.background is not None:
+        yield "Flat, counts a bin", fit.background, "1"
+    if fit.bunching is not None:
+        yield "Blinking, height", fit.bunching, "1"
+        yield "Blinking, time", fit.bunching_time, "s"
 
 
 def _lines(fit: Any) -> Iterator[tuple[str, Estimate, str]]:

@@ -12,7 +12,7 @@ from ..domain import InputError
 from ..inputs import INPUTS
 from ..measured.data import AngularPattern, Coincidences, Decay, Spectrum
 from ..measured.use import with_device, with_measured
-from .measured_words import enhanced, enhancement_words, lifetime_of, pattern_words, result
+from .measured_words import enhanced, enhancement_words, g2_of, lifetime_of, pattern_words, result
 from .measuring import Measuring
 
 
@@ -128,11 +128,11 @@ def _of_decay(data: Decay, fit: Any) -> Iterator[Use]:
 
 def _of_coincidences(data: Coincidences, fit: Any) -> Iterator[Use]:
     def on_device(design: Design, name: str) -> Design:
-        return with_device(design, name, {"g2_zero": fit.g2_zero}, data.name, data.digest)
+        return with_device(design, name, {"g2_zero": g2_of(fit)}, data.name, data.digest)
 
     def as_biexciton(design: Design, _: str) -> Design:
         share = float(design.evaluation.value("quantum_yield"))
-        g2 = fit.emitter_g2_zero or fit.g2_zero
+        g2 = fit.emitter_g2_zero
         if g2.value * share > 1:
             raise InputError("g²(0) is too large to be a biexciton's: its yield would be over 1")
         ends = (min(max(end * share, 0.0), 1.0) for end in (g2.value, g2.low, g2.high))

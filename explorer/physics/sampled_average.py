@@ -14,17 +14,17 @@ numbers from one half plane. It is followed on even lattices of both; so is the 
 
 from collections.abc import Callable
 from functools import lru_cache
+from typing import NamedTuple
 
 import numpy as np
+from numpy.lib.stride_tricks import sliding_window_view
 from numpy.typing import ArrayLike, NDArray
 
 from .lattice import POINTS, interpolated, located
 from .sampled import SampledLine
 from .sampled_pieces import Floats
 from .sampled_shifts import (
-    BINS,
     LINEWIDTHS,
-    LOWEST,
     SHARED,
     STRENGTHS,
     column,
@@ -40,14 +40,29 @@ BLOCK, WEAKEST, STRONGEST = 32, -26.0, 102.0
 Place = tuple[float, float, float, float]  # detuning, deviation, edges of the filter [rad/s]
 
 
-@lru_cache(maxsize=32)
-def _kernel(block: int) -> Floats:
-    """1/(1+cO) for each overlap of the lattice and each strength of a block."""
-    total = np.add.outer(np.arange(BINS) + LOWEST, block * BLOCK + np.arange(BLOCK))
-    return np.asarray(1 / (1 + np.exp(total * STRENGTHS)))
+#: 1/(1+cO) against log(cO) on the lattice of overlaps times the lattice of strengths.
+_REACH = 1024
+_KERNEL = 1 / (1 + np.exp(np.arange(-_REACH, _REACH + 1) * STRENGTHS))
 
 
-_OVERLAPS = np.exp((np.arange(BINS) + LOWEST) * STRENGTHS)
+class _Sums(NamedTuple):
+    """Gaussian weights of all shifts, put on overlaps from the lattice point `lowest` on."""
+
+    lowest: int
+    weights: Floats  # (SHARED, overlaps)
+    passed: Floats  # the same times the light inside the filter; as the weights without one
+
+    def logarithms(self, blocks: range, filtered: bool) -> Floats:
+        """Logarithms of the average (SHARED, strengths) at the strengths of some blocks."""
+        count, strengths = self.weights.shape[1], len(blocks) * BLOCK
+        first = _REACH + self.lowest + blocks[0] * BLOCK
+        window = _KERNEL[first : first + count + strengths - 1]
+        kernel = np.ascontiguousarray(sliding_window_view(window, strengths))
+        overlap = np.exp((self.lowest + np.arange(count)) * STRENGTHS)
+        known = (self.weights * overlap) @ kernel
+        if filtered:
+            return np.asarray(np.log(np.maximum(self.passed @ kernel, 1e-300) / known))
+        return np.asarray(np.log(known / (self.weights @ kernel)))
 
 
 class Average:
@@ -58,18 +73,23 @@ class Average:
         self._offset, self._sigma, *edges = place
         self._window = (edges[0], edges[1])
         self._deviations = deviation_level(self._sigma)
-        self._sums: dict[int, tuple[Floats, Floats]] = {}
-        self._logarithms: dict[tuple[int, int], Floats] = {}
+        self._sums: dict[int, _Sums] = {}
+        self._blocks = range(0)
+        self._known: dict[int, Floats] = {}  # logarithms of the average at those strengths
 
     def at(self, kappa: Floats, strength: Floats) -> Floats:
         """The average for linewidths and strengths c that broadcast."""
-        distinct, row = np.unique(kappa, return_inverse=True)
+        shape = np.broadcast_shapes(kappa.shape, strength.shape)
+        if 0 in shape:
+            return np.zeros(shape)
+        if kappa.size < strength.size:
+            distinct, row = kappa.ravel(), np.arange(kappa.size)
+        else:
+            distinct, row = np.unique(kappa, return_inverse=True)
         place = np.clip(np.log(strength), WEAKEST, STRONGEST) / STRENGTHS
         place = np.where(np.isnan(place), 0.0, place)
-        if not place.size:
-            return np.zeros(np.broadcast_shapes(kappa.shape, place.shape))
-        first = int(np.floor(place.min()) - POINTS // 2) // BLOCK
-        last = int(np.floor(place.max()) + POINTS // 2) // BLOCK
+        first = (int(np.floor(place.min())) - POINTS // 2) // BLOCK
+        last = (int(np.floor(place.max())) + POINTS // 2) // BLOCK
         table = self._table(distinct, range(first, last + 1))
         found = interpolated(table, row.reshape(kappa.shape), place - first * BLOCK)
         return np.asarray(np.exp(found))
@@ -77,63 +97,55 @@ class Average:
     def _table(self, kappa: Floats, blocks: range) -> Floats:
         """Logarithms of the average for some linewidths (rows), at the strengths of some blocks."""
         first, weights = located(np.log(kappa) / LINEWIDTHS)
-        around = first[:, np.newaxis] + np.arange(POINTS)
-        levels, which = np.unique(around // SHARED, return_inverse=True)
-        self._fill([int(level) for level in levels], blocks)
-        known = np.concatenate(
-            [np.stack([self._logarithms[int(level), block] for level in levels]) for block in blocks],
-            axis=2,
+        levels = sorted({*(first // SHARED).tolist(), *((first + POINTS - 1) // SHARED).tolist()})
+        if POINTS > SHARED + 1:
+            levels = sorted({*levels, *((first + SHARED) // SHARED).tolist()})
+        known = np.concatenate([self._row(level, blocks) for level in levels])
+        start = (blocks[0] - self._blocks[0]) * BLOCK
+        known = known[:, start : start + len(blocks) * BLOCK]
+        numbers = np.add.outer(np.array(levels) * SHARED, np.arange(SHARED)).ravel()
+        begin = np.searchsorted(numbers, first)
+        matrix = np.zeros((kappa.size, numbers.size))
+        matrix[np.arange(kappa.size)[:, np.newaxis], np.add.outer(begin, np.arange(POINTS))] = (
+            weights.T
         )
-        rows = known.reshape(-1, known.shape[2])
-        index = which.reshape(around.shape) * SHARED + around % SHARED
-        total = weights[0][:, np.newaxis] * rows[index[:, 0]]
-        for point in range(1, POINTS):
-            total += weights[point][:, np.newaxis] * rows[index[:, point]]
-        return np.asarray(total)
+        return np.asarray(matrix @ known)
 
-    def _fill(self, levels: list[int], blocks: range) -> None:
-        """Work out what is not known yet."""
-        for block in blocks:
-            missing = [level for level in levels if (level, block) not in self._logarithms]
-            if not missing:
-                continue
-            for level in missing:
-                if level not in self._sums:
-                    self._sums[level] = self._summed(level)
-            weight, other = (
-                np.concatenate([self._sums[level][part] for level in missing]) for part in (0, 1)
-            )
-            kernel = _kernel(block)
-            overlap = (weight * _OVERLAPS) @ kernel
-            if self._filtered:
-                found = np.log(np.maximum(other @ kernel, 1e-300) / overlap)
-            else:
-                found = np.log(overlap / (weight @ kernel))
-            for level, values in zip(missing, found.reshape(-1, SHARED, BLOCK), strict=True):
-                self._logarithms[level, block] = values
+    def _row(self, level: int, blocks: range) -> Floats:
+        """Logarithms for a group of linewidths, at least at the strengths of some blocks."""
+        if not self._blocks or blocks[0] < self._blocks[0] or blocks[-1] > self._blocks[-1]:
+            ends = [*blocks, *self._blocks]
+            self._blocks, self._known = range(min(ends), max(ends) + 1), {}
+        if level not in self._known:
+            if level not in self._sums:
+                self._sums[level] = self._summed(level)
+            self._known[level] = self._sums[level].logarithms(self._blocks, self._filtered)
+        return self._known[level]
 
-    def _summed(self, level: int) -> tuple[Floats, Floats]:
-        """Gaussian weights of all shifts, and the light inside the filter, put on the overlaps."""
+    def _summed(self, level: int) -> _Sums:
         shared = column(self._line, level, self._deviations)
         ends = [
             shared.places.number(-self._offset + side * REACH * self._sigma) for side in (-1, 1)
         ]
         first, last = int(np.floor(ends[0])), int(np.ceil(ends[1]))
-        place, apart, *rest = shared.overlaps.between(first, last)
-        gauss = np.exp(-(((place + self._offset) / self._sigma) ** 2) / 2) * apart
-        begins = np.stack(rest[:SHARED]).astype(np.intp)
-        begins += BINS * np.arange(SHARED)[:, np.newaxis]
-        weights = np.stack(rest[SHARED:]).reshape(POINTS, SHARED, -1) * (gauss / gauss.sum())
-        index = begins + np.arange(POINTS)[:, np.newaxis, np.newaxis]
+        known = shared.overlaps.between(first, last)
+        gauss = np.exp(-(((known[0] + self._offset) / self._sigma) ** 2) / 2) * known[1]
+        begins = known[2 : 2 + SHARED].astype(np.intp)
+        lowest = int(begins.min())
+        count = int(begins.max()) + POINTS - lowest
+        begins += (np.arange(SHARED) * count - lowest)[:, np.newaxis]
+        index = np.add.outer(np.arange(POINTS), begins).ravel()
+        weights = known[2 + SHARED :].reshape(POINTS, SHARED, -1) * (gauss / gauss.sum())
 
         def put(values: Floats) -> Floats:
-            found = np.bincount(index.ravel(), values.ravel(), SHARED * BINS)
-            return np.asarray(found).reshape(SHARED, BINS)
+            found = np.bincount(index, values.ravel(), SHARED * count)
+            return np.asarray(found).reshape(SHARED, count)
 
+        sums = put(weights)
         if not self._filtered:
-            return put(weights), np.empty((SHARED, 0))
+            return _Sums(lowest, sums, sums)
         inside = passing(self._line, level, self._deviations, self._window)
-        return put(weights), put(weights * inside.between(first, last))
+        return _Sums(lowest, sums, put(weights * inside.between(first, last)))
 
 
 @lru_cache(maxsize=32)

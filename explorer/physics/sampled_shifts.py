@@ -21,8 +21,8 @@ from .wandering import REACH, SMOOTH
 LINEWIDTHS, SHARED = 0.1, 4
 #: Step of the lattices of overlaps and of strengths, in their logarithms.
 STRENGTHS = 0.2
-#: Lowest overlap of the lattice, exp(-76), and how many points there are up to 1 and beyond.
-LOWEST, BINS = -380, 388
+#: Lowest overlap of the lattice.
+LOWEST = 1e-33
 #: Fewest and most places over 18 deviations, and how many are worked out at a time.
 FEWEST, MOST, BLOCK = 96, 1024, 32
 
@@ -91,19 +91,20 @@ class Growing:
         known = self._values
         end = self._start + (0 if known is None else known.shape[1])
         if known is None or start > end or stop < self._start or end - self._start > 8 * MOST:
-            known = self._fresh(start, stop)
+            self._start, self._values = start, self._fresh(start, stop)
         else:
-            known = np.concatenate(
-                [self._fresh(start, self._start), known, self._fresh(end, stop)], axis=1
-            )
-            start_known = min(start, self._start)
-            self._start, self._values = start_known, known
-            return known[:, start - start_known : stop - start_known]
-        self._start, self._values = start, known
-        return known
+            parts = [known]
+            if start < self._start:
+                parts.insert(0, self._fresh(start, self._start))
+            if stop > end:
+                parts.append(self._fresh(end, stop))
+            if len(parts) > 1:
+                self._values = np.concatenate(parts, axis=1)
+            self._start = min(start, self._start)
+        return self._values[:, start - self._start : stop - self._start]
 
     def _fresh(self, start: int, stop: int) -> Floats:
-        return self._make(np.arange(start, max(start, stop), dtype=np.float64))
+        return self._make(np.arange(start, stop, dtype=np.float64))
 
 
 @dataclass(frozen=True)
@@ -128,9 +129,10 @@ def column(line: SampledLine, level: int, deviations: int) -> Column:
     def make(numbers: Floats) -> Floats:
         place, apart = places.at(numbers)
         overlap = line.rows(_rows(place, kappa, -np.inf, np.inf)).reshape(SHARED, -1)
-        overlap = np.maximum(overlap, np.exp((LOWEST + POINTS) * STRENGTHS))
-        first, weights = located(np.log(overlap) / STRENGTHS - LOWEST)
-        return np.concatenate([[place, apart], first, weights.reshape(POINTS * SHARED, -1)])
+        overlap = np.maximum(overlap, LOWEST)
+        first, weights = located(np.log(overlap).ravel() / STRENGTHS)
+        rows = (first.reshape(SHARED, -1), weights.reshape(POINTS * SHARED, -1))
+        return np.concatenate([[place, apart], *rows])
 
     return Column(places, kappa, Growing(make))
 

@@ -18,6 +18,7 @@ from .sampled_pieces import Floats
 LENGTH, NODES = 1.8, 28
 
 _POINTS = chebpts1(NODES)
+_ORDERS = np.arange(NODES)
 _TO_COEFFICIENTS = chebvander(_POINTS, NODES - 1).T * (2 / NODES)
 _TO_COEFFICIENTS[0] /= 2
 
@@ -45,14 +46,21 @@ def still_window(
         return line.window(centre, kappa, lower, upper)
     shape = np.broadcast_shapes(kappa.shape, *(value.shape for value in place))
     key = (float(place[0].item()), float(place[1].item()), float(place[2].item()))
-    at = np.log(kappa.ravel()) / LENGTH
+    return _along(line, key, kappa.tobytes()).reshape(shape)
+
+
+@lru_cache(maxsize=16)
+def _along(line: SampledLine, place: tuple[float, float, float], linewidths: bytes) -> Floats:
+    """The overlaps at one place; kept, because both transitions ask for the same ones."""
+    at = np.log(np.frombuffer(linewidths)) / LENGTH
     number = np.floor(at)
     result = np.empty(at.shape)
     for one in np.unique(number):
         inside = number == one
-        basis = chebvander(2 * (at[inside] - one) - 1, NODES - 1)
-        result[inside] = basis @ _panel(line, int(one), key)
-    return result.reshape(shape)
+        angle = np.arccos(np.clip(2 * (at[inside] - one) - 1, -1.0, 1.0))
+        result[inside] = np.cos(np.multiply.outer(angle, _ORDERS)) @ _panel(line, int(one), place)
+    result.setflags(write=False)
+    return result
 
 
 def still_overlap(line: SampledLine, centre: ArrayLike, kappa: ArrayLike) -> Floats:
