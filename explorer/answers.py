@@ -179,15 +179,17 @@ class Answers:
     def _bands(self, question: Question) -> Iterator[Map | None]:
         """The whole map in bands of rows of at most about BAND seconds; None between two."""
         x, y = question.x, question.y
-        rows = int(np.clip(BAND / max(self._pace * x.count, 1e-12), 2, y.count))
-        edges = [*range(0, y.count - 1, rows), y.count]
         bands: list[Map] = []
-        for start, stop in itertools.pairwise(edges):
+        start = 0
+        while start < y.count:
             if bands:
                 yield None
+            rows = int(np.clip(BAND / max(self._pace * x.count, 1e-12), 2, y.count))
+            stop = start + rows if start + rows < y.count - 1 else y.count
             low, high = (float(y.at(edge / y.count)) for edge in (start, stop))
             part = replace(y, low=low, high=high, count=stop - start)
             bands.append(self._timed_map(question, x, part if stop - start < y.count else y))
+            start = stop
         yield stacked(bands, y)
 
     def _timed_map(self, question: Question, x: Axis, y: Axis) -> Map:

@@ -82,7 +82,7 @@ def response(rng: np.random.Generator, total: float, deviation: float, pulse: fl
     return binned(Decay, times, edges, rng.poisson(1e-5 * total, 1000))
 
 
-def line_times(rng: np.random.Generator, number: int, line: tuple[float, float, float], slow: float) -> Array:
+def line_waves(rng: np.random.Generator, number: int, line: tuple[float, float, float], slow: float) -> Array:
     """Wavelengths of photons of one line: a random frequency about the centre."""
     centre, fast, wander = line[0], line[1], slow
     omega0 = 2 * np.pi * LIGHT / centre
@@ -113,7 +113,7 @@ def spectrum(
     number = rng.poisson(total * (1 - background))
     split = rng.multinomial(number, [line[2] for line in lines])
     waves = np.concatenate(
-        [line_times(rng, int(n), line, slow) for n, line in zip(split, lines, strict=True)]
+        [line_waves(rng, int(n), line, slow) for n, line in zip(split, lines, strict=True)]
     )
     counts = np.histogram(waves, edges)[0].astype(float)
     counts += rng.poisson(total * background / 400 + dark, 400) - dark
@@ -137,9 +137,8 @@ def pulsed(
     edges = edges_of(-250.1e-9, 0.5e-9, 1000)
     peaks = np.arange(-7, 8)
     weights = np.where(peaks == 0, g2, 1.0)
-    inside = 8 + 2 + g2  # about ten periods are seen; peaks beyond give the tails at the ends
+    # About nine far periods are seen, with the central one; peaks beyond give the tails at the ends.
     number = rng.poisson(total * (1 - background) * np.sum(weights) / (9 + g2))
-    _ = inside
     which = rng.choice(peaks, number, p=weights / np.sum(weights))
     times = which * period + rng.laplace(0.0, decay_time, number)
     times = times + rng.normal(0.0, jitter / 2.3548200450309493, number) + 0.2e-9
@@ -153,7 +152,7 @@ def continuous(
     g2: float,
     *,
     signal_share: float = 1.0,
-    decay_time: float = 3e-9,
+    decay_time: float = 6e-9,
     jitter: float = 1e-9,
 ) -> Coincidences:
     """Delays of a continuous source: g² of the emitter, and flat accidental counts.

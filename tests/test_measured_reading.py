@@ -130,7 +130,7 @@ def test_numbers_that_stand_alone_above_the_table_are_named() -> None:
         ("numbered rows", "column 1 only counts the rows"),
         ("reversed", "the axis runs backwards in the file: sorted"),
         ("unsorted", "the axis is not in order in the file: sorted"),
-        ("remarks between", "1 lines of remarks"),
+        ("remarks between", "1 line of remarks"),
         ("no header", "no unit in the file: taken as nm"),
     ],
 )
@@ -330,6 +330,9 @@ def test_any_lines_are_read_or_refused(lines: list[tuple[list[str], str]]) -> No
         (["1,234", "1987"], [Writing(",")]),  # thousands would be parted in every number
         (["1,234", "1,987"], [Writing(","), Writing(".", ",")]),
         (["1,234e5"], [Writing(",")]),
+        (["1.234", "987"], [Writing(",", ".")]),
+        (["1.234", "1.987"], [Writing(".")]),  # a point is a decimal one where it can be
+        (["1.234", "987", "0.5"], [Writing(".")]),
     ],
 )
 def test_the_ways_in_which_numbers_may_be_written(cells: list[str], wanted: list[Writing]) -> None:
@@ -354,6 +357,19 @@ def test_thousands_are_read_where_the_other_column_shows_the_decimal_sign() -> N
     assert read_spectrum(table(decimals, delimiter=";"), name="s").counts[1] == 1.101
     spaces = [(f"{600 + at},25", f"1 {100 + at}") for at in range(40)]
     assert read_spectrum(table(spaces, delimiter=";"), name="s").counts[1] == 1101
+
+
+def test_an_index_before_the_axis_is_not_taken_for_it() -> None:
+    rows = [(str(at), f"{at / 4}", "7") for at in range(60)]
+    data = read_decay(table(rows, above=["No,Time (ns),Counts"]), name="d")
+    assert data.width == 0.25e-9
+    assert "column 1 only counts the rows" in said(data)
+    assert "only counts the rows" in refusal(read_decay, table(rows), name="d").reason
+    # A label, a unit or a choice of columns says that it is the axis.
+    assert read_decay(table(rows, above=["Time,A,B"]), name="d").width == 1e-9
+    assert read_decay(table(rows, above=["t (ns),A,B"]), name="d").width == 1e-9
+    assert read_decay(table(rows), name="d", units=("ns", "")).width == 1e-9
+    assert read_decay(table(rows), name="d", columns=(0, 2)).width == 1e-9
 
 
 def test_powers_written_with_the_letter_of_another_language() -> None:

@@ -90,8 +90,8 @@ def _grid(pairs: Pairs, kept: Rows) -> tuple[Array, float, list[str]]:
     if missing:
         notes.append(f"{missing} of {missing + numbers.size} bins are missing, and left out")
     step = float(times(np.array([width]), pairs.unit)[0])
-    unit = pairs.unit if pairs.unit.step is None else "channels"
-    notes.append(f"bins of {width:.6g} {unit}, times taken as their middles")
+    size = f"{width:.6g} {pairs.unit}" if pairs.unit.step is None else f"{width:.6g} × {pairs.unit}"
+    notes.append(f"bins of {size}, times taken as their middles")
     return times(values, pairs.unit), step, notes
 
 

@@ -87,13 +87,29 @@ def split(lines: Sequence[str], delimiter: str, wanted: tuple[int, int]) -> list
     plain = delimiter != ", " and not any('"' in line for line in lines)
     if plain and max(wanted) < _WIDEST and max(map(len, lines), default=0) < 64 * _WIDEST:
         return _by_pandas(lines, delimiter, wanted)
+    if delimiter not in (" ", ", ") and (columns := _by_csv(lines, delimiter, wanted)):
+        return columns
     most = max(wanted) + 1
-    columns: list[list[str]] = [[], []]
+    columns = [[], []]
     for line in lines:
         cells = cut(line, delimiter, most)
         for column, at in zip(columns, wanted, strict=True):
             column.append(_short(cells[at]) if at < len(cells) else "")
     return columns
+
+
+def _by_csv(
+    lines: Sequence[str], delimiter: str, wanted: tuple[int, int]
+) -> list[list[str]] | None:
+    """The same in one go where every line closes its quotes; None where one does not."""
+    columns: list[list[str]] = [[], []]
+    try:
+        for cells in csv.reader(lines, delimiter=delimiter, skipinitialspace=True):
+            for column, at in zip(columns, wanted, strict=True):
+                column.append(_short(cells[at].strip()) if at < len(cells) else "")
+    except csv.Error:
+        return None
+    return columns if len(columns[0]) == len(lines) else None
 
 
 def _by_pandas(lines: Sequence[str], delimiter: str, wanted: tuple[int, int]) -> list[list[str]]:
@@ -110,8 +126,8 @@ def _by_pandas(lines: Sequence[str], delimiter: str, wanted: tuple[int, int]) ->
         io.StringIO("\n".join(lines) + "\n"),
         sep=delimiter,
         header=None,
-        names=range(last + 1),
-        usecols=range(last + 1),
+        names=list(range(last + 1)),
+        usecols=list(range(last + 1)),
         index_col=False,
         dtype=object,
         keep_default_na=False,

@@ -148,11 +148,19 @@ def take_background(curve: Curve, background: Curve | float) -> None:
             variance = background.gain * np.maximum(background.values, 0.0)
             curve.floor = curve.floor + _mixed(variance, left, lower**2, upper**2)
     same = np.array_equal(background.wavelengths, curve.wavelengths)
-    noise = "" if background.gain is not None else ", and its own noise is not known"
+    noise = "" if background.gain is not None else ", its own noise is not known"
     curve.notes.append(
         f"the background in {quoted(background.pairs.document.name)} was taken away"
-        f"{'' if same else ', interpolated'}{noise}"
+        f"{'' if same else ', interpolated'}{noise}{_remarks(background)}"
     )
+
+
+def _remarks(other: Curve) -> str:
+    """What a person must know of how a second file was read."""
+    assumed = [note for note in other.notes if note.startswith("no unit")]
+    left_out = f"{len(other.dropped)} of its rows left out or averaged" if other.dropped else ""
+    words = [*assumed, *filter(None, [left_out])]
+    return f" ({'; '.join(words)})" if words else ""
 
 
 def _mixed(values: Array, left: Rows, lower: Array, upper: Array) -> Array:
@@ -189,7 +197,7 @@ def divide_response(curve: Curve, response: Curve) -> None:
     scale(curve, level.max() / level)
     curve.notes.append(
         f"divided by the response in {quoted(response.pairs.document.name)}, relative to its largest "
-        "value here"
+        f"value here{_remarks(response)}"
     )
 
 

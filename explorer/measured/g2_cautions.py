@@ -73,7 +73,16 @@ def _pulsed(data: Coincidences, fit: Fit, decay: float, side: float | None) -> l
         )
     if not near.any():
         told.append("zero delay is not in the data")
+    told += _bunching(fit)
     return told
+
+
+def _bunching(fit: Fit) -> list[str]:
+    if {"bunching", "reach"} & (fit.at_limit | fit.unsure) or (
+        "bunching" in fit.estimates and fit.estimates["bunching"].low <= 0
+    ):
+        return ["the bunching is not determined: fit without it, or take data to longer delays"]
+    return []
 
 
 def _continuous(data: Coincidences, fit: Fit, decay: float, jitter: float) -> list[str]:
@@ -84,7 +93,7 @@ def _continuous(data: Coincidences, fit: Fit, decay: float, jitter: float) -> li
         told.append(f"only {central:g} coincidences lie in the dip")
     if 2 * decay < 3 * data.width:
         told.append("the dip is narrower than three bins: its depth hangs on the model")
-    if jitter > decay:
+    if jitter > 0.6 * decay:  # about where its FWHM is that of the dip
         told.append(
             "the jitter is wider than the dip: its depth hangs on how well the jitter is known"
         )

@@ -70,7 +70,7 @@ def _bare(unit: str) -> str:
 
 def header_cells(line: str, delimiter: str, width: int | None) -> list[str]:
     """Cells of a header, which may be a remark or be parted in another way than the rows."""
-    text = line.strip().lstrip("#%!*;/'").strip() if line.strip()[:1] != ";" else line
+    text = line.lstrip(" #%!*/'" + ("" if delimiter == ";" else ";")).rstrip()
     usual = _merged(cut(text, delimiter, MOST_CELLS), width)
     if width is None or (len(usual) == width and delimiter != " "):
         return usual
@@ -90,8 +90,8 @@ def _merged(cells: list[str], width: int | None) -> list[str]:
     if width is None or len(cells) <= width:
         return cells
     merged: list[str] = []
-    for cell in cells:
-        if _unit_alone(cell) and merged and merged[-1] and len(cells) > width:
+    for at, cell in enumerate(cells):
+        if _unit_alone(cell) and merged and merged[-1] and len(merged) + len(cells) - at > width:
             merged[-1] = f"{merged[-1]}, {cell}" if known_unit(cell) else f"{merged[-1]} {cell}"
         else:
             merged.append(cell)

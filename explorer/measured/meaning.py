@@ -31,7 +31,7 @@ def _fits(label: Label, kind: str) -> bool:
 
 def pass_index(table: Table, kind: str, units: tuple[str, str] | None) -> None:
     """Step over a column that only counts the rows, where the header says which is the axis."""
-    if table.width < 3 or units is not None:
+    if table.width < 3:
         return
     label = table.label(0)
     if _fits(label, kind) or (label.axis and not _numbering(label)):
@@ -44,6 +44,8 @@ def pass_index(table: Table, kind: str, units: tuple[str, str] | None) -> None:
         return
     if _fits(table.label(1), kind):
         table.wanted, table.counted = (1, 2), True
+        return
+    if units is not None and units[0]:
         return
     raise table.document.error(
         "the first column only counts the rows: say which columns are wanted, such as "

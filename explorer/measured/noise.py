@@ -13,6 +13,9 @@ Array = NDArray[np.float64]
 #: Expected counts are not taken below this in the likelihood, so that it stays finite.
 LEAST = 1e-9
 
+#: Events that a group holds about at least where goodness is judged.
+FEW = 4.0
+
 #: Above these expected counts the mean and the variance of a deviance follow from their series.
 MANY = 60.0
 
@@ -95,6 +98,16 @@ class Noise:
             return np.ones(self.values.shape)
         return np.asarray(self.events(expected) * self._steps**2)
 
+    def grouped(self, expected: Array) -> tuple[Array, Array]:
+        """Numbers of events and their expectations, neighbours joined until a few are expected."""
+        mean = self.events(expected)
+        if float(np.min(mean)) >= FEW:
+            return self._events, mean
+        group = np.floor(np.cumsum(mean) / FEW)
+        starts = np.flatnonzero(np.diff(group, prepend=-1.0) > 0)
+        number, mean = np.add.reduceat(self._events, starts), np.add.reduceat(mean, starts)
+        return np.asarray(number), np.asarray(mean)
+
     def residuals(self, expected: Array, scale: float = 1.0) -> Array:
         """Signed roots of the deviances; over `scale`, the size of even noise."""
         sign = np.sign(self.values - expected)
@@ -119,27 +132,37 @@ class Goodness:
 def goodness(noise: Noise, expected: Array, fitted: int) -> Goodness:
     """How good a fit of `fitted` parameters is.
 
-    Counts: the deviance has the mean and the variance that Poisson numbers of these expectations
+    Counts: neighbours are joined until some are expected in each; their deviance has the mean and the variance that Poisson numbers of these expectations
     give it, less one for each parameter, and is compared with the scaled χ² of that mean and
     variance (Satterthwaite, Biometrics Bull. 2, 110 (1946)). Noise of unknown size: it is taken from the
     residuals, so that only neighbouring residuals that are alike can speak against the fit.
     """
     from scipy import special
 
-    degrees = float(noise.values.size - fitted)
-    unknown = noise.even or noise.scaled
-    pearson = (noise.values - expected) / np.sqrt(noise.variance(expected))
-    if unknown:
-        pearson = pearson / np.sqrt(np.sum(pearson**2) / degrees)
-    alike = float(np.sum(pearson[1:] * pearson[:-1])) / np.sqrt(pearson.size - 1)
-    run = float(special.ndtr(-alike))
-    if unknown:
+    if noise.even or noise.scaled:
+        degrees = float(noise.values.size - fitted)
+        pearson = (noise.values - expected) / np.sqrt(noise.variance(expected))
+        run = _run_chance(pearson / np.sqrt(np.sum(pearson**2) / degrees))
         return Goodness(degrees, degrees, run, run)
-    mean, variance = _deviance_moments(noise.events(expected))
-    middle = max(float(np.sum(mean)) - fitted, 0.05 * float(np.sum(mean)))
-    unit = float(np.sum(variance)) * middle / float(np.sum(mean)) / (2 * middle)
-    chi_square, degrees = noise.deviance(expected) / unit, middle / unit
+    number, mean = noise.grouped(expected)
+    run = _run_chance((number - mean) / np.sqrt(mean))
+    each, spread = _deviance_moments(mean)
+    full = float(np.sum(each))
+    middle = full * (1 - fitted / number.size)
+    if middle <= 0:
+        return Goodness(0.0, 0.0, 1.0, run)
+    unit = float(np.sum(spread)) / full / 2
+    grouped = Noise.poisson(number)
+    chi_square, degrees = grouped.deviance(mean) / unit, middle / unit
     return Goodness(chi_square, degrees, float(special.chdtrc(degrees, chi_square)), run)
+
+
+def _run_chance(pearson: Array) -> float:
+    """Chance that neighbours of independent numbers of unit variance are as alike."""
+    from scipy import special
+
+    alike = float(np.sum(pearson[1:] * pearson[:-1])) / np.sqrt(max(pearson.size - 1, 1))
+    return float(special.ndtr(-alike))
 
 
 def _deviance_moments(expected: Array) -> tuple[Array, Array]:

@@ -68,8 +68,7 @@ def writings(columns: Sequence[Sequence[str]]) -> list[Writing]:
     """The ways in which the numbers of a file may be written; more than one only where all fit."""
     text = "\n".join("\n".join(column) for column in columns)
     if "," not in text:
-        twice = re.search(r"\.\d{3}\.", text) and not _some(_POINT, _COMMA, text)
-        return [_COMMA if twice and _some(_COMMA, _POINT, text) else Writing(".")]
+        return [_COMMA if _points_part_thousands(columns, text) else Writing(".")]
     both = [one for one in (_COMMA, _POINT) if _some(one, _other(one), text)]
     if len(both) == 2:
         both = [max(both, key=lambda one: len(_only(one, _other(one)).findall(text)))]
@@ -82,6 +81,18 @@ def writings(columns: Sequence[Sequence[str]]) -> list[Writing]:
             ]
         both = both or [_COMMA, _POINT]
     return [one if one.thousands in text else Writing(one.decimal) for one in both]
+
+
+def _points_part_thousands(columns: Sequence[Sequence[str]], text: str) -> bool:
+    """Whether, in a file without commas, points can only stand between thousands."""
+    if "." not in text or _some(_POINT, _COMMA, text):
+        return False
+    if _some(_COMMA, _POINT, text):
+        return True
+    point, comma = (
+        all(_even(one, column, decimals=True) for column in columns) for one in (_POINT, _COMMA)
+    )
+    return comma and not point
 
 
 def _other(one: Writing) -> Writing:

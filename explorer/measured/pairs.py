@@ -116,7 +116,8 @@ def _written(table: Table, way: Writing, doubtful: bool) -> list[str]:
     if doubtful:
         notes.append(f"three digits behind every comma or point: {way} fits the whole file")
     if table.comments:
-        notes.append(f"{table.comments} lines of remarks among the rows were passed over")
+        lines = "line" if table.comments == 1 else "lines"
+        notes.append(f"{table.comments} {lines} of remarks among the rows passed over")
     return notes
 
 
@@ -129,13 +130,16 @@ def _pairs(
     with np.errstate(invalid="ignore"):
         good = (np.abs(first) <= _LARGEST) & (np.abs(second) <= _LARGEST)
     bad = np.flatnonzero(~good)
-    reasons = [_why(columns[0][row], columns[1][row]) for row in bad.tolist()]
-    dropped = [Dropped(int(lines[row]), why) for row, why in zip(bad, reasons, strict=True)]
+
+    def why(row: int) -> str:
+        return _why(columns[0][row], columns[1][row])
+
     if bad.size > _MOST_DROPPED * lines.size:
         raise table.document.error(
-            f"{bad.size} of {lines.size} rows hold no two numbers; here {reasons[0]}",
+            f"{bad.size} of {lines.size} rows hold no two numbers; here {why(bad[0])}",
             int(lines[bad[0]]),
         )
+    dropped = [Dropped(int(lines[row]), why(row)) for row in bad.tolist()]
     _refuse_second(table, columns, first, good)
     if (left := int(good.sum())) < least:
         where = dropped[0].line if dropped else table.numbers[0]

@@ -41,7 +41,9 @@ class Problem:
     size: float = 1.0
 
     def objective(self, place: Array) -> float:
-        """The deviance, over the squared size of even noise."""
+        """The deviance, over the squared size of even noise; ∞ outside the limits."""
+        if np.any(place < self.low - TOUCH) or np.any(place > self.high + TOUCH):
+            return math.inf
         try:
             value = self.noise.deviance(self.model(place)) / self.size
         except (OverflowError, ZeroDivisionError):  # so far out that the model has no number

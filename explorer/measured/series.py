@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any, Final
+from typing import Final
 
 import numpy as np
 from numpy.typing import NDArray
@@ -56,7 +56,7 @@ def averaged(pairs: Pairs, axis: Array, values: Array, *, rising: bool = True) -
     if starts.size == places.size:
         return Series(places, rows, lines, repeats, notes, [])
     mean = np.add.reduceat(rows, starts) / repeats
-    notes.append(f"{places.size - starts.size} rows repeat a place on the axis: averaged")
+    notes.append(f"rows that repeat a place on the axis: {places.size - starts.size}, averaged")
     return Series(
         places[starts], mean, lines[starts], repeats, notes, repeated(pairs, order, new, "averaged")
     )
@@ -65,17 +65,15 @@ def averaged(pairs: Pairs, axis: Array, values: Array, *, rising: bool = True) -
 def repeated(pairs: Pairs, order: Rows, new: NDArray[np.bool_], what: str) -> list[Dropped]:
     """Rows that repeat the place of an earlier one. order: of the rows; new: (n,), in that order."""
     first = np.maximum.accumulate(np.where(new, np.arange(new.size), 0))
-    found: list[Dropped] = []
-    again: Any = np.flatnonzero(~new)
-    for index in again.tolist():
-        row, earlier = order[index], order[first[index]]
-        found.append(
-            Dropped(
-                int(pairs.lines[row]),
-                f"{pairs.first[row]:.10g} {pairs.unit} stands in line {pairs.lines[earlier]} "
-                f"already: {what}",
-            )
+    again = np.flatnonzero(~new)
+    rows, earlier = order[again], order[first[again]]
+    places, lines = pairs.first[rows].tolist(), pairs.lines
+    found = [
+        Dropped(line, f"{place:.10g} {pairs.unit} stands in line {before} already: {what}")
+        for place, line, before in zip(
+            places, lines[rows].tolist(), lines[earlier].tolist(), strict=True
         )
+    ]
     return sorted(found, key=lambda one: one.line)
 
 

@@ -11,7 +11,7 @@ import numpy as np
 from ..domain import InputError, finite_number, quoted
 from ..whole import Lines
 from .data import DataError, Estimate, Spectrum
-from .engine import Fit, checked_level, finish, fit_steps
+from .engine import Fit, Parameter, checked_level, finish, fit_steps
 from .fitted import Fitted, common, mapped
 from .noise import Noise
 from .spectrum_cautions import spectrum_cautions
@@ -20,8 +20,8 @@ from .spectrum_model import split_width, total_width
 
 SHAPES = ("voigt", "lorentzian", "gaussian")
 
-#: A line stands out where it is this many standard deviations above the rest.
-CLEAR = 5.0
+#: A line must lower the deviance by this much, about five standard deviations of its height.
+CLEAR = 30.0
 
 #: A zero-phonon line holds at least this share of the light.
 LEAST_SHARE = 0.02
@@ -118,10 +118,11 @@ def fit_spectrum_steps(
 def _fitted(layout: Layout, sidebands: int, level: float) -> Generator[None, None, SpectrumFit]:
     data = layout.data
     noise = Noise(data.counts, data.gain, data.floor)
-    guess, score = first_guess(layout, noise)
-    if score < CLEAR:
-        raise DataError("no line stands above the noise", data.name)
+    guess = first_guess(layout, noise)
     fit = yield from fit_steps(layout.model, noise, layout.parameters(guess), level=level)
+    flat = yield from _flat(layout, noise)
+    if (flat - fit.deviance) / fit.size**2 < CLEAR or fit["area"] <= 0:
+        raise DataError("no line stands above the noise", data.name)
     for _ in range(sidebands):
         guess = with_line(layout, noise, layout.read(fit.values), fit.expected)
         layout = replace(layout, count=layout.count + 1)
@@ -135,6 +136,15 @@ def _fitted(layout: Layout, sidebands: int, level: float) -> Generator[None, Non
     if not sure:
         object.__setattr__(fit, "unsure", fit.unsure | {"total"})
     return _result(layout, noise, fit, total, level)
+
+
+def _flat(layout: Layout, noise: Noise) -> Generator[None, None, float]:
+    """Deviance of a flat background alone."""
+    counts = layout.data.counts
+    middle = float(np.mean(counts))
+    flat = Parameter("level", middle, max(abs(middle), float(np.std(counts))) / 10)
+    fit = yield from fit_steps(lambda p: np.full(counts.shape, p[0]), noise, [flat])
+    return fit.deviance
 
 
 def _ordered(guess: Guess, layout: Layout) -> Guess:

@@ -48,7 +48,7 @@ class Layout:
         names += [f"offset{k}" for k in others]
         names += ["total"] if self.whole else ["fast0"] * (self.shape != "gaussian")
         names += [f"fast{k}" for k in others]
-        if self.shape == "voigt":
+        if self.shape != "lorentzian":
             names.append("sharpness" if self.whole else "slow")
         return [*names, "background"]
 
@@ -119,17 +119,16 @@ def _range(data: Spectrum, origin: float) -> tuple[float, float]:
     return low - 0.1 * (high - low) - origin, high + 0.1 * (high - low) - origin
 
 
-def first_guess(layout: Layout, noise: Noise) -> tuple[Guess, float]:
-    """One line and a background to begin with, and its signal over noise."""
+def first_guess(layout: Layout, noise: Noise) -> Guess:
+    """One line and a background to begin with."""
     data = layout.data
     blocks = np.array_split(data.counts, max(min(20, data.counts.size // 4), 1))
     background = float(np.min([np.mean(block) for block in blocks]))
     variances = _variances(noise, np.full(data.counts.shape, max(background, 0.0)))
     net = data.counts - background
-    centre, width, area, score = strongest_box(data.wavelengths, net, variances, spacing(data))
-    return Guess(
-        (Line(area, centre, _part(layout, width)),), _slow(layout, width), background
-    ), score
+    centre, width, area, _ = strongest_box(data.wavelengths, net, variances, spacing(data))
+    line = Line(area, centre, _part(layout, width))
+    return Guess((line,), _slow(layout, width), background)
 
 
 def with_line(layout: Layout, noise: Noise, guess: Guess, expected: Array) -> Guess:

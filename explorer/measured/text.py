@@ -19,7 +19,7 @@ Source = str | os.PathLike[str] | bytes | bytearray | memoryview
 LARGEST: Final = 20_000_000
 
 #: Most lines of a file.
-MOST_LINES: Final = 1_000_000
+MOST_LINES: Final = 500_000
 
 #: First bytes of files that are no text, and what they are in words.
 _KINDS: Final[tuple[tuple[bytes, str], ...]] = (

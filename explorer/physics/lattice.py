@@ -12,8 +12,9 @@ from numpy.typing import NDArray
 Floats = NDArray[np.float64]
 
 POINTS = 8
-#: Places that are followed at a time: their weights fit a processor's cache.
-AT_ONCE = 4096
+#: Places that are followed at a time: their weights fit a processor's cache, and no product of
+#: matrices is so large that it wakes the library's threads, which costs more than the product.
+AT_ONCE = 2048
 #: The first of the points around a place, counted from the last point before it.
 FIRST = 1 - POINTS // 2
 
@@ -34,11 +35,15 @@ _POWERS = _powers()
 
 def weights_between(fraction: Floats) -> Floats:
     """Weights (8, n) of the points around n places, each a fraction 0..1 of a step behind one."""
-    powers = np.empty((POINTS, fraction.size))
-    powers[0] = 1.0
-    for index in range(1, POINTS):
-        np.multiply(powers[index - 1], fraction, out=powers[index])
-    return np.asarray(_POWERS @ powers)
+    weights = np.empty((POINTS, fraction.size))
+    for start in range(0, fraction.size, AT_ONCE):
+        some = fraction[start : start + AT_ONCE]
+        powers = np.empty((POINTS, some.size))
+        powers[0] = 1.0
+        for index in range(1, POINTS):
+            np.multiply(powers[index - 1], some, out=powers[index])
+        np.matmul(_POWERS, powers, out=weights[:, start : start + AT_ONCE])
+    return weights
 
 
 def located(place: Floats) -> tuple[NDArray[np.intp], Floats]:

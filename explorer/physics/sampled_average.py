@@ -22,7 +22,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from .lattice import POINTS, interpolated, located
 from .sampled import SampledLine
-from .sampled_pieces import Floats
+from .sampled_pieces import Floats, parts
 from .sampled_shifts import (
     LINEWIDTHS,
     SHARED,
@@ -35,7 +35,11 @@ from .sampled_still import still_overlap, still_window
 from .wandering import REACH
 
 #: Strengths worked out at a time; beyond these logarithms of c the averages do not change with it.
-BLOCK, WEAKEST, STRONGEST = 32, -26.0, 102.0
+BLOCK, WEAKEST, STRONGEST = 64, -26.0, 102.0
+#: Products of matrices up to this size stay on one thread: waking others costs more than they do.
+UNTHREADED = 2**17
+#: Least light inside a filter, of all light: its logarithm is followed.
+LEAST = 1e-300
 
 Place = tuple[float, float, float, float]  # detuning, deviation, edges of the filter [rad/s]
 
@@ -54,15 +58,19 @@ class _Sums(NamedTuple):
 
     def logarithms(self, blocks: range, filtered: bool) -> Floats:
         """Logarithms of the average (SHARED, strengths) at the strengths of some blocks."""
-        count, strengths = self.weights.shape[1], len(blocks) * BLOCK
-        first = _REACH + self.lowest + blocks[0] * BLOCK
-        window = _KERNEL[first : first + count + strengths - 1]
-        kernel = np.ascontiguousarray(sliding_window_view(window, strengths))
-        overlap = np.exp((self.lowest + np.arange(count)) * STRENGTHS)
-        known = (self.weights * overlap) @ kernel
-        if filtered:
-            return np.asarray(np.log(np.maximum(self.passed @ kernel, 1e-300) / known))
-        return np.asarray(np.log(known / (self.weights @ kernel)))
+        lattice = self.lowest + np.arange(self.weights.shape[1])
+        weights = self.weights * np.exp(lattice * STRENGTHS)
+        other = self.passed if filtered else self.weights
+        found = np.empty((SHARED, len(blocks) * BLOCK))
+        length = max(BLOCK, UNTHREADED // self.weights.size)
+        for part in parts(found.shape[1], length):
+            columns = found[:, part]
+            first = _REACH + self.lowest + blocks[0] * BLOCK + part.start
+            window = _KERNEL[first : first + lattice.size + columns.shape[1] - 1]
+            kernel = np.ascontiguousarray(sliding_window_view(window, columns.shape[1]))
+            known, compared = weights @ kernel, other @ kernel
+            columns[:] = np.maximum(compared, LEAST) / known if filtered else known / compared
+        return np.log(found)
 
 
 class Average:
@@ -97,19 +105,17 @@ class Average:
     def _table(self, kappa: Floats, blocks: range) -> Floats:
         """Logarithms of the average for some linewidths (rows), at the strengths of some blocks."""
         first, weights = located(np.log(kappa) / LINEWIDTHS)
-        levels = sorted({*(first // SHARED).tolist(), *((first + POINTS - 1) // SHARED).tolist()})
-        if POINTS > SHARED + 1:
-            levels = sorted({*levels, *((first + SHARED) // SHARED).tolist()})
+        ends = {*(first // SHARED).tolist(), *((first + POINTS - 1) // SHARED).tolist()}
+        levels = sorted({*ends, *((first + SHARED) // SHARED).tolist()})
         known = np.concatenate([self._row(level, blocks) for level in levels])
         start = (blocks[0] - self._blocks[0]) * BLOCK
         known = known[:, start : start + len(blocks) * BLOCK]
         numbers = np.add.outer(np.array(levels) * SHARED, np.arange(SHARED)).ravel()
         begin = np.searchsorted(numbers, first)
-        matrix = np.zeros((kappa.size, numbers.size))
-        matrix[np.arange(kappa.size)[:, np.newaxis], np.add.outer(begin, np.arange(POINTS))] = (
-            weights.T
-        )
-        return np.asarray(matrix @ known)
+        total = weights[0][:, np.newaxis] * known[begin]
+        for point in range(1, POINTS):
+            total += weights[point][:, np.newaxis] * known[begin + point]
+        return np.asarray(total)
 
     def _row(self, level: int, blocks: range) -> Floats:
         """Logarithms for a group of linewidths, at least at the strengths of some blocks."""
@@ -129,17 +135,22 @@ class Average:
         ]
         first, last = int(np.floor(ends[0])), int(np.ceil(ends[1]))
         known = shared.overlaps.between(first, last)
-        gauss = np.exp(-(((known[0] + self._offset) / self._sigma) ** 2) / 2) * known[1]
-        begins = known[2 : 2 + SHARED].astype(np.intp)
+        place, apart = known[:2]
+        gauss = np.exp(-(((place + self._offset) / self._sigma) ** 2) / 2) * apart
+        begins = known[2 : 2 + SHARED]
         lowest = int(begins.min())
         count = int(begins.max()) + POINTS - lowest
-        begins += (np.arange(SHARED) * count - lowest)[:, np.newaxis]
-        index = np.add.outer(np.arange(POINTS), begins).ravel()
+        index = begins.astype(np.intp)
+        index += (np.arange(SHARED) * count - lowest)[:, np.newaxis]
         weights = known[2 + SHARED :].reshape(POINTS, SHARED, -1) * (gauss / gauss.sum())
 
         def put(values: Floats) -> Floats:
-            found = np.bincount(index, values.ravel(), SHARED * count)
-            return np.asarray(found).reshape(SHARED, count)
+            # The points of one place follow each other: what is put first lies before the rest.
+            total = np.zeros(SHARED * count)
+            for point in range(POINTS):
+                found = np.bincount(index.ravel(), values[point].ravel(), total.size - point)
+                total[point:] += found[: total.size - point]
+            return total.reshape(SHARED, count)
 
         sums = put(weights)
         if not self._filtered:

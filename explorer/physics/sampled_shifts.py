@@ -6,6 +6,7 @@ deviation moves them: a Gaussian over them only changes its weights. So what is 
 all detunings, all deviations of one octave's half, both transitions, and every strength of coupling.
 """
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import lru_cache
@@ -61,7 +62,7 @@ class Places:
     def number(self, place: float) -> float:
         """Where on the lattice a place is."""
         y = (place - self.peak) / self.width
-        return float((np.arcsinh(y) + self.ratio * y) / self.spacing)
+        return (math.asinh(y) + self.ratio * y) / self.spacing
 
     def at(self, numbers: Floats) -> tuple[Floats, Floats]:
         """Places of lattice points, and how far apart they stand there [rad/s].

@@ -23,13 +23,41 @@ _TO_COEFFICIENTS = chebvander(_POINTS, NODES - 1).T * (2 / NODES)
 _TO_COEFFICIENTS[0] /= 2
 
 
-@lru_cache(maxsize=256)
-def _panel(line: SampledLine, number: int, place: tuple[float, float, float]) -> Floats:
-    """Chebyshev coefficients over one panel of log κ."""
-    centre, lower, upper = place
-    kappa = np.exp((number + (1 + _POINTS) / 2) * LENGTH)
-    rows = np.stack(np.broadcast_arrays(centre, kappa, lower, upper), axis=-1)
-    return np.asarray(_TO_COEFFICIENTS @ line.rows(rows))
+class _Panels:
+    """Chebyshev coefficients over panels of log κ at one centre and one window, kept."""
+
+    def __init__(self, line: SampledLine, place: tuple[float, float, float]) -> None:
+        self._line, self._place = line, place
+        self._known: dict[int, Floats] = {}
+
+    def at(self, kappa: Floats) -> Floats:
+        """The overlaps with resonances of some linewidths (n)."""
+        at = np.log(kappa) / LENGTH
+        number = np.floor(at).astype(int)
+        panels = sorted(set(number.tolist()))
+        self._work_out([panel for panel in panels if panel not in self._known])
+        result = np.empty(at.shape)
+        for panel in panels:
+            inside = number == panel
+            angle = np.arccos(np.clip(2 * (at[inside] - panel) - 1, -1.0, 1.0))
+            result[inside] = np.cos(np.multiply.outer(angle, _ORDERS)) @ self._known[panel]
+        return result
+
+    def _work_out(self, panels: list[int]) -> None:
+        if not panels:
+            return
+        kappa = np.exp(np.add.outer(panels, (1 + _POINTS) / 2) * LENGTH).ravel()
+        centre, lower, upper = self._place
+        rows = np.stack(np.broadcast_arrays(centre, kappa, lower, upper), axis=-1)
+        values = self._line.rows(rows).reshape(-1, NODES)
+        self._known |= {
+            panel: _TO_COEFFICIENTS @ row for panel, row in zip(panels, values, strict=True)
+        }
+
+
+@lru_cache(maxsize=64)
+def _panels(line: SampledLine, place: tuple[float, float, float]) -> _Panels:
+    return _Panels(line, place)
 
 
 def still_window(
@@ -52,13 +80,7 @@ def still_window(
 @lru_cache(maxsize=16)
 def _along(line: SampledLine, place: tuple[float, float, float], linewidths: bytes) -> Floats:
     """The overlaps at one place; kept, because both transitions ask for the same ones."""
-    at = np.log(np.frombuffer(linewidths)) / LENGTH
-    number = np.floor(at)
-    result = np.empty(at.shape)
-    for one in np.unique(number):
-        inside = number == one
-        angle = np.arccos(np.clip(2 * (at[inside] - one) - 1, -1.0, 1.0))
-        result[inside] = np.cos(np.multiply.outer(angle, _ORDERS)) @ _panel(line, int(one), place)
+    result = _panels(line, place).at(np.frombuffer(linewidths))
     result.setflags(write=False)
     return result
 

@@ -1,7 +1,8 @@
 """Prints what a slider step costs with a measured spectrum of 4000 samples, beside a single line.
 
 In turn, so that both see the same load: until the readouts are there (first), until a map is
-(drawn, in fewer cells where it is slow), and until the map is whole; medians, and their ratios.
+(drawn, in fewer cells where it is slow), and until the map is whole; medians, and their ratios. Times
+are those of the thread, so what others on the machine take does not count.
 """
 
 from __future__ import annotations
@@ -53,10 +54,10 @@ def question(spectrum: Samples | None, slow: float, quality: float) -> Question:
 
 
 def stages(answers: Answers, asked: Question) -> list[float]:
-    """Times of the stages of one answer [ms]."""
-    start, found = time.perf_counter(), [0.0] * len(STAGES)
+    """Times of the stages of one answer [ms], not counting what others on the machine take."""
+    start, found = time.thread_time(), [0.0] * len(STAGES)
     for answer in answers.steps(asked):
-        now = 1000 * (time.perf_counter() - start)
+        now = 1000 * (time.thread_time() - start)
         for index, there in enumerate((True, answer.map is not None, answer.whole)):
             if there and not found[index]:
                 found[index] = now

@@ -140,7 +140,9 @@ class Hands:
         (hand.release() if release else hand).perform()
 
     def give_file(self, path: Path) -> None:
-        self.browser.driver.find_element(By.CSS_SELECTOR, ".x-pick").send_keys(str(path))
+        self.browser.driver.find_element(By.CSS_SELECTOR, ".panel-files .x-pick").send_keys(
+            str(path)
+        )
 
     def save(self) -> Path:
         for old in self.browser.downloads.glob("*"):

@@ -17,7 +17,7 @@ from ..built import table
 from ..kinds import KINDS
 from ..measured_plots import drawing
 from ..measured_words import understood
-from ..measuring import Measuring, Option
+from ..measuring import Kind, Measuring, Option
 from ..plot import Plot
 from ..state import State
 from ..upload import Upload
@@ -44,11 +44,12 @@ class MeasuredPanel(VBox):
         self._quiet = False
         self.held = {name: Measuring(kind) for name, kind in KINDS.items()}
         self._shown = "spectrum"
-        self._open = False
+        self._open, self._built = False, ""
         self.switch = {
             name: ToggleButton(description=kind.label, tooltip=kind.hint)
             for name, kind in KINDS.items()
         }
+        self._uploads = {name: self._main_upload(kind) for name, kind in KINDS.items()}
         kinds = HBox(list(self.switch.values()))
         kinds.add_class("x-switch")
         self.files, self.otherwise, self.options, self.uses = VBox(), VBox(), VBox(), VBox()
@@ -110,7 +111,8 @@ class MeasuredPanel(VBox):
         for other, button in self.switch.items():
             button.value = other == name
         self._quiet = False
-        self._build()
+        if self._built != name:
+            self._build()
         self._draw()
         if self.now.data is not None and self.now.fit is None and not self.now.fault:
             self._fit()
@@ -130,9 +132,9 @@ class MeasuredPanel(VBox):
 
     def _build(self) -> None:
         """Buttons, fields and menus of the kind that is shown."""
-        for box in (self.files, self.otherwise, self.options):
-            for old in box.children:
-                old.close()
+        self._built = self._shown
+        for old in (*self.files.children[1:], *self.otherwise.children, *self.options.children):
+            old.close()
         self.files.children = self._file_rows()
         self.otherwise.children = self._otherwise_rows() if self.now.data is not None else ()
         loaded = self.now.data is not None and self.now.kind.steps is not None
@@ -142,17 +144,24 @@ class MeasuredPanel(VBox):
 
     def _file_rows(self) -> tuple[Any, ...]:
         kind, held = self.now.kind, self.now
-        main = Upload(
-            "Load another file" if held.data is not None else f"Load {kind.label.lower()}",
-            kind.hint,
-            lambda name, content: self.take("", name, content),
-            self._refused,
-        )
+        main = self._uploads[kind.name]
+        main.text = "Load another file" if held.data is not None else f"Load {kind.label.lower()}"
         if held.data is None or not kind.extras:
             return (main,)
         extras = HBox([self._extra_row(extra) for extra in kind.extras])
         extras.add_class("x-extras")
         return main, extras
+
+    def _main_upload(self, kind: Kind) -> Upload:
+        """The button that loads data of a kind; it stays, so that a keyboard keeps its place."""
+        made = Upload(
+            f"Load {kind.label.lower()}",
+            kind.hint,
+            lambda name, content: self.take("", name, content),
+            self._refused,
+        )
+        made.add_class(f"upload-{kind.name}")
+        return made
 
     def _extra_row(self, extra: Any) -> HBox:
         given = self.now.files.get(extra.role)
@@ -162,6 +171,7 @@ class MeasuredPanel(VBox):
             lambda name, content: self.take(extra.role, name, content),
             self._refused,
         )
+        load.add_class(f"upload-{self.now.kind.name}-{extra.role}")
         if given is None:
             return HBox([load])
         drop = Button(description="×", tooltip=f"Without this {extra.label}")
