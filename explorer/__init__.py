@@ -10,6 +10,7 @@ from . import keyrate
 from . import physics as _physics
 from .broadening import Broadening
 from .budget import budget
+from .built import Built, Estimate
 from .candidates import candidates
 from .combine import combined, with_record
 from .design import Decision, Design, Origin, Requirement, Unknown
@@ -19,6 +20,13 @@ from .exact import RecordError
 from .inputs import INPUTS
 from .limits import cost_of_spread, elasticities, headroom
 from .maps import Axis, Map, make_map, mesh
+from .measured import AngularPattern, Coincidences, DataError, Decay, Dropped, Spectrum
+from .measured.decay import DecayFit, fit_decay
+from .measured.enhancement import Enhancement, enhancement
+from .measured.g2 import G2Fit, fit_g2
+from .measured.reading import read_coincidences, read_decay, read_pattern, read_spectrum
+from .measured.spectrum import SpectrumFit, fit_spectrum
+from .measured.use import predicted, with_device, with_measured, without_device
 from .prediction import prediction_table
 from .record import design_text, load_design, save_design
 from .registry import REGISTRY as _REGISTRY
@@ -46,12 +54,22 @@ __all__ = [
     "CAUTIONS",
     "INPUTS",
     "QUANTITIES",
+    "AngularPattern",
     "Axis",
     "Broadening",
+    "Built",
+    "Coincidences",
+    "DataError",
+    "Decay",
+    "DecayFit",
     "Decision",
     "Design",
+    "Dropped",
+    "Enhancement",
+    "Estimate",
     "Found",
     "Front",
+    "G2Fit",
     "Goal",
     "Influence",
     "InputError",
@@ -66,6 +84,8 @@ __all__ = [
     "Requirement",
     "Samples",
     "Share",
+    "Spectrum",
+    "SpectrumFit",
     "Spread",
     "SweepError",
     "Unknown",
@@ -79,8 +99,12 @@ __all__ = [
     "cost_of_spread",
     "design_text",
     "elasticities",
+    "enhancement",
     "evaluate",
     "factorial",
+    "fit_decay",
+    "fit_g2",
+    "fit_spectrum",
     "headroom",
     "influences",
     "keyrate",
@@ -90,16 +114,24 @@ __all__ = [
     "mesh",
     "nearest",
     "pareto_front",
+    "predicted",
     "prediction_table",
     "quantiles",
     "ranges",
+    "read_coincidences",
+    "read_decay",
+    "read_pattern",
+    "read_spectrum",
     "sampled",
     "save_design",
     "scattered",
     "sturdiest",
     "sweep",
     "sweep_to",
+    "with_device",
+    "with_measured",
     "with_record",
+    "without_device",
     "yield_of",
 ]
 

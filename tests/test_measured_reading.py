@@ -30,9 +30,7 @@ from explorer.measured.reading import (
 from explorer.measured.tails import cut_tails
 from explorer.measured.text import LARGEST
 
-sys.path.insert(0, str(Path(__file__).resolve().parent))
-
-from measured_files import ROWS, UNITS, Hostile, hostile, huge, plain, table, variants
+from .measured_files import ROWS, UNITS, Hostile, hostile, huge, plain, table, variants
 
 READERS: dict[str, Callable[..., Any]] = {
     "spectrum": read_spectrum,
@@ -265,7 +263,7 @@ def test_a_name_is_shown_without_its_folder_and_control_characters() -> None:
 
 
 @given(st.binary(max_size=400) | st.text(max_size=400).map(str.encode))
-@settings(max_examples=300, deadline=None)
+@settings(max_examples=200, deadline=None)
 def test_any_bytes_are_read_or_refused(content: bytes) -> None:
     for read in READERS.values():
         try:
@@ -298,7 +296,7 @@ LINE = st.lists(
 
 
 @given(st.lists(st.tuples(LINE, st.sampled_from([",", ";", "\t", " ", ", "])), max_size=25))
-@settings(max_examples=300, deadline=None)
+@settings(max_examples=200, deadline=None)
 def test_any_lines_are_read_or_refused(lines: list[tuple[list[str], str]]) -> None:
     content = "\n".join(delimiter.join(cells) for cells, delimiter in lines).encode()
     for kind, read in READERS.items():
@@ -436,6 +434,7 @@ def test_units_of_the_second_column_are_kept_as_they_stand() -> None:
         ("Wavelength (nm),Counts/s", "Counts/s"),
         ("Wavelength (nm),Power [mW/nm]", "mW/nm"),
         ("Wavelength (nm),Signal", "counts"),
+        ("Wavelength (nm),Counts per 0.1 nm", "counts"),
     ]:
         assert read_spectrum(table(rows, above=[header]), name="s").units == ("nm", unit)
 
@@ -452,6 +451,13 @@ def test_given_units_go_before_those_of_the_header() -> None:
         assert (
             "units is a pair" in refusal(read_spectrum, table(rows), name="s", units=wrong).reason
         )
+
+
+def test_a_wrong_unit_names_the_column_that_would_fit() -> None:
+    rows = [(f"{at / 4}", x, y) for at, (x, y) in enumerate(ROWS["spectrum"]())]
+    error = refusal(read_spectrum, table(rows, above=["Time (s),Wavelength (nm),Counts"]), name="s")
+    assert "'Wavelength (nm)' may be meant, column 1 from 0" in error.reason
+    assert error.line == 1
 
 
 def test_a_unit_in_a_header_that_is_parted_in_no_way() -> None:

@@ -1,6 +1,7 @@
 """The notebooks run from top to bottom, and what they show is there."""
 
 import runpy
+import shutil
 import sys
 from pathlib import Path
 
@@ -26,7 +27,8 @@ class ThisPython(AsyncKernelManager):
 
 @pytest.mark.parametrize("path", sorted(NOTEBOOKS.glob("*.ipynb")), ids=lambda path: path.stem)
 def test_notebook_runs(path: Path, monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
-    """In a folder of its own: what a notebook writes goes there."""
+    """In a folder of its own, beside the measured files: what a notebook writes goes there."""
+    shutil.copytree(NOTEBOOKS / "measured", tmp_path / "measured")
     monkeypatch.setenv("PYTHONPATH", str(NOTEBOOKS.parent))
     notebook = nbformat.read(path, as_version=4)
     client = NotebookClient(

@@ -15,6 +15,7 @@ from .numerals import LONGEST, is_number
 DELIMITERS: Final = {
     "\t": "tabulators",
     ";": "semicolons",
+    "|": "bars",
     ", ": "commas with a space",
     ",": "commas",
     " ": "spaces",

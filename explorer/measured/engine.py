@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Generator, Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any, TypeVar
 
 import numpy as np
@@ -18,7 +18,7 @@ import numpy as np
 from ..domain import InputError, finite_number
 from .data import DataError, Estimate
 from .noise import Array, Noise
-from .scoring import NDArrayBool, Problem, covariance, profile_end, score_steps
+from .scoring import ENOUGH, Problem, covariance, profile_end, score_steps
 
 Result = TypeVar("Result")
 
@@ -28,6 +28,9 @@ SLICE = 150
 #: MINOS runs at a stretch; where points times parameters exceed this, profiles by scoring, which can
 #: be had in slices, take its place.
 MINOS_POINTS = 6000
+
+#: Once more intervals than this have an end that was not found, the others are not searched for.
+MOST_UNSURE = 2
 
 #: A limit further off than this, in steps, is kept from Minuit, whose transformation loses digits there.
 DISTANT = 200.0
@@ -96,6 +99,65 @@ def finish(steps: Iterator[Result | None]) -> Result:
     return last
 
 
+@dataclass(frozen=True, eq=False)
+class _Scaled:
+    """A problem in units of the steps of its parameters."""
+
+    names: tuple[str, ...]
+    origin: Array
+    steps: Array
+    problem: Problem
+
+    @classmethod
+    def of(
+        cls, model: Callable[[Array], Array], noise: Noise, parameters: Sequence[Parameter]
+    ) -> _Scaled:
+        if noise.values.size <= len(parameters):
+            raise DataError(
+                f"{noise.values.size} points are too few to fit {len(parameters)} numbers"
+            )
+        steps = np.array([one.step for one in parameters])
+        origin = np.array([one.start for one in parameters])
+        low = (np.array([one.low for one in parameters]) - origin) / steps
+        high = (np.array([one.high for one in parameters]) - origin) / steps
+        problem = Problem(lambda place: model(origin + steps * place), noise, low, high)
+        return cls(tuple(one.name for one in parameters), origin, steps, problem)
+
+    def begun(self, most: int, rough: bool = False) -> Generator[None, None, Array]:
+        """Scoring from where the parameters start; rough: until steps hardly matter."""
+        problem, size = self.problem, len(self.names)
+        place = np.clip(np.zeros(size), problem.low, problem.high)
+        enough, care = (1.0, 0) if rough else (ENOUGH, 1)
+        free = np.ones(size, dtype=bool)
+        return (yield from score_steps(problem, place, free, most=most, enough=enough, care=care))
+
+    def sized(self, place: Array) -> _Scaled:
+        """The same with the size of even noise, as a place leaves it."""
+        problem = self.problem
+        if not problem.noise.even:
+            return self
+        values = problem.noise.values
+        least = 1e-28 * float(np.mean(values**2)) + 1e-300
+        squared = max(problem.objective(place) / (values.size - place.size), least)
+        return replace(self, problem=replace(problem, size=squared))
+
+    def estimate(self, index: int, place: Array, ends: tuple[float, float]) -> Estimate:
+        """A value with its interval, unscaled."""
+        value, *scaled = (
+            float(self.origin[index] + self.steps[index] * one) for one in (place[index], *ends)
+        )
+        return Estimate(value, min(scaled[0], value), max(scaled[1], value))
+
+
+def sketch_steps(
+    model: Callable[[Array], Array], noise: Noise, parameters: Sequence[Parameter], most: int = 40
+) -> Generator[None, None, tuple[Array, float]]:
+    """A fit by a few steps of scoring alone, in slices; returns the parameters and the deviance."""
+    scaled = _Scaled.of(model, noise, parameters)
+    place = yield from scaled.begun(most, rough=True)
+    return scaled.origin + scaled.steps * place, scaled.problem.objective(place)
+
+
 def fit_steps(
     model: Callable[[Array], Array],
     noise: Noise,
@@ -109,45 +171,36 @@ def fit_steps(
     model: parameters (k,) -> expected values (n,). wanted: parameters that get an interval. Raises
     DataError where there are no more points than parameters.
     """
-    if noise.values.size <= len(parameters):
-        raise DataError(f"{noise.values.size} points are too few to fit {len(parameters)} numbers")
-    steps = np.array([one.step for one in parameters])
-    origin = np.array([one.start for one in parameters])
-    low = (np.array([one.low for one in parameters]) - origin) / steps
-    high = (np.array([one.high for one in parameters]) - origin) / steps
-    problem = Problem(lambda place: model(origin + steps * place), noise, low, high)
-    free = np.ones(len(parameters), dtype=bool)
-    place = yield from score_steps(problem, np.clip(np.zeros(free.size), low, high), free)
-    degrees = noise.values.size - free.size
-    if noise.even:
-        least = 1e-28 * float(np.mean(noise.values**2)) + 1e-300
-        squared = max(problem.objective(place) / degrees, least)
-        problem = Problem(problem.model, noise, low, high, squared)
-    names = tuple(one.name for one in parameters)
-    minuit, place, valid = yield from _confirmed(problem, place, names, free)
+    scaled = _Scaled.of(model, noise, parameters)
+    place = yield from scaled.begun(200)
+    scaled = scaled.sized(place)
+    problem, names, steps = scaled.problem, scaled.names, scaled.steps
+    minuit, place, valid = yield from _confirmed(problem, place, names)
     touching = problem.touching(place)
-    spread = covariance(problem, place, free & ~touching)
+    spread = covariance(problem, place, ~touching)
     expected = problem.model(place)
-    deviance = noise.deviance(expected)
-    size = math.sqrt(deviance / degrees) if noise.even else 1.0
+    deviance, degrees = noise.deviance(expected), noise.values.size - len(names)
     sigmas = _sigmas(level, degrees if noise.even else None)
-    estimates, unsure = {}, set()
+    estimates: dict[str, Estimate] = {}
+    unsure: set[str] = set()
     for name in wanted:
         index = names.index(name)
-        ends, sure = yield from _interval(problem, minuit, place, index, sigmas, spread)
-        value = float(origin[index] + steps[index] * place[index])
-        scaled = [float(origin[index] + steps[index] * end) for end in ends]
-        estimates[name] = Estimate(value, min(scaled[0], value), max(scaled[1], value))
+        if len(unsure) > MOST_UNSURE:  # nothing is determined: do not search for ever
+            half = sigmas * math.sqrt(spread[index, index])
+            ends, sure = (place[index] - half, place[index] + half), False
+        else:
+            ends, sure = yield from _interval(problem, minuit, place, index, sigmas, spread)
+        estimates[name] = scaled.estimate(index, place, ends)
         if not sure:
             unsure.add(name)
     return Fit(
         names,
-        origin + steps * place,
+        scaled.origin + steps * place,
         steps * np.sqrt(np.diag(spread)),
         spread * np.outer(steps, steps),
         expected,
         deviance,
-        size,
+        math.sqrt(deviance / degrees) if noise.even else 1.0,
         estimates,
         frozenset(name for name, touch in zip(names, touching, strict=True) if touch),
         frozenset(unsure),
@@ -165,12 +218,13 @@ def _sigmas(level: float, degrees: int | None) -> float:
 
 
 def _confirmed(
-    problem: Problem, place: Array, names: tuple[str, ...], free: NDArrayBool
+    problem: Problem, place: Array, names: tuple[str, ...]
 ) -> Generator[None, None, tuple[Any, Array, bool]]:
     """Migrad from where scoring came to rest, in slices, then scoring again for the last digits."""
     from iminuit import Minuit
 
     minuit = Minuit(lambda place: min(problem.objective(place), 1e30), place, name=names)
+    free = np.ones(place.size, dtype=bool)
     minuit.errordef, minuit.strategy, minuit.print_level = 1.0, 1, 0
     minuit.limits = [
         (None if low < -DISTANT else low, None if high > DISTANT else high)

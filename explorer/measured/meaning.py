@@ -14,6 +14,7 @@ from .table import Table
 from .text import Document
 
 _COUNTED: Final = re.compile(r"(?:counts?|cts|photons?|events?|clicks?)\s*/\s*\S", re.IGNORECASE)
+_RELATIVE: Final = re.compile(r"shift|detuning|offset|relative", re.IGNORECASE)
 _NUMBERING: Final = re.compile(r"channels?|ch\.?|bins?|index|pixels?|px", re.IGNORECASE)
 
 
@@ -74,14 +75,30 @@ def units_of(table: Table, kind: str, given: tuple[str, str] | None) -> tuple[Un
             "column is the axis, such as columns=(1, 0)",
             line,
         )
+    if kind == "spectrum" and _RELATIVE.search(first.text):
+        raise table.document.error(
+            f"{quoted(first.text)} seems to count from a line or a laser: give the wavelength itself, "
+            "or the unit by units where it is absolute",
+            line,
+        )
     if first.unit or (_numbering(first) and "channel" in KINDS[kind].families):
         try:
             unit = axis_unit(first.unit or "channel", kind)
         except DataError as error:
-            raise table.document.error(error.reason, line) from None
+            raise table.document.error(error.reason + _hint(table, kind), line) from None
         return _with_width(table, unit, line), value, []
     unit = UNITS[KINDS[kind].usual]
     return unit, value, [f"no unit in the file: taken as {unit}"]
+
+
+def _hint(table: Table, kind: str) -> str:
+    """Another column whose unit would fit, in words."""
+    fits = [at for at, label in enumerate(table.head.labels) if _fits(label, kind)]
+    return (
+        f"; {quoted(table.label(fits[0]).text)} may be meant, column {fits[0]} from 0"
+        if fits
+        else ""
+    )
 
 
 def _with_width(table: Table, unit: Unit, line: int | None) -> Unit:
@@ -98,6 +115,12 @@ def _value_unit(label: Label, usual: str) -> str:
     """That of the second column, as the file has it, else the usual one."""
     if _COUNTED.match(label.text):
         return label.text[:40]
+    if (
+        (found := known_unit(label.unit))
+        and found.family != "channel"
+        and label.text[-1:] not in ")]"
+    ):
+        return usual  # "Counts per 16 ps" is measured in counts
     return label.unit[:40] or usual
 
 

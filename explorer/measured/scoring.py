@@ -177,8 +177,8 @@ def covariance(problem: Problem, place: Array, free: NDArrayBool) -> Array:
     """Inverse of the Fisher information of the free parameters, zeros elsewhere, (k, k)."""
     triangle, _ = _equations(problem, place, free, care=2)
     part = triangle[:, free]
-    lengths = np.maximum(np.sqrt(np.sum(part**2, axis=0)), 1e-150)
-    inverse = np.linalg.pinv(part / lengths, rcond=1e-14) / lengths[:, None]
+    lengths = np.maximum(np.sqrt(np.sum(part**2, axis=0)), 1e-100)
+    inverse = np.linalg.pinv(part / lengths, rcond=1e-11) / lengths[:, None]
     full = np.zeros((place.size, place.size))
     full[np.ix_(free, free)] = inverse @ inverse.T
     return full
@@ -198,12 +198,12 @@ def profile_end(
     limit = float(problem.high[index] if first > 0 else problem.low[index])
     search = _Search(float(best[index]), first, limit, rise)
     base, start = problem.objective(best), best
-    for _ in range(14):
+    for _ in range(12):
         trial = search.trial()
         place = np.clip(start + direction * (trial - start[index]), problem.low, problem.high)
         place[index] = trial
         place = yield from score_steps(
-            problem, place, others, damping=1e-6, enough=1e-4 * rise, most=12, care=0
+            problem, place, others, damping=1e-6, enough=1e-4 * rise, most=10, care=0
         )
         if search.told(problem.objective(place) - base):
             return search.inside, True

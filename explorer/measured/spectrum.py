@@ -11,7 +11,7 @@ import numpy as np
 from ..domain import InputError, finite_number, quoted
 from ..whole import Lines
 from .data import DataError, Estimate, Spectrum
-from .engine import Fit, Parameter, checked_level, finish, fit_steps
+from .engine import Fit, Parameter, checked_level, finish, fit_steps, sketch_steps
 from .fitted import Fitted, common, mapped
 from .noise import Noise
 from .spectrum_cautions import spectrum_cautions
@@ -123,11 +123,15 @@ def _fitted(layout: Layout, sidebands: int, level: float) -> Generator[None, Non
     flat = yield from _flat(layout, noise)
     if (flat - fit.deviance) / fit.size**2 < CLEAR or fit["area"] <= 0:
         raise DataError("no line stands above the noise", data.name)
-    for _ in range(sidebands):
-        guess = with_line(layout, noise, layout.read(fit.values), fit.expected)
-        layout = replace(layout, count=layout.count + 1)
-        fit = yield from fit_steps(layout.model, noise, layout.parameters(guess), level=level)
     guess = layout.read(fit.values)
+    for _ in range(sidebands):
+        layout = replace(layout, count=layout.count + 1)
+        best = math.inf
+        for trial in with_line(layout, noise, guess):
+            values, misfit = yield from sketch_steps(layout.model, noise, layout.parameters(trial))
+            if misfit < best:
+                best, found = misfit, layout.read(values)
+        guess = found
     guess = _ordered(guess, layout)
     fit = yield from fit_steps(
         layout.model, noise, layout.parameters(guess), wanted=_wanted(layout), level=level

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -131,13 +131,32 @@ def first_guess(layout: Layout, noise: Noise) -> Guess:
     return Guess((line,), _slow(layout, width), background)
 
 
-def with_line(layout: Layout, noise: Noise, guess: Guess, expected: Array) -> Guess:
-    """One line more, where the residuals are largest."""
-    data = layout.data
+def with_line(layout: Layout, noise: Noise, guess: Guess) -> list[Guess]:
+    """Guesses of one line more: where the residuals are largest, broad or narrow, or a line split.
+
+    Each also with a smaller slow width, which may have grown to stand for the line that lacked.
+    """
+    data, lines = layout.data, guess.lines
+    expected = line_counts(data.wavelengths, lines, guess.slow, layout.resolution, guess.background)
     net, variances = data.counts - expected, _variances(noise, expected)
-    centre, width, area, _ = strongest_box(data.wavelengths, net, variances, 2 * spacing(data))
-    least = 1e-3 * sum(line.area for line in guess.lines)
-    return replace(guess, lines=(*guess.lines, Line(max(area, least), centre, width)))
+    area = sum(line.area for line in lines)
+    sets = []
+    for widest in (1.0, 0.1):
+        centre, width, more, _ = strongest_box(
+            data.wavelengths, net, variances, 2 * spacing(data), widest
+        )
+        sets.append((*lines, Line(max(more, 1e-3 * area), centre, width)))
+    broad = max(lines, key=lambda line: line.area)
+    width = max(broad.fast, guess.slow)
+    halves = [
+        Line(broad.area / 2, broad.centre + side * width / 3, 0.6 * width) for side in (-1, 1)
+    ]
+    sets.append((*(line for line in lines if line is not broad), *halves))
+    return [
+        Guess(one, slow, guess.background)
+        for one in sets
+        for slow in (guess.slow, 0.3 * guess.slow)
+    ]
 
 
 def _variances(noise: Noise, expected: Array) -> Array:

@@ -85,18 +85,19 @@ def split_width(total: float, sharpness: float, wavelength: float) -> tuple[floa
 
 
 def strongest_box(
-    wavelengths: Array, values: Array, variances: Array, smallest: float
+    wavelengths: Array, values: Array, variances: Array, smallest: float, widest: float = 1.0
 ) -> tuple[float, float, float, float]:
     """The stretch of a spectrum that stands out most: centre, FWHM, area and signal over noise.
 
-    values: counts less what is known, variances of them, (n,). smallest: narrowest stretch [m].
+    values: counts less what is known, variances of them, (n,). smallest: narrowest stretch [m]; widest:
+    over the span.
     """
     steps = np.gradient(wavelengths)
     area = np.concatenate([[0.0], np.cumsum(values * steps)])
     noise = np.concatenate([[0.0], np.cumsum(variances * steps**2)])
     span = float(wavelengths[-1] - wavelengths[0])
     best = (float(wavelengths[int(np.argmax(values))]), smallest, 0.0, -np.inf)
-    for width in np.geomspace(smallest, max(span, 2 * smallest), 24):
+    for width in np.geomspace(smallest, max(widest * span, 2 * smallest), 24):
         first = np.searchsorted(wavelengths, wavelengths - width / 2)
         last = np.searchsorted(wavelengths, wavelengths + width / 2, side="right")
         inside = area[last] - area[first]

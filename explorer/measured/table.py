@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import itertools
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Final
 
 from ..domain import quoted
@@ -26,10 +26,11 @@ _COMMENT: Final = ("#", "%", "!", "*", "//", "'", ";")
 
 @dataclass
 class Table:
-    """The rows of a file. wanted: positions of the two columns. width: cells in the first row.
+    """The rows of a file.
 
-    head: labels of all columns and the lines in which they stand. rows: the lines; numbers: theirs in the file. comments: how many were passed over. counted:
-    whether the first column only counts the rows.
+    wanted: positions of the two columns. width: cells in the first row. head: labels of all columns,
+    and the lines in which they stand. rows: the lines; numbers: theirs in the file. comments: how
+    many were passed over. counted: whether the first column only counts the rows.
     """
 
     document: Document
@@ -53,6 +54,11 @@ def find_table(document: Document, columns: Columns | None) -> Table:
     """The table of a file. columns: which two, the first two where None. Raises DataError."""
     wanted = _positions(document, columns)
     delimiter = delimiter_of(document.lines, wanted)
+    if delimiter is None and any(line.count('"') > 1 for line in document.lines):
+        # Rows that stand in quotes as a whole.
+        bare = tuple(line.replace('"', " ") for line in document.lines)
+        delimiter = delimiter_of(bare, wanted)
+        document = document if delimiter is None else replace(document, lines=bare)
     if delimiter is None:
         raise _no_table(document, wanted or (0, 1))
     if wanted is None:

@@ -47,12 +47,14 @@ def drawing(data: Any, fit: Any = None) -> Drawing:
     top = high + 0.05 * (high - low)
     across = (float(x[0]), float(x[-1]))
     marks = _marks(*across)
-    ticks = tuple(zip(marks, written(marks), strict=True))
-    curves = [Curve(*_thinned(x, shown), "quiet", 1.2)]
+    names = [name.replace("-", "−") for name in written(marks)]
+    ticks = tuple(zip(marks, names, strict=True))
+    smooth = isinstance(data, AngularPattern)  # nothing is fitted to it
+    curves = [Curve(*_thinned(x, shown), *(("sea", 2.5) if smooth else ("quiet", 1.2)))]
     if line is not None:
         fitted = np.isfinite(line)
         curves.append(Curve(*_thinned(x[fitted], line[fitted]), "red", 2.5))
-    frame = Frame(across, (low, top), ticks, _levels(logarithmic, top, float(np.max(y))), label)
+    frame = Frame(across, (low, top), ticks, _levels(logarithmic, top), label)
     said = f"{words}: {len(x)} points{', with the fit' if fit is not None else ''}"
     return Drawing((frame, curves, said), _rest(x, across, fit))
 
@@ -95,7 +97,7 @@ def _marks(low: float, high: float) -> list[float]:
     return multiples(low, high, tidy((high - low) / 4))
 
 
-def _levels(logarithmic: bool, top: float, largest: float) -> tuple[tuple[float, str], ...]:
+def _levels(logarithmic: bool, top: float) -> tuple[tuple[float, str], ...]:
     """Ticks up the side: powers of ten, or parts of the largest value."""
     if logarithmic:
         raised = str.maketrans("0123456789", "⁰¹²³⁴⁵⁶⁷⁸⁹")
@@ -103,7 +105,6 @@ def _levels(logarithmic: bool, top: float, largest: float) -> tuple[tuple[float,
             (float(power), "1" if power == 0 else f"10{str(power).translate(raised)}")
             for power in range(math.floor(top) + 1)
         )
-    del largest
     return ((0.0, "0"), (0.5, "½"), (1.0, "1"))
 
 

@@ -21,7 +21,7 @@ def understood(data: Any) -> str:
     count = len(_axis(data))
     ends = _axis(data)[[0, -1]]
     unit = "m" if isinstance(data, Spectrum) else "rad" if isinstance(data, AngularPattern) else "s"
-    reach = "–".join(text(float(end), unit, 4) for end in ends)
+    reach = " to ".join(text(float(end), unit, 4).replace("-", "−") for end in ends)
     parts = [
         f'<p class="x-first">{escape(data.name)}: {count} rows, {escape(reach)}</p>',
         *(f"<p>{escape(note)}</p>" for note in data.read_as),
@@ -83,7 +83,7 @@ def _peaks(fit: Any) -> Iterator[tuple[str, Estimate, str]]:
         yield "of the emitter alone", fit.emitter_g2_zero, "1"
     if fit.window_g2 is not None:
         bare = Estimate(fit.window_g2, fit.window_g2, fit.window_g2)
-        yield "windows, no model", bare, "1"
+        yield "g²(0) of windows, raw", bare, "1"
     yield (
         ("Decay of a peak" if fit.pumping == "pulsed" else "Width of the dip"),
         fit.decay_time,

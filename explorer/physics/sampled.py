@@ -169,7 +169,9 @@ class SampledLine:
             centre, kappa, lower, upper = rows[target[part]].T[:, :, np.newaxis]
             start, stop, below, above = (values[pieces] for values in self._pieces)
             nodes = (start, stop, below, above)
-            exact = piece_overlaps(*clip_pieces(*nodes, lower, upper), centre, kappa / 2).sum(axis=1)
+            exact = piece_overlaps(*clip_pieces(*nodes, lower, upper), centre, kappa / 2).sum(
+                axis=1
+            )
             total += np.bincount(target[part], exact, len(rows))
         return total
 

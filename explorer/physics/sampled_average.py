@@ -29,6 +29,7 @@ from .sampled_shifts import (
     STRENGTHS,
     column,
     deviation_level,
+    largest_deviation,
     passing,
 )
 from .sampled_still import still_overlap, still_window
@@ -130,9 +131,8 @@ class Average:
 
     def _summed(self, level: int) -> _Sums:
         shared = column(self._line, level, self._deviations)
-        ends = [
-            shared.places.number(-self._offset + side * REACH * self._sigma) for side in (-1, 1)
-        ]
+        reach = REACH * largest_deviation(self._deviations)  # the same for all of them
+        ends = [shared.places.number(side * reach - self._offset) for side in (-1, 1)]
         first, last = int(np.floor(ends[0])), int(np.ceil(ends[1]))
         known = shared.overlaps.between(first, last)
         place, apart = known[:2]

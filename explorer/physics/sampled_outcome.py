@@ -29,8 +29,10 @@ def overlap_of_samples(*, measured: Any, detuning: Any, resonator_linewidth: Any
 @part
 def share_strength(*, ideal_rate: Any, resonator_linewidth: Any, decay_elsewhere: Any) -> Any:
     """Share of the mode over what it misses, for an overlap of 1, without back-action [1]."""
-    return ideal_rate * ((decay_elsewhere + resonator_linewidth) / resonator_linewidth) / (
-        decay_elsewhere
+    return (
+        ideal_rate
+        * ((decay_elsewhere + resonator_linewidth) / resonator_linewidth)
+        / (decay_elsewhere)
     )
 
 
@@ -88,7 +90,12 @@ def lifetime_of_samples(*, share_rate: Any, decay_elsewhere: Any) -> Any:
 
 @variant("mode_light_window", spectrum=Samples, slow_linewidth=0)
 def window_of_still_samples(
-    *, measured: Any, detuning: Any, resonator_linewidth: Any, filter_edges: Any, spectral_overlap: Any
+    *,
+    measured: Any,
+    detuning: Any,
+    resonator_linewidth: Any,
+    filter_edges: Any,
+    spectral_overlap: Any,
 ) -> Any:
     """Share of the mode's light inside the filter, a measured spectrum."""
     passed = measured(

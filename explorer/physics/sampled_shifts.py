@@ -19,18 +19,23 @@ from .sampled_pieces import Floats
 from .wandering import REACH, SMOOTH
 
 #: Step of the lattice of linewidths in log κ, and how many of its columns share their places.
-LINEWIDTHS, SHARED = 0.1, 4
+LINEWIDTHS, SHARED = 0.15, 4
 #: Step of the lattices of overlaps and of strengths, in their logarithms.
 STRENGTHS = 0.2
 #: Lowest overlap of the lattice.
 LOWEST = 1e-33
 #: Fewest and most places over 18 deviations, and how many are worked out at a time.
-FEWEST, MOST, BLOCK = 96, 1024, 32
+FEWEST, MOST, BLOCK = 96, 768, 64
 
 
 def deviation_level(sigma: float) -> int:
     """Number of the half octave that a deviation lies in, below its upper end."""
-    return int(np.ceil(2 * np.log2(sigma)))
+    return math.ceil(2 * math.log2(sigma))
+
+
+def largest_deviation(level: int) -> float:
+    """Upper end of a half octave of deviations [rad/s]."""
+    return float(2.0 ** (level / 2))
 
 
 @dataclass(frozen=True)
@@ -52,7 +57,7 @@ class Places:
         narrow, wide = np.exp(np.array([level, level + 1]) * (SHARED * LINEWIDTHS))
         step = max(line.step / 5, narrow / 6)
         feature = (right - left) / 2 + max(wide / 2, line.step)
-        sigma = 2 ** (deviations / 2)
+        sigma = largest_deviation(deviations)
         ratio = feature / (SMOOTH * sigma)
         ends = 2 * (np.arcsinh(REACH * sigma / feature) + ratio * REACH * sigma / feature)
         wanted = step / feature * (1 + ratio)
@@ -139,9 +144,7 @@ def column(line: SampledLine, level: int, deviations: int) -> Column:
 
 
 @lru_cache(maxsize=256)
-def passing(
-    line: SampledLine, level: int, deviations: int, window: tuple[float, float]
-) -> Growing:
+def passing(line: SampledLine, level: int, deviations: int, window: tuple[float, float]) -> Growing:
     """Of the same places and linewidths the overlap (SHARED, n) inside a filter.
 
     window: its edges from the resonance [rad/s].
