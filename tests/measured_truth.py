@@ -75,14 +75,18 @@ def response_times(rng: np.random.Generator, number: int, deviation: float) -> A
     )
 
 
-def response(rng: np.random.Generator, total: float, deviation: float, pulse: float = 5e-9) -> Decay:
+def response(
+    rng: np.random.Generator, total: float, deviation: float, pulse: float = 5e-9
+) -> Decay:
     """A histogram of the response alone, with a few flat counts."""
     edges = edges_of(0.0, 50e-12, 1000)
     times = pulse + response_times(rng, int(total), deviation)
     return binned(Decay, times, edges, rng.poisson(1e-5 * total, 1000))
 
 
-def line_waves(rng: np.random.Generator, number: int, line: tuple[float, float, float], slow: float) -> Array:
+def line_waves(
+    rng: np.random.Generator, number: int, line: tuple[float, float, float], slow: float
+) -> Array:
     """Wavelengths of photons of one line: a random frequency about the centre."""
     centre, fast, wander = line[0], line[1], slow
     omega0 = 2 * np.pi * LIGHT / centre

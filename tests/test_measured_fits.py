@@ -76,7 +76,9 @@ def test_exact_expectations_give_back_the_truth() -> None:
 
 @pytest.mark.parametrize("shift", [0.0, 0.37, 1.0, -1.63, 3.5])
 @pytest.mark.parametrize("lifetime", [0.2, 3.0, 40.0])
-def test_the_convolution_is_that_of_a_response_flat_in_its_bins(lifetime: float, shift: float) -> None:
+def test_the_convolution_is_that_of_a_response_flat_in_its_bins(
+    lifetime: float, shift: float
+) -> None:
     shares = np.array([0.0, 0.0, 0.0, 0.2, 0.5, 0.2, 0.1, 0.0])
     grid = np.concatenate([shares, np.zeros(22)])
     found = Convolved(grid, 0, 0.0, 30, 1.0).bins(lifetime, shift)
@@ -87,9 +89,12 @@ def test_the_convolution_is_that_of_a_response_flat_in_its_bins(lifetime: float,
         for at, share in enumerate(shares):
             low, high = at + shift, min(at + 1 + shift, time)
             if share and high > low:
-                total += share * integrate.quad(
-                    lambda s: -math.expm1(-(time - s) / lifetime), low, high, epsabs=1e-14
-                )[0]
+                total += (
+                    share
+                    * integrate.quad(
+                        lambda s: -math.expm1(-(time - s) / lifetime), low, high, epsabs=1e-14
+                    )[0]
+                )
         return total
 
     wanted = np.diff([survived(float(edge)) for edge in range(31)])
@@ -151,7 +156,8 @@ def test_a_peak_is_an_exponential_after_a_gaussian(jitter: float, delay: float) 
                 high,
                 epsabs=1e-13,
                 limit=400,
-                points=[p for p in (delay - 5 * jitter, delay + 5 * jitter) if low < p < high] or None,
+                points=[p for p in (delay - 5 * jitter, delay + 5 * jitter) if low < p < high]
+                or None,
             )[0]
             for low, high in itertools.pairwise(pieces)
         )
@@ -207,7 +213,7 @@ def test_minos_and_profiles_by_scoring_agree(monkeypatch: pytest.MonkeyPatch) ->
     data = truth.spectrum(seeded(7), 2e4, ((640e-9, 6e-9, 1.0),), 5e-9)
     found = []
     for points in (0, 10**9):
-        monkeypatch.setattr(engine, "MINOS_POINTS", points)
+        monkeypatch.setattr(engine, "MINOS_WORK", points)
         found.append(fit_spectrum(data))
     for name in ("centre", "fast_linewidth", "slow_linewidth", "background", "total_fwhm"):
         one, other = (getattr(fit, name) for fit in found)
@@ -224,7 +230,10 @@ def test_counts_less_a_background_have_the_likelihood_of_the_counts() -> None:
     noise = Noise((number - 3) / 0.2, ones / 0.2, 3 * ones / 0.2**2)
     plain = Noise.poisson(number)
     assert noise.deviance((mean - 3) / 0.2) == pytest.approx(plain.deviance(mean), rel=1e-12)
-    wanted = 2 * np.sum(stats.poisson.logpmf(number, np.maximum(number, 1e-300)) - stats.poisson.logpmf(number, mean))
+    wanted = 2 * np.sum(
+        stats.poisson.logpmf(number, np.maximum(number, 1e-300))
+        - stats.poisson.logpmf(number, mean)
+    )
     assert plain.deviance(mean) == pytest.approx(float(wanted), rel=1e-9)
 
 
@@ -260,7 +269,10 @@ def all_steps() -> Iterator[tuple[Any, str]]:
     data = truth.decay(seeded(10), 1e5, (6e-9, 1e-9), (0.4, 0.6), response=0.3e-9)
     yield fit_decay_steps(data, response, 2), "decay"
     lines = ((625e-9, 2e-9, 0.4), (645e-9, 15e-9, 0.6))
-    yield fit_spectrum_steps(truth.spectrum(seeded(11), 1e5, lines, 1.5e-9), sidebands=1), "spectrum"
+    yield (
+        fit_spectrum_steps(truth.spectrum(seeded(11), 1e5, lines, 1.5e-9), sidebands=1),
+        "spectrum",
+    )
     yield fit_g2_steps(truth.pulsed(seeded(12), 1e4, 0.2, background=0.1), jitter=0.5e-9), "g2"
 
 
@@ -420,7 +432,10 @@ def test_clean_data_carry_no_caution() -> None:
     response = truth.response(seeded(2), 1e7, 0.3e-9)
     assert cautions_of(fit_decay(truth.decay(seeded(25), 1e5))) == ""
     assert cautions_of(fit_decay(truth.decay(seeded(26), 1e5, response=0.3e-9), response)) == ""
-    assert cautions_of(fit_spectrum(truth.spectrum(seeded(27), 1e5, ((640e-9, 6e-9, 1.0),), 5e-9))) == ""
+    assert (
+        cautions_of(fit_spectrum(truth.spectrum(seeded(27), 1e5, ((640e-9, 6e-9, 1.0),), 5e-9)))
+        == ""
+    )
     assert cautions_of(fit_g2(truth.pulsed(seeded(28), 1e4, 0.2), jitter=0.5e-9)) == ""
     continuous = truth.continuous(seeded(29), 1e5, 0.2)
     assert cautions_of(fit_g2(continuous, pumping="continuous", jitter=1e-9)) == ""
@@ -472,7 +487,9 @@ def test_cautions_of_coincidences() -> None:
     assert "narrower than three bins" in told
     assert "no jitter is given" in told
     wide = truth.continuous(seeded(44), 1e6, 0.2, decay_time=15e-9)
-    assert "far level is not reached" in cautions_of(fit_g2(wide, pumping="continuous", jitter=1e-9))
+    assert "far level is not reached" in cautions_of(
+        fit_g2(wide, pumping="continuous", jitter=1e-9)
+    )
     clean = truth.continuous(seeded(45), 1e6, 0.05)
     assert "below zero" in cautions_of(
         fit_g2(clean, pumping="continuous", jitter=1e-9, signal_share=0.8)

@@ -852,3 +852,13 @@ def test_reading_loads_pandas_only_when_it_reads() -> None:
     code = "import explorer.measured.reading, sys; print('pandas' in sys.modules)"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.strip() == "False"
+
+
+def test_a_file_may_come_as_its_name_and_its_bytes() -> None:
+    rows = "\n".join(f"{500 + i},{100 + i % 7}" for i in range(40)).encode()
+    dark = "\n".join(f"{500 + i},{20}" for i in range(40)).encode()
+    data = read_spectrum(("light.csv", rows), background=("dark.csv", dark))
+    assert data.name == "light.csv"
+    assert any("'dark.csv'" in note for note in data.read_as)
+    with pytest.raises(DataError, match=r"^dark\.csv: the file is empty$"):
+        read_spectrum(("light.csv", rows), background=("dark.csv", b""))

@@ -142,8 +142,8 @@ def kinds() -> dict[str, Kind]:
             {"g2": (g2, 0.3), "decay": (named("decay_time"), 6e-9)},
         ),
         "g2, continuous, background": Kind(
-            lambda rng, total: truth.continuous(rng, total, 0.2, signal_share=0.8),
-            lambda data: fit_g2(data, pumping="continuous", jitter=1e-9, signal_share=0.8),
+            lambda rng, total: truth.continuous(rng, total, 0.2, signal_share=0.9),
+            lambda data: fit_g2(data, pumping="continuous", jitter=1e-9, signal_share=0.9),
             {"g2": (named("emitter_g2_zero"), 0.2), "decay": (named("decay_time"), 6e-9)},
         ),
     }
@@ -168,7 +168,9 @@ def test_no_bias_and_honest_intervals(name: str, record_property: Any) -> None:
         coverage = sum(inside for _, _, inside in rows) / SETS
         record_property(key, f"bias {bias:+.3f} standard errors, coverage {coverage:.3f}")
         assert abs(bias) < 0.2, f"{key}: bias of {bias:+.3f} standard errors"
-        assert abs(coverage - LEVEL) < margin, f"{key}: {coverage:.3f} of the intervals hold the truth"
+        assert abs(coverage - LEVEL) < margin, (
+            f"{key}: {coverage:.3f} of the intervals hold the truth"
+        )
 
 
 def mean_error(rows: list[tuple[float, float, bool]]) -> float:

@@ -31,7 +31,7 @@ def test_a_measured_value_is_an_input_whose_interval_is_what_is_not_known() -> N
     assert made.point["lifetime"] == 4e-9
     assert (made.unknowns["lifetime"].low, made.unknowns["lifetime"].high) == (3.8e-9, 4.3e-9)
     origin = made.origin("lifetime")
-    assert (origin.kind, origin.source, origin.where) == ("measured", "a.csv", "one")
+    assert (origin.kind, origin.source, origin.where) == ("measured", "a.csv", "a.csv: one")
     assert made.data == {"a.csv": HASH}
 
 

@@ -55,6 +55,10 @@ def press(panel: MeasuredPanel, label: str, device: str = "") -> None:
     row.children[0].click()
 
 
+def option(panel: MeasuredPanel, name: str) -> Any:
+    return next(one for one in panel.now.kind.options if one.name == name)
+
+
 def offered(panel: MeasuredPanel) -> list[str]:
     return [row.children[0].description for row in panel.uses.children]
 
@@ -117,9 +121,30 @@ def test_a_spectrum_as_measured_replaces_the_line(panel: MeasuredPanel) -> None:
     assert "spectrum" not in design(panel).point
 
 
+def test_the_line_of_a_resonator_gives_its_quality_factor(panel: MeasuredPanel) -> None:
+    give(panel, "spectrum")
+    press(panel, "Use as the resonator's line")
+    fit, made = panel.now.fit, design(panel)
+    assert made.point["resonance_wavelength"] == fit.centre.value
+    assert made.point["quality_factor"] == pytest.approx(583 / 26, rel=0.05)
+    assert made.unknowns["quality_factor"].low == pytest.approx(
+        fit.centre.low / fit.fast_linewidth.high
+    )
+
+
+def test_power_is_turned_into_photons(panel: MeasuredPanel) -> None:
+    give(panel, "spectrum")
+    before = panel.now.data
+    panel._chosen(option(panel, "of"), "power")
+    ratio = panel.now.data.counts / before.counts
+    assert np.allclose(ratio / ratio[0], before.wavelengths / before.wavelengths[0])
+    assert panel.now.fit is not None
+    assert "power" in panel.read.value
+
+
 def test_lines_and_sidebands_become_lines(panel: MeasuredPanel) -> None:
     give(panel, "spectrum")
-    panel._chosen(panel.now.kind.options[0], ("voigt", 1))
+    panel._chosen(option(panel, "line"), ("voigt", 1))
     press(panel, "Use the fitted lines")
     assert len(design(panel).point["spectrum"].lines) == 2
 
@@ -148,7 +173,7 @@ def test_a_decay_becomes_the_lifetime_or_a_device(panel: MeasuredPanel) -> None:
 
 def test_two_exponentials_say_mean_and_first_slope_apart(panel: MeasuredPanel) -> None:
     give(panel, "decay", name="decay_device.csv")
-    panel._chosen(panel.now.kind.options[0], 2)
+    panel._chosen(option(panel, "components"), 2)
     assert "Add mean time to" in offered(panel)
     assert "Add first slope to" in offered(panel)
     press(panel, "Add first slope to", "slope")
@@ -223,7 +248,7 @@ def test_columns_count_from_one() -> None:
 def test_an_option_that_is_no_number_is_refused_and_the_fit_stays(panel: MeasuredPanel) -> None:
     give(panel, "decay")
     fit = panel.now.fit
-    period = next(o for o in panel.now.kind.options if o.name == "period")
+    period = option(panel, "period")
     panel._numbered(period, "soon")
     assert "soon" in panel.wrong.value
     assert panel.now.fit is fit

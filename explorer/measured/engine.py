@@ -25,9 +25,9 @@ Result = TypeVar("Result")
 #: Model evaluations of one slice of Migrad; fewer where there are many points.
 SLICE = 150
 
-#: MINOS runs at a stretch; where points times parameters exceed this, profiles by scoring, which can
+#: MINOS runs at a stretch; where points times the square of the parameters exceed this, profiles by scoring, which can
 #: be had in slices, take its place.
-MINOS_POINTS = 6000
+MINOS_WORK = 30_000
 
 #: Once more intervals than this have an end that was not found, the others are not searched for.
 MOST_UNSURE = 2
@@ -252,8 +252,8 @@ def _interval(
     spread: scaled covariance, (k, k).
     """
     yield None
-    points = problem.noise.values.size * place.size
-    if minuit.valid and points <= MINOS_POINTS and not problem.touching(place).any():
+    work = problem.noise.values.size * place.size**2
+    if minuit.valid and work <= MINOS_WORK and not problem.touching(place).any():
         from scipy import special
 
         asked = sigmas if sigmas >= 1 else float(special.chdtr(1, sigmas**2))

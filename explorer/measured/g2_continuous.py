@@ -14,7 +14,10 @@ from .noise import Array, Noise
 from .spectrum_model import strongest_box
 
 #: A dip stands out where it is this many standard deviations below the rest.
-CLEAR = 4.0
+CLEAR = 3.0
+
+#: The dip must lower the deviance of a flat level by this much: about four standard deviations.
+TELLING = 16.0
 
 
 def continuous_steps(
@@ -33,6 +36,9 @@ def continuous_steps(
         noise = noise.scaled_to(fit.expected, len(parameters))
     wanted = [name for name in names if name not in ("level", "centre")]
     fit = yield from fit_steps(model, noise, parameters, wanted=wanted, level=level)
+    flat = noise.deviance(np.full(data.counts.shape, float(np.mean(data.counts))))
+    if flat - fit.deviance < TELLING:
+        raise DataError("no dip stands out of the noise", data.name)
     return fit, noise
 
 

@@ -49,7 +49,7 @@ def read_spectrum(
 ) -> Spectrum:
     """An emission spectrum as photon counts per unit of vacuum wavelength.
 
-    source: a path, or the bytes of a file with its `name`. units: of the two columns, in place of
+    source: a path, the bytes of a file with its `name`, or a pair of name and bytes. units: of the two columns, in place of
     those in the header; the axis in nm, µm, Å, pm, m, eV, meV, THz, GHz or cm-1, nm where none is
     named. columns: positions from 0 or labels of the two, the first two where None. of: "counts",
     photons per unit of the file's axis, or "power", which is made photons by a factor λ. background:
@@ -172,7 +172,7 @@ def read_decay(
 ) -> Decay:
     """A histogram of arrival times after a pulse, or of an instrument's response to one.
 
-    source: a path, or the bytes of a file with its `name`. units: of the two columns, in place of
+    source: a path, the bytes of a file with its `name`, or a pair of name and bytes. units: of the two columns, in place of
     those in the header; ns where none is named; ("16 ps", "counts") for an axis of channels of 16 ps.
     columns: positions from 0 or labels of the two, the first two where None. Times are the middles of
     even bins, of which some may be missing; the width is the usual step. counting: whether all counts
@@ -199,7 +199,7 @@ def read_pattern(
 ) -> AngularPattern:
     """An angular pattern: power per solid angle over the angle from the axis.
 
-    source: a path, or the bytes of a file with its `name`. units: of the two columns, in place of
+    source: a path, the bytes of a file with its `name`, or a pair of name and bytes. units: of the two columns, in place of
     those in the header: °, rad or mrad, ° where none is named; values in dB are made powers. columns:
     positions from 0 or labels of the two, the first two where None. Angles from -90° to 90°, 0° to
     180°, -180° to 180° or 0° to 360°: both sides are averaged, what lies beyond 90° goes down and is

@@ -13,7 +13,7 @@ from typing import Final
 from .data import DataError
 
 #: What a file is read from: its path, or its bytes.
-Source = str | os.PathLike[str] | bytes | bytearray | memoryview
+Source = str | os.PathLike[str] | bytes | bytearray | memoryview | tuple[str, bytes]
 
 #: Largest file that is read [bytes].
 LARGEST: Final = 20_000_000
@@ -77,7 +77,7 @@ class Document:
 
 
 def load(source: Source, name: str = "") -> Document:
-    """The text behind a path, or in the bytes of a file called `name`.
+    """The text behind a path, or in the bytes of a file called `name`, or in a pair of name and bytes.
 
     Takes UTF-8, UTF-16 and UTF-32 with or (UTF-8 and UTF-16) without a byte-order mark, and Latin-1;
     line ends of every system. Raises DataError for what is missing, empty, above LARGEST, or no text.
@@ -112,6 +112,8 @@ def _too_large(size: int) -> str:
 
 def _bytes(source: Source, name: str) -> tuple[bytes, str]:
     """The bytes and the name; a file that is too large is not read."""
+    if isinstance(source, tuple) and len(source) == 2 and isinstance(source[1], bytes):
+        name, source = str(source[0]), source[1]
     if isinstance(source, bytes | bytearray | memoryview):
         if (size := memoryview(source).nbytes) > LARGEST:
             raise DataError(_too_large(size), plain_name(name))

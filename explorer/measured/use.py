@@ -28,8 +28,8 @@ def with_measured(
 
     values: input -> `Estimate`, whose interval becomes the range that is not known (as far as the
     input's domain reaches), or a plain SI number or whole value, which is known. file, digest: name
-    and SHA-256 of the file, which the record names. where: how the values were found in it. Raises
-    InputError.
+    and SHA-256 of the file, which the record names. where: how the values were found in it; the
+    origin says both. Raises InputError.
     """
     plain = {name: getattr(value, "value", value) for name, value in values.items()}
     made = design.with_values(**plain)
@@ -37,7 +37,7 @@ def with_measured(
     for name, value in values.items():
         if isinstance(value, Estimate) and value.low < value.high:
             unknowns[name] = Unknown(*_within(made.evaluation, name, value))
-    origin = Origin("measured", file, where)
+    origin = Origin("measured", file, f"{file}: {where}" if where else file)
     made = replace(
         made, origins={**made.origins, **dict.fromkeys(values, origin)}, unknowns=unknowns
     )

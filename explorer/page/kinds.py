@@ -11,32 +11,27 @@ from .measuring import Extra, File, Kind, Option
 Files = dict[str, File]
 
 
-def _spectrum(files: Files, units: Any, columns: Any) -> tuple[Any, dict[str, Any]]:
+def _spectrum(
+    files: Files, units: Any, columns: Any, values: dict[str, Any]
+) -> tuple[Any, dict[str, Any]]:
     """The spectrum with its background taken away and its response divided out."""
-    name, content = files[""]
-    more = {role: content for role, (_, content) in files.items() if role}
-    data = read_spectrum(content, name=name, units=units, columns=columns, **more)
+    more = {role: file for role, file in files.items() if role}
+    data = read_spectrum(files[""], units=units, columns=columns, of=values["of"], **more)
     return data, {}
 
 
-def _decay(files: Files, units: Any, columns: Any) -> tuple[Any, dict[str, Any]]:
-    name, content = files[""]
-    data = read_decay(content, name=name, units=units, columns=columns)
-    extras = {}
-    if "response" in files:
-        name, content = files["response"]
-        extras["response"] = read_decay(content, name=name)
-    return data, extras
+def _decay(files: Files, units: Any, columns: Any, _: Any) -> tuple[Any, dict[str, Any]]:
+    data = read_decay(files[""], units=units, columns=columns)
+    response = {"response": read_decay(files["response"])} if "response" in files else {}
+    return data, response
 
 
-def _coincidences(files: Files, units: Any, columns: Any) -> tuple[Any, dict[str, Any]]:
-    name, content = files[""]
-    return read_coincidences(content, name=name, units=units, columns=columns), {}
+def _coincidences(files: Files, units: Any, columns: Any, _: Any) -> tuple[Any, dict[str, Any]]:
+    return read_coincidences(files[""], units=units, columns=columns), {}
 
 
-def _pattern(files: Files, units: Any, columns: Any) -> tuple[Any, dict[str, Any]]:
-    name, content = files[""]
-    return read_pattern(content, name=name, units=units, columns=columns), {}
+def _pattern(files: Files, units: Any, columns: Any, _: Any) -> tuple[Any, dict[str, Any]]:
+    return read_pattern(files[""], units=units, columns=columns), {}
 
 
 def _spectrum_steps(data: Any, _: Any, values: dict[str, Any]) -> Iterator[Any]:
@@ -84,6 +79,14 @@ SPECTRUM = Kind(
         Extra("response", "response", "Sensitivity against wavelength: divided out"),
     ),
     (
+        Option(
+            "of",
+            "Values",
+            "What the second column counts; power is turned into photons",
+            "counts",
+            choices=(("photon counts", "counts"), ("power", "power")),
+            reads=True,
+        ),
         Option(
             "line",
             "Line",

@@ -18,7 +18,10 @@ File = tuple[str, bytes]
 
 @dataclass(frozen=True)
 class Option:
-    """What a person may choose about a fit: one of `choices` (text, value), a number in `unit`, or a switch."""
+    """What a person may choose: one of `choices` (text, value), a number in `unit`, or a switch.
+
+    reads: whether it says how the file is read, and not how it is fitted.
+    """
 
     name: str
     label: str
@@ -26,6 +29,7 @@ class Option:
     default: Any
     unit: str = ""
     choices: tuple[tuple[str, Any], ...] = ()
+    reads: bool = False
 
 
 @dataclass(frozen=True)
@@ -41,8 +45,8 @@ class Extra:
 class Kind:
     """A kind of data: how it is read and fitted.
 
-    read(content, name, extras, units, columns) -> data; steps(data, read extras, values of the
-    options) -> iterator whose last item is the fit, or None where there is nothing to fit.
+    read(files by role, units, columns, values of the options) -> data and read extras;
+    steps(data, extras, values) -> iterator whose last item is the fit, None where there is nothing to fit.
     """
 
     name: str
@@ -109,7 +113,8 @@ class Measuring:
         if "" not in self.files:
             return True
         try:
-            data, extras = self.kind.read(self.files, self._units(), columns_of(self.columns))
+            how = (self._units(), columns_of(self.columns), self.values)
+            data, extras = self.kind.read(self.files, *how)
         except (DataError, InputError) as error:
             self.fault = str(error)
             return False
@@ -124,10 +129,12 @@ class Measuring:
         return self.units[0] or known[0], self.units[1] or known[1]
 
     def set(self, name: str, value: Any) -> None:
-        """Choose an option; an older fit no longer holds."""
+        """Choose an option; an older fit no longer holds, nor what was read in another way."""
         if self.values[name] != value:
             self.values[name] = value
             self.fit, self.fault = None, ""
+            if any(option.reads for option in self.kind.options if option.name == name):
+                self._read()
 
     def fit_steps(self) -> Iterator[Any]:
         """The fit in small pieces of work; `fit` holds it at the end, or `fault` why there is none."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from typing import Any
@@ -72,6 +73,27 @@ def _of_spectrum(data: Spectrum, fit: Any) -> Iterator[Use]:
         "Centre and widths, with their intervals as ranges that are not known",
         as_fitted,
         names,
+    )
+
+    if len(fit.lines) < 2 and fit.fast_linewidth.value > 0:
+        yield _as_resonance(data, fit)
+
+
+def _as_resonance(data: Spectrum, fit: Any) -> Use:
+    """The line of an empty resonator: its wavelength, and Q as that over the Lorentzian width."""
+
+    def change(design: Design, _: str) -> Design:
+        centre, width = fit.centre, fit.fast_linewidth
+        high = math.inf if width.low <= 0 else centre.high / width.low
+        quality = Estimate(centre.value / width.value, centre.low / width.high, high)
+        values = {"resonance_wavelength": centre, "quality_factor": quality}
+        return with_measured(design, values, data.name, data.digest, "the line of the resonator")
+
+    return Use(
+        "Use as the resonator's line",
+        "Its wavelength, and Q as that over the fast width",
+        change,
+        ("resonance_wavelength", "quality_factor"),
     )
 
 

@@ -95,7 +95,8 @@ class Average:
             distinct, row = kappa.ravel(), np.arange(kappa.size)
         else:
             distinct, row = np.unique(kappa, return_inverse=True)
-        place = np.clip(np.log(strength), WEAKEST, STRONGEST) / STRENGTHS
+        with np.errstate(divide="ignore", invalid="ignore"):
+            place = np.clip(np.log(strength), WEAKEST, STRONGEST) / STRENGTHS
         place = np.where(np.isnan(place), 0.0, place)
         first = (int(np.floor(place.min())) - POINTS // 2) // BLOCK
         last = (int(np.floor(place.max())) + POINTS // 2) // BLOCK

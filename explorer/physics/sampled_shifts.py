@@ -4,6 +4,12 @@ Places are frequencies of the resonance in the frame of the spectrum [rad/s]. Th
 lattice of a coordinate that crowds them about the main peak, and neither the detuning nor the
 deviation moves them: a Gaussian over them only changes its weights. So what is worked out here serves
 all detunings, all deviations of one octave's half, both transitions, and every strength of coupling.
+
+The places do not follow the samples, whose errors average out: at least five a sample or six a
+linewidth about the peak, and at most 768 over 18 deviations. Seen: 1e-7 for a resonator wider than two
+samples; for a narrower one 2e-5 on a smooth spectrum and 1e-3 with 3 % of noise at a deviation of 40
+samples. Nor do they follow a filter: where the spectrum is over a hundred times narrower than its
+wandering, the light inside is right to 1e-2 of the whole only.
 """
 
 import math
@@ -26,6 +32,8 @@ STRENGTHS = 0.2
 LOWEST = 1e-33
 #: Fewest and most places over 18 deviations, and how many are worked out at a time.
 FEWEST, MOST, BLOCK = 96, 768, 64
+#: Most places that are kept: a detuning that moves on and on leaves the first ones behind.
+LONGEST = 8 * MOST
 
 
 def deviation_level(sigma: float) -> int:
@@ -89,17 +97,21 @@ class Growing:
     def __init__(self, make: Callable[[Floats], Floats]) -> None:
         self._make = make  # lattice points (n) to values (m, n)
         self._start = 0
-        self._values: Floats | None = None
+        self._values: Floats = np.empty((0, 0))
 
     def between(self, first: int, last: int) -> Floats:
         """Values (m, n) from the block of one point to the block of another."""
         start, stop = first // BLOCK * BLOCK, (last // BLOCK + 1) * BLOCK
-        known = self._values
-        end = self._start + (0 if known is None else known.shape[1])
-        if known is None or start > end or stop < self._start or end - self._start > 8 * MOST:
+        end = self._start + self._values.shape[1]
+        if (
+            not self._values.size
+            or start > end
+            or stop < self._start
+            or (end - self._start > LONGEST)
+        ):
             self._start, self._values = start, self._fresh(start, stop)
         else:
-            parts = [known]
+            parts = [self._values]
             if start < self._start:
                 parts.insert(0, self._fresh(start, self._start))
             if stop > end:

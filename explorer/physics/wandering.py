@@ -191,7 +191,8 @@ def average_over_samples(
     64 to 768 nodes, three a step where that suffices. The nodes do not follow the kinks, whose
     errors average out. Seen: 1e-9 for a resonator wider than two steps (1e-6 at sigma = 300 steps);
     for a narrower one 1e-5 on a smooth spectrum, 4e-5 with 1 % of noise up to sigma = 10 steps and
-    3e-3 at 300, where each node meets another sample: about a third of the noise itself.
+    3e-3 at 300, where each node meets another sample: about a third of the noise itself. The formulas
+    use the tables of `sampled_average`; this sum, at other nodes, is what they are held against.
     """
     sigma = np.asarray(sigma, np.float64)
     spread = np.where(sigma > 0, sigma, 1.0)

@@ -79,7 +79,9 @@ def stepped(kinds: dict[str, Question], name: str, factor: float) -> dict[str, l
             )
             if number > 0:
                 times[kind].append(found)
-    return {kind: [statistics.median(each) for each in zip(*times[kind], strict=True)] for kind in kinds}
+    return {
+        kind: [statistics.median(each) for each in zip(*times[kind], strict=True)] for kind in kinds
+    }
 
 
 @pytest.mark.parametrize("slow", [0.0, 5e-9])
