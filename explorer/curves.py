@@ -178,9 +178,9 @@ def _own_density(work: Evaluation, frequency: Array) -> Array:
         line = work.value("measured")(lambda item: item)
         shifts = SHIFTS if sigma > 0 else np.zeros(1)
         weights = np.exp(-(shifts**2) / 2)
-        for shift, weight in zip(shifts * sigma, weights / weights.sum(), strict=True):
-            at = frequency - detuning - shift
-            total += weight * np.interp(at, line.omega, line.density, left=0.0, right=0.0)
+        at = (frequency - detuning) - (shifts * sigma)[:, np.newaxis]
+        seen = np.interp(at, line.omega, line.density, left=0.0, right=0.0)
+        total += (weights / weights.sum()) @ seen
         return total
     for share, shift, width in _lines(work):
         total += share * line_density(

@@ -14,7 +14,7 @@ import pytest
 from scipy import integrate, special, stats
 
 from explorer.domain import InputError
-from explorer.measured import engine
+from explorer.measured import minos
 from explorer.measured.data import Coincidences, DataError, Decay, Estimate, Spectrum
 from explorer.measured.decay import DecayFit, fit_decay, fit_decay_steps
 from explorer.measured.decay_model import Convolved, response_shares, tail_bins
@@ -196,7 +196,7 @@ def test_a_line_holds_its_area_and_its_width() -> None:
     assert omega[0] - omega[1] == pytest.approx(width, rel=2e-3)
 
 
-@pytest.mark.parametrize("fast, slow", [(6e-9, 5e-9), (1e-9, 9e-9), (9e-9, 1e-9), (4e-9, 0.0)])
+@pytest.mark.parametrize(("fast", "slow"), [(6e-9, 5e-9), (1e-9, 9e-9), (9e-9, 1e-9), (4e-9, 0.0)])
 def test_the_width_of_a_voigt_line(fast: float, slow: float) -> None:
     found = total_width(fast, slow, 640e-9)
     approximate = 0.5346 * fast + math.sqrt(0.2166 * fast**2 + slow**2)
@@ -213,7 +213,7 @@ def test_minos_and_profiles_by_scoring_agree(monkeypatch: pytest.MonkeyPatch) ->
     data = truth.spectrum(seeded(7), 2e4, ((640e-9, 6e-9, 1.0),), 5e-9)
     found = []
     for points in (0, 10**9):
-        monkeypatch.setattr(engine, "MINOS_WORK", points)
+        monkeypatch.setattr(minos, "MINOS_WORK", points)
         found.append(fit_spectrum(data))
     for name in ("centre", "fast_linewidth", "slow_linewidth", "background", "total_fwhm"):
         one, other = (getattr(fit, name) for fit in found)

@@ -74,9 +74,7 @@ WIDTHS: dict[str, tuple[Callable[[Any], Estimate], float]] = {
 def kinds() -> dict[str, Kind]:
     measured = response()
     return {
-        "decay, tail": Kind(
-            lambda rng, total: truth.decay(rng, total), fit_decay, {"lifetime": (lifetime, 3e-9)}
-        ),
+        "decay, tail": Kind(truth.decay, fit_decay, {"lifetime": (lifetime, 3e-9)}),
         "decay, response": Kind(
             lambda rng, total: truth.decay(rng, total, response=0.3e-9),
             lambda data: fit_decay(data, measured),
@@ -133,7 +131,7 @@ def kinds() -> dict[str, Kind]:
         ),
         "g2, pulsed, background": Kind(
             lambda rng, total: truth.pulsed(rng, total, 0.3, background=0.2),
-            lambda data: fit_g2(data, jitter=0.5e-9),
+            lambda data: fit_g2(data, jitter=0.5e-9, period=50e-9),
             {"g2": (g2, 0.3), "decay": (named("decay_time"), 3e-9)},
         ),
         "g2, continuous": Kind(

@@ -17,23 +17,14 @@ import numpy as np
 
 from ..domain import InputError, finite_number
 from .data import DataError, Estimate
+from .minos import confirmed, interval, sigmas_of
 from .noise import Array, Noise
-from .scoring import ENOUGH, Problem, covariance, profile_end, score_steps
+from .scoring import ENOUGH, Problem, covariance, score_steps
 
 Result = TypeVar("Result")
 
-#: Model evaluations of one slice of Migrad; fewer where there are many points.
-SLICE = 150
-
-#: MINOS runs at a stretch; where points times the square of the parameters exceed this, profiles by scoring, which can
-#: be had in slices, take its place.
-MINOS_WORK = 30_000
-
 #: Once more intervals than this have an end that was not found, the others are not searched for.
 MOST_UNSURE = 2
-
-#: A limit further off than this, in steps, is kept from Minuit, whose transformation loses digits there.
-DISTANT = 200.0
 
 
 @dataclass(frozen=True)
@@ -74,7 +65,7 @@ class Fit:
 
     def normal(self, name: str, level: float) -> Estimate:
         """A parameter with an interval from its standard error."""
-        value, half = self[name], _sigmas(level, None) * self.error(name)
+        value, half = self[name], sigmas_of(level, None) * self.error(name)
         return Estimate(value, value - half, value + half)
 
     def error(self, name: str) -> float:
@@ -175,12 +166,12 @@ def fit_steps(
     place = yield from scaled.begun(200)
     scaled = scaled.sized(place)
     problem, names, steps = scaled.problem, scaled.names, scaled.steps
-    minuit, place, valid = yield from _confirmed(problem, place, names)
+    minuit, place, valid = yield from confirmed(problem, place, names)
     touching = problem.touching(place)
     spread = covariance(problem, place, ~touching)
     expected = problem.model(place)
     deviance, degrees = noise.deviance(expected), noise.values.size - len(names)
-    sigmas = _sigmas(level, degrees if noise.even else None)
+    sigmas = sigmas_of(level, degrees if noise.even else None)
     estimates: dict[str, Estimate] = {}
     unsure: set[str] = set()
     for name in wanted:
@@ -189,7 +180,7 @@ def fit_steps(
             half = sigmas * math.sqrt(spread[index, index])
             ends, sure = (place[index] - half, place[index] + half), False
         else:
-            ends, sure = yield from _interval(problem, minuit, place, index, sigmas, spread)
+            ends, sure = yield from interval(problem, minuit, place, index, sigmas, spread)
         estimates[name] = scaled.estimate(index, place, ends)
         if not sure:
             unsure.add(name)
@@ -206,70 +197,3 @@ def fit_steps(
         frozenset(unsure),
         valid,
     )
-
-
-def _sigmas(level: float, degrees: int | None) -> float:
-    """Half the width of an interval in standard errors: normal, or Student's where noise is even."""
-    from scipy import special
-
-    if degrees is None:
-        return float(special.ndtri((1 + level) / 2))
-    return float(special.stdtrit(degrees, (1 + level) / 2))
-
-
-def _confirmed(
-    problem: Problem, place: Array, names: tuple[str, ...]
-) -> Generator[None, None, tuple[Any, Array, bool]]:
-    """Migrad from where scoring came to rest, in slices, then scoring again for the last digits."""
-    from iminuit import Minuit
-
-    minuit = Minuit(lambda place: min(problem.objective(place), 1e30), place, name=names)
-    free = np.ones(place.size, dtype=bool)
-    minuit.errordef, minuit.strategy, minuit.print_level = 1.0, 1, 0
-    minuit.limits = [
-        (None if low < -DISTANT else low, None if high > DISTANT else high)
-        for low, high in zip(problem.low, problem.high, strict=True)
-    ]
-    error = np.sqrt(np.diag(covariance(problem, place, free & ~problem.touching(place))))
-    minuit.errors = np.clip(np.where(error > 0, error, 0.1), 1e-6, 10.0)
-    calls = max(SLICE, 600_000 // problem.noise.values.size)
-    for turn in range(10):
-        yield None
-        minuit.migrad(ncall=calls * 2 ** max(0, turn - 4), iterate=1)
-        if minuit.fmin is None or not minuit.fmin.has_reached_call_limit:
-            break
-    found = np.clip(np.array(minuit.values), problem.low, problem.high)
-    better = problem.objective(found) < problem.objective(place) - 1e-9
-    best = yield from score_steps(problem, found if better else place, free, damping=1e-6, most=20)
-    return minuit, best, bool(minuit.valid)
-
-
-def _interval(
-    problem: Problem, minuit: Any, place: Array, index: int, sigmas: float, spread: Array
-) -> Generator[None, None, tuple[tuple[float, float], bool]]:
-    """Both ends of the interval of one parameter, scaled, and whether both are sure.
-
-    spread: scaled covariance, (k, k).
-    """
-    yield None
-    work = problem.noise.values.size * place.size**2
-    if minuit.valid and work <= MINOS_WORK and not problem.touching(place).any():
-        from scipy import special
-
-        asked = sigmas if sigmas >= 1 else float(special.chdtr(1, sigmas**2))
-        minuit.minos(minuit.parameters[index], cl=asked)
-        merror = minuit.merrors[minuit.parameters[index]]
-        if merror.is_valid:
-            middle = minuit.values[index]
-            return (middle + merror.lower, middle + merror.upper), True
-    ends, sure = [], True
-    variance = spread[index, index]
-    guess = min(max(math.sqrt(variance), 1e-6), 1e3) if variance > 0 else 0.1
-    direction = spread[index] / variance if variance > 0 else np.zeros(place.size)
-    for sign in (-1.0, 1.0):
-        end, found = yield from profile_end(
-            problem, place, index, direction, sigmas**2, sign * sigmas * guess
-        )
-        ends.append(end)
-        sure = sure and found
-    return (ends[0], ends[1]), sure

@@ -19,7 +19,7 @@ def found_period(data: Coincidences, full: Array) -> float:
     alike = np.fft.irfft(power, size)[: full.size]
     lags = np.arange(full.size)
     alike = alike / np.maximum(full.size - lags, 1)
-    usable = alike[: int(0.75 * full.size)]
+    usable = alike[: full.size // 2]
     falling = np.flatnonzero(usable < 0)
     if falling.size == 0:
         raise DataError("no period of pulses can be seen: give the period", data.name)

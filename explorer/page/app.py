@@ -24,6 +24,7 @@ from .panels.map import MapPanel
 from .panels.measured import MeasuredPanel
 from .panels.search import SearchPanel
 from .panels.shortlist import ShortlistPanel
+from .panels.steps import StepsPanel
 from .panels.values import ValuesPanel
 from .panels.wanted import WantedPanel
 from .sheets import Sheets
@@ -61,7 +62,7 @@ class Explorer(Box):
         super().__init__(
             [
                 style,
-                _seat("top", HeadlinePanel(state)),
+                _seat("top", HeadlinePanel(state), StepsPanel(state)),
                 _seat(
                     "left",
                     WantedPanel(state),

@@ -20,6 +20,7 @@ from ..question import Answer, Question
 from ..sampling import displaced, draws
 from ..scatter import Spread
 from ..unknowns import spread as drawn_at
+from .history import History
 from .proposal import Proposal, found_by_search, moved_to
 from .records import PLACE, as_published, placed, still_placed
 from .shortlist import Shortlist
@@ -39,6 +40,7 @@ class State:
 
     def __init__(self, question: Question) -> None:
         self.question = self._before = question
+        self.history = History()
         self.problems: dict[str, str] = {}
         self.seats: set[str] = set()
         self._cause = ""
@@ -159,6 +161,20 @@ class State:
         same = design == self.question.design
         self._go(self.question if same else replace(self.question, design=design), names, cause)
 
+    def undo(self) -> None:
+        """Go back one step, if there is one."""
+        self._visit(self.history.back(self.question))
+
+    def redo(self) -> None:
+        """Go forward one step that was gone back, if there is one."""
+        self._visit(self.history.forward(self.question))
+
+    def _visit(self, question: Question | None) -> None:
+        """Show a question of the history; what is ranked belongs to the view that is open."""
+        if question is not None:
+            self.propose(None)
+            self._go(replace(question, ranked=self.question.ranked), self.problems, step=False)
+
     def on_proposal(self, listener: Callable[[], None]) -> None:
         """Call a listener when `proposal` changed."""
         self._onlookers.append(listener)
@@ -189,12 +205,20 @@ class State:
         self.problems = {**self.problems, name: message}
         self._complain()
 
-    def _go(self, question: Question, names: Iterable[str], cause: str = "") -> None:
-        """Settle the problems of some names and of the page, and answer a question if it is new."""
+    def _go(
+        self, question: Question, names: Iterable[str], cause: str = "", step: bool = True
+    ) -> None:
+        """Settle the problems of some names and of the page, and answer a question if it is new.
+
+        step: whether it can be undone; another ranking cannot, since it shows a view, and no change.
+        """
+        names = tuple(names)
         kept = {name: text for name, text in self.problems.items() if name and name not in names}
         settled = kept != self.problems
         self.problems = kept
         if question != self.question:
+            if step and replace(question, ranked=self.question.ranked) != self.question:
+                self.history.note(self.question, " ".join(sorted(names)), time.monotonic())
             self._start(question, cause)
         if settled:  # after the answer, so that a field goes to its new value at once
             self._complain()
@@ -248,6 +272,7 @@ class State:
     def _return(self, message: str) -> None:
         """Go back to the question before the one that its map refused, and finish its answer."""
         before, cause = self._before, self._cause
+        self.history.forget(before)
         # Should the map refuse that one too, the last question with a whole map is left.
         self.question = self._whole.question
         if self.answer.whole and not self.answer.rest and self.answer.question == before:

@@ -13,11 +13,10 @@ numbers from one half plane. It is followed on even lattices of both; so is the 
 """
 
 from collections.abc import Callable
-from functools import lru_cache
+from functools import cache, lru_cache
 from typing import NamedTuple
 
 import numpy as np
-from numpy.lib.stride_tricks import sliding_window_view
 from numpy.typing import ArrayLike, NDArray
 
 from .lattice import POINTS, interpolated, located
@@ -45,9 +44,15 @@ LEAST = 1e-300
 Place = tuple[float, float, float, float]  # detuning, deviation, edges of the filter [rad/s]
 
 
-#: 1/(1+cO) against log(cO) on the lattice of overlaps times the lattice of strengths.
-_REACH = 1024
-_KERNEL = 1 / (1 + np.exp(np.arange(-_REACH, _REACH + 1) * STRENGTHS))
+#: First and last point of the lattices of overlaps and of strengths, whole blocks of the latter.
+_OVERLAPS, _POINTS = (-388, 12), (-3 * BLOCK, 9 * BLOCK)
+
+
+@cache
+def _kernel() -> Floats:
+    """1/(1+cO) for every overlap (rows) and every strength of the lattices."""
+    total = np.add.outer(np.arange(*_OVERLAPS), np.arange(*_POINTS))
+    return np.asarray(1 / (1 + np.exp(total * STRENGTHS)))
 
 
 class _Sums(NamedTuple):
@@ -63,12 +68,11 @@ class _Sums(NamedTuple):
         weights = self.weights * np.exp(lattice * STRENGTHS)
         other = self.passed if filtered else self.weights
         found = np.empty((SHARED, len(blocks) * BLOCK))
-        length = max(BLOCK, UNTHREADED // self.weights.size)
-        for part in parts(found.shape[1], length):
+        rows = slice(self.lowest - _OVERLAPS[0], self.lowest - _OVERLAPS[0] + lattice.size)
+        start = blocks[0] * BLOCK - _POINTS[0]
+        for part in parts(found.shape[1], max(BLOCK, UNTHREADED // self.weights.size)):
             columns = found[:, part]
-            first = _REACH + self.lowest + blocks[0] * BLOCK + part.start
-            window = _KERNEL[first : first + lattice.size + columns.shape[1] - 1]
-            kernel = np.ascontiguousarray(sliding_window_view(window, columns.shape[1]))
+            kernel = _kernel()[rows, start + part.start :][:, : columns.shape[1]]
             known, compared = weights @ kernel, other @ kernel
             columns[:] = np.maximum(compared, LEAST) / known if filtered else known / compared
         return np.log(found)
@@ -180,7 +184,7 @@ def wandering_overlap(
 
     def one(place: Place, kappa: Floats, strength: Floats) -> Floats:
         if place[1] == 0:
-            return still_overlap(line, -place[0], kappa) + 0 * strength
+            return still_overlap(line, -place[0], kappa)
         return _average(line, place, False).at(kappa, strength)
 
     return _each_place(one, (detuning, sigma, 0.0, 0.0), kappa, strength)
@@ -206,7 +210,7 @@ def wandering_window(
         if sigma > 0:
             return _average(line, place, True).at(kappa, strength)
         passed = still_window(line, -detuning, kappa, lower - detuning, upper - detuning)
-        return passed / still_overlap(line, -detuning, kappa) + 0 * strength
+        return passed / still_overlap(line, -detuning, kappa)
 
     return _each_place(one, (detuning, sigma, lower, upper), kappa, strength)
 

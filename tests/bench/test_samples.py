@@ -36,11 +36,14 @@ STEPS = {
 }
 
 
-def measured() -> Samples:
-    """A line of 8 nm with a phonon wing, 4000 samples over 120 nm, counting noise from a seed."""
+def measured(seed: int) -> Samples:
+    """A line of 8 nm with a phonon wing, 4000 samples over 120 nm, with counting noise.
+
+    Another seed is another spectrum, so that no case finds the tables of the one before.
+    """
     offsets = np.linspace(-60e-9, 60e-9, 4000)
     shape = 1 / (1 + (offsets / 4e-9) ** 2) + 0.2 / (1 + ((offsets - 15e-9) / 8e-9) ** 2)
-    return Samples(offsets, np.random.default_rng(41).poisson(1e4 * shape))
+    return Samples(offsets, np.random.default_rng(seed).poisson(1e4 * shape))
 
 
 def question(spectrum: Samples | None, slow: float, quality: float) -> Question:
@@ -89,7 +92,7 @@ def stepped(kinds: dict[str, Question], name: str, factor: float) -> dict[str, l
 def test_steps(slow: float, quality: float, capsys: pytest.CaptureFixture[str]) -> None:
     kinds = {
         "line": question(None, slow, quality),
-        "samples": question(measured(), slow, quality),
+        "samples": question(measured(int(quality + 1e9 * slow)), slow, quality),
     }
     lines = [f"\nslow width {slow * 1e9:g} nm, Q {quality:g}: line / samples [ms], ratio"]
     lines.append(f"{'step of':22}" + "".join(f"{stage:>26}" for stage in STAGES))
