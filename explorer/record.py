@@ -107,13 +107,11 @@ def _sources(design: Design) -> Json:
     return {key: known[key].text for key in sorted(keys) if key in known}
 
 
-def record_of(design: Design) -> Json:
-    """The record of a design as a JSON object; numbers are exact decimals (see `exact`)."""
+def given_of(design: Design) -> Json:
+    """The part of a record that was given and not worked out, as a JSON object."""
     return {
         "format": FORMAT,
         "version": VERSION,
-        "tool": {"name": "explorer", "version": __version__},
-        "saved": datetime.now(UTC).isoformat(timespec="seconds"),
         "name": design.name,
         "note": design.note,
         "decision": {
@@ -126,7 +124,7 @@ def record_of(design: Design) -> Json:
             "resonator": design.resonator,
             "optic": design.optic,
         },
-        "inputs": _inputs(design),
+        "inputs": {"given": _inputs(design)["given"]},
         "requirements": [_requirement(entry) for entry in design.requirements],
         "scatter": {name: _spread(name, spread) for name, spread in design.scatter.items()},
         "correlation": {pair: number_in(value, "1") for pair, value in design.correlation.items()},
@@ -143,11 +141,26 @@ def record_of(design: Design) -> Json:
             for name, origin in design.origins.items()
         },
         "data": dict(design.data),
+        **({"measured": written_built(design)} if design.built else {}),
+    }
+
+
+def record_of(design: Design) -> Json:
+    """The record of a design as a JSON object; numbers are exact decimals (see `exact`)."""
+    given = given_of(design)
+    built = {"measured": given.pop("measured")} if design.built else {}
+    return {
+        "format": given.pop("format"),
+        "version": given.pop("version"),
+        "tool": {"name": "explorer", "version": __version__},
+        "saved": datetime.now(UTC).isoformat(timespec="seconds"),
+        **given,
+        "inputs": _inputs(design),
         "outcome": _outcome(design),
         "budget": _budget(design),
         **_devices(design),
         "headroom": _headroom(design),
-        **({"measured": written_built(design)} if design.built else {}),
+        **built,
         "cautions": _cautions(design),
         "sources": _sources(design),
     }
@@ -253,6 +266,11 @@ def design_from(content: bytes, name: str = "the record") -> Design:
     found = problems(record)
     if found:
         raise RecordError(f"{name} is no design record: {found}")
+    return design_of(record, name)
+
+
+def design_of(record: Json, name: str) -> Design:
+    """The design that the given part of a checked record says. Raises RecordError."""
     try:
         return _design(record)
     except (InputError, WholeError, RecordError) as error:

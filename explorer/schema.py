@@ -22,6 +22,7 @@ from .units import EXPONENTS, si_unit
 from .whole import MOST_SAMPLES, Lines, Pattern
 
 FORMAT = "emitter and resonator design"
+PAGE_FORMAT = "emitter and resonator page"
 VERSION = 1
 
 #: In place of a line's width: it is the point's own fast linewidth.
@@ -254,6 +255,51 @@ def schema() -> Json:
     }
 
 
+#: Parts of a record that are worked out, and not needed to bring a design back.
+WORKED_OUT = ("tool", "saved", "outcome", "budget", "cautions", "sources")
+
+
+@cache
+def page_schema() -> Json:
+    """The schema of what a page keeps in the browser: the question, and the designs of the shortlist."""
+    whole = schema()
+    given = {name: part for name, part in whole["properties"].items() if name not in WORKED_OUT}
+    required = [name for name in whole["required"] if name not in WORKED_OUT]
+    given["inputs"] = _object({"given": whole["properties"]["inputs"]["properties"]["given"]})
+    design = {"type": "object", "properties": given, "required": required}
+    axis = _object(
+        {
+            "input": {"enum": [row.name for row in INPUTS.values() if not row.whole]},
+            "low": _ANY_NUMBER,
+            "high": _ANY_NUMBER,
+            "log": {"type": "boolean"},
+        }
+    )
+    shown = _object(
+        {
+            "quantity": _TEXT,
+            "x": axis,
+            "y": axis,
+            "layers": {"type": "array", "items": _TEXT, "maxItems": 20},
+            "cut": {"type": "array", "items": _TEXT, "maxItems": 2},
+        }
+    )
+    return {
+        **_object(
+            {
+                "format": {"const": PAGE_FORMAT},
+                "version": {"const": VERSION},
+                "design": {**design, "additionalProperties": False},
+                "shown": shown,
+                "kept": _object(
+                    {letter: {**design, "additionalProperties": False} for letter in "ABCD"}, []
+                ),
+            }
+        ),
+        "$defs": _families(),
+    }
+
+
 def shipped() -> Json:
     """The schema as shipped beside the data."""
     text = files("explorer").joinpath("data/design.schema.json").read_text(encoding="utf-8")
@@ -272,11 +318,14 @@ _KINDS = {
 }
 
 
-def problems(record: Any) -> str:
-    """The most telling problem of a record against the schema in one sentence; '' if none."""
+def problems(record: Any, page: bool = False) -> str:
+    """The most telling problem of a record against the schema in one sentence; '' if none.
+
+    page: whether it is what a page keeps, and not the record of a design.
+    """
     from jsonschema import Draft202012Validator
 
-    errors = islice(_validator(Draft202012Validator).iter_errors(record), ENOUGH)
+    errors = islice(_validator(Draft202012Validator, page).iter_errors(record), ENOUGH)
     worst = min(errors, key=lambda error: len(error.absolute_path), default=None)
     if worst is None:
         return ""
@@ -331,7 +380,7 @@ def _in_words(error: Any) -> str:
 
 
 @cache
-def _validator(kind: Any) -> Any:
+def _validator(kind: Any, page: bool) -> Any:
     from decimal import Decimal
 
     from jsonschema import validators
@@ -340,7 +389,8 @@ def _validator(kind: Any) -> Any:
         return isinstance(value, int | float | Decimal) and not isinstance(value, bool)
 
     extended: Any = validators.extend  # untyped in its stubs
-    return extended(kind, type_checker=kind.TYPE_CHECKER.redefine("number", is_number))(schema())
+    checked = extended(kind, type_checker=kind.TYPE_CHECKER.redefine("number", is_number))
+    return checked(page_schema() if page else schema())
 
 
 def write() -> None:

@@ -156,7 +156,7 @@ def continuous(
     g2: float,
     *,
     signal_share: float = 1.0,
-    decay_time: float = 6e-9,
+    decay_time: float = 8e-9,
     jitter: float = 1e-9,
 ) -> Coincidences:
     """Delays of a continuous source: g² of the emitter, and flat accidental counts.

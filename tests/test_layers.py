@@ -31,6 +31,7 @@ LAYERS = (
     ("schema",),
     ("record_parts",),
     ("record", "scenario"),
+    ("kept",),
     ("__init__", "sweep_file"),
     ("serve", "sweep_command"),
     ("__main__",),

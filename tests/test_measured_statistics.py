@@ -137,12 +137,12 @@ def kinds() -> dict[str, Kind]:
         "g2, continuous": Kind(
             lambda rng, total: truth.continuous(rng, total, 0.3),
             lambda data: fit_g2(data, pumping="continuous", jitter=1e-9),
-            {"g2": (g2, 0.3), "decay": (named("decay_time"), 6e-9)},
+            {"g2": (g2, 0.3), "decay": (named("decay_time"), 8e-9)},
         ),
         "g2, continuous, background": Kind(
             lambda rng, total: truth.continuous(rng, total, 0.2, signal_share=0.9),
             lambda data: fit_g2(data, pumping="continuous", jitter=1e-9, signal_share=0.9),
-            {"g2": (named("emitter_g2_zero"), 0.2), "decay": (named("decay_time"), 6e-9)},
+            {"g2": (named("emitter_g2_zero"), 0.2), "decay": (named("decay_time"), 8e-9)},
         ),
     }
 

@@ -59,43 +59,51 @@ def prepared(
     data: Decay, response: Decay | None, period: float | None, start: float | None
 ) -> Work:
     """The bins to fit and their model."""
-    numbers, full = bin_numbers(data), full_counts(data)
     if np.sum(data.counts) < FEWEST:
         raise DataError(f"{np.sum(data.counts):g} counts are too few for a lifetime", data.name)
-    first = 0 if response is not None else tail_start(full)
-    if start is not None:
-        first = int(np.ceil((start - data.times[0]) / data.width - 1e-6))
-    use = numbers >= first
-    notes = []
-    if period is not None:
-        late = numbers * data.width >= period * (1 + 1e-9) + max(first, 0) * data.width
-        if np.any(late & use):
-            notes.append("bins more than a period after the first are left out")
-        use &= ~late
-    where = np.flatnonzero(use)
-    if where.size < 5:
-        raise DataError("fewer than five bins follow the start of the fit", data.name)
-    bin_of, counts = numbers[where], data.counts[where]
+    where, notes = _fitted_bins(data, response is not None, period, start)
+    bin_of = bin_numbers(data)[where]
+    count = int(bin_of[-1] - bin_of[0]) + 1
     shared: dict[str, Any] = {
         "where": where,
-        "counts": counts,
+        "counts": data.counts[where],
         "width": data.width,
-        "span": float(bin_of[-1] - bin_of[0] + 1) * data.width,
+        "span": count * data.width,
         "counting": data.counting,
         "period": period,
         "convolved": response is not None,
     }
-    if response is None:
-        offset, count = bin_of - bin_of[0], int(bin_of[-1] - bin_of[0]) + 1
+    if response is not None:
+        return _with_response(data, response, shared, bin_of, notes)
 
-        def tail(lifetime: float, shift: float) -> Array:  # noqa: ARG001
-            shares = tail_bins(count=count, width=data.width, lifetime=lifetime)[offset]
-            # What earlier pulses left decays alike, so that they only raise the tail.
-            earlier = 1.0 if period is None else -np.expm1(-period / lifetime)
-            return np.asarray(shares / earlier)
+    def tail(lifetime: float, shift: float) -> Array:  # noqa: ARG001
+        shares = tail_bins(count=count, width=data.width, lifetime=lifetime)[bin_of - bin_of[0]]
+        # What earlier pulses left decays alike, so that they only raise the tail.
+        earlier = 1.0 if period is None else -np.expm1(-period / lifetime)
+        return np.asarray(shares / earlier)
 
-        return Work(bins=tail, notes=tuple(notes), **shared)
-    return _with_response(data, response, shared, bin_of, tuple(notes))
+    return Work(bins=tail, notes=notes, **shared)
+
+
+def _fitted_bins(
+    data: Decay, convolved: bool, period: float | None, start: float | None
+) -> tuple[NDArray[np.int64], tuple[str, ...]]:
+    """Indices of the bins that are fitted, and what to say of them."""
+    numbers = bin_numbers(data)
+    first = 0 if convolved else tail_start(full_counts(data))
+    if start is not None:
+        first = int(np.ceil((start - (data.times[0] - data.width / 2)) / data.width - 1e-6))
+    use = numbers >= first
+    notes: tuple[str, ...] = ()
+    if period is not None:
+        late = (numbers - max(first, 0)) * data.width >= period * (1 + 1e-9)
+        if np.any(late):
+            notes = ("bins more than a period after the first are left out",)
+        use &= ~late
+    where = np.flatnonzero(use)
+    if where.size < 5:
+        raise DataError("fewer than five bins follow the start of the fit", data.name)
+    return where, notes
 
 
 def _with_response(

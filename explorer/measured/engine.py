@@ -97,6 +97,7 @@ class _Scaled:
     names: tuple[str, ...]
     origin: Array
     steps: Array
+    limits: Array
     problem: Problem
 
     @classmethod
@@ -109,10 +110,15 @@ class _Scaled:
             )
         steps = np.array([one.step for one in parameters])
         origin = np.array([one.start for one in parameters])
-        low = (np.array([one.low for one in parameters]) - origin) / steps
-        high = (np.array([one.high for one in parameters]) - origin) / steps
-        problem = Problem(lambda place: model(origin + steps * place), noise, low, high)
-        return cls(tuple(one.name for one in parameters), origin, steps, problem)
+        limits = np.array([(one.low, one.high) for one in parameters])
+        low, high = (limits[:, 0] - origin) / steps, (limits[:, 1] - origin) / steps
+
+        def within(place: Array) -> Array:
+            """The model; rounding does not carry a parameter over its limit."""
+            return model(np.clip(origin + steps * place, limits[:, 0], limits[:, 1]))
+
+        problem = Problem(within, noise, low, high)
+        return cls(tuple(one.name for one in parameters), origin, steps, limits, problem)
 
     def begun(self, most: int, rough: bool = False) -> Generator[None, None, Array]:
         """Scoring from where the parameters start; rough: until steps hardly matter."""
@@ -134,10 +140,9 @@ class _Scaled:
 
     def estimate(self, index: int, place: Array, ends: tuple[float, float]) -> Estimate:
         """A value with its interval, unscaled."""
-        value, *scaled = (
-            float(self.origin[index] + self.steps[index] * one) for one in (place[index], *ends)
-        )
-        return Estimate(value, min(scaled[0], value), max(scaled[1], value))
+        three = self.origin[index] + self.steps[index] * np.array([ends[0], place[index], ends[1]])
+        low, value, high = np.clip(three, *self.limits[index]).tolist()
+        return Estimate(value, min(low, value), max(high, value))
 
 
 def sketch_steps(
@@ -146,7 +151,9 @@ def sketch_steps(
     """A fit by a few steps of scoring alone, in slices; returns the parameters and the deviance."""
     scaled = _Scaled.of(model, noise, parameters)
     place = yield from scaled.begun(most, rough=True)
-    return scaled.origin + scaled.steps * place, scaled.problem.objective(place)
+    values = scaled.origin + scaled.steps * place
+    values = np.clip(values, scaled.limits[:, 0], scaled.limits[:, 1])
+    return values, scaled.problem.objective(place)
 
 
 def fit_steps(
@@ -186,7 +193,7 @@ def fit_steps(
             unsure.add(name)
     return Fit(
         names,
-        scaled.origin + steps * place,
+        np.clip(scaled.origin + steps * place, scaled.limits[:, 0], scaled.limits[:, 1]),
         steps * np.sqrt(np.diag(spread)),
         spread * np.outer(steps, steps),
         expected,

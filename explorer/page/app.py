@@ -18,6 +18,7 @@ from .panels.devices import DevicesPanel
 from .panels.emitter import EmitterPanel
 from .panels.files import FilesPanel
 from .panels.headline import HeadlinePanel
+from .panels.keeper import KeeperPanel
 from .panels.keylink import KeyLinkPanel
 from .panels.limits import LimitsPanel
 from .panels.map import MapPanel
@@ -39,7 +40,11 @@ def _seat(name: str, *panels: Box) -> VBox:
 
 
 class Explorer(Box):
-    """The whole page for one question; `state` is what code talks to."""
+    """The whole page; `state` is what code talks to.
+
+    question: what it shows. Without one it shows what this browser kept of the last visit, and at a
+    first visit the demonstration.
+    """
 
     def __init__(self, question: Question | None = None) -> None:
         self.state = State(question or first_question())
@@ -57,7 +62,8 @@ class Explorer(Box):
         self.views = Views(
             {"light": light, "limits": [LimitsPanel(state)], "search": [SearchPanel(state)]}
         )
-        shelf = HBox([sheets.buttons, ShortlistPanel(state), FilesPanel(state)])
+        keeper = KeeperPanel(state, keeps=question is None)
+        shelf = HBox([sheets.buttons, ShortlistPanel(state), keeper, FilesPanel(state)])
         shelf.add_class("x-shelf")
         super().__init__(
             [

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 
 from ..catalogue import emitters, resonators
 from ..design import Design
@@ -39,6 +39,12 @@ class Shortlist:
         """Keep a design no longer."""
         if letter in self.kept:
             self.kept = {one: design for one, design in self.kept.items() if one != letter}
+            self._tell()
+
+    def replace(self, kept: Mapping[str, Design]) -> None:
+        """Keep these designs in place of all others."""
+        if dict(kept) != self.kept:
+            self.kept = {letter: kept[letter] for letter in sorted(kept) if letter in LETTERS}
             self._tell()
 
     @property

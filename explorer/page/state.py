@@ -16,6 +16,7 @@ from ..answers import BAND, SLICE, Answers
 from ..combine import PARTS, with_record
 from ..design import Design, Unknown
 from ..domain import InputError
+from ..kept import Page
 from ..question import Answer, Question
 from ..sampling import displaced, draws
 from ..scatter import Spread
@@ -174,6 +175,14 @@ class State:
         if question is not None:
             self.propose(None)
             self._go(replace(question, ranked=self.question.ranked), self.problems, step=False)
+
+    def restore(self, page: Page) -> None:
+        """Show a question and a shortlist that were kept; there is no step back from it."""
+        self.propose(None)
+        self.shortlist.replace(page.kept)
+        self._go(page.question, self.problems, step=False)
+        self.history = History()
+        self._tell(self.answer)
 
     def on_proposal(self, listener: Callable[[], None]) -> None:
         """Call a listener when `proposal` changed."""

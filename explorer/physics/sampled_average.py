@@ -26,6 +26,7 @@ from .sampled_shifts import (
     LINEWIDTHS,
     SHARED,
     STRENGTHS,
+    Places,
     column,
     deviation_level,
     largest_deviation,
@@ -111,8 +112,8 @@ class Average:
     def _table(self, kappa: Floats, blocks: range) -> Floats:
         """Logarithms of the average for some linewidths (rows), at the strengths of some blocks."""
         first, weights = located(np.log(kappa) / LINEWIDTHS)
-        ends = {*(first // SHARED).tolist(), *((first + POINTS - 1) // SHARED).tolist()}
-        levels = sorted({*ends, *((first + SHARED) // SHARED).tolist()})
+        steps = {*range(0, POINTS, SHARED), POINTS - 1}
+        levels = sorted({level for n in steps for level in ((first + n) // SHARED).tolist()})
         known = np.concatenate([self._row(level, blocks) for level in levels])
         start = (blocks[0] - self._blocks[0]) * BLOCK
         known = known[:, start : start + len(blocks) * BLOCK]
@@ -135,9 +136,10 @@ class Average:
         return self._known[level]
 
     def _summed(self, level: int) -> _Sums:
-        shared = column(self._line, level, self._deviations)
+        places = Places.of(self._line, level, self._deviations, self._filtered)
+        shared = column(self._line, level, places)
         reach = REACH * largest_deviation(self._deviations)  # the same for all of them
-        ends = [shared.places.number(side * reach - self._offset) for side in (-1, 1)]
+        ends = [places.number(side * reach - self._offset) for side in (-1, 1)]
         first, last = int(np.floor(ends[0])), int(np.ceil(ends[1]))
         known = shared.overlaps.between(first, last)
         place, apart = known[:2]
@@ -160,7 +162,7 @@ class Average:
         sums = put(weights)
         if not self._filtered:
             return _Sums(lowest, sums, sums)
-        inside = passing(self._line, level, self._deviations, self._window)
+        inside = passing(self._line, level, places, self._window)
         return _Sums(lowest, sums, put(weights * inside.between(first, last)))
 
 

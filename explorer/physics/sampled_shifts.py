@@ -6,9 +6,9 @@ deviation moves them: a Gaussian over them only changes its weights. So what is 
 all detunings, all deviations of one octave's half, both transitions, and every strength of coupling.
 
 The places do not follow the samples, whose errors average out: at least five a sample or six a
-linewidth about the peak, and at most 768 over 18 deviations. Seen: 1e-7 for a resonator wider than two
-samples; for a narrower one 2e-5 on a smooth spectrum and 1e-3 with 3 % of noise at a deviation of 40
-samples. Nor do they follow a filter: where the spectrum is over a hundred times narrower than its
+linewidth about the peak, and at most 768 over 18 deviations. Seen: 1e-9 for a resonator wider than two
+samples; for a narrower one 1e-5 on a smooth spectrum, 1e-4 with 3 % of noise up to a deviation of 40
+samples and 3e-3 beyond 100; 1e-2 where a single sample stands out of nothing. Nor do they follow a filter: where the spectrum is over a hundred times narrower than its
 wandering, the light inside is right to 1e-2 of the whole only.
 """
 
@@ -25,15 +25,16 @@ from .sampled_pieces import Floats
 from .wandering import REACH, SMOOTH
 
 #: Step of the lattice of linewidths in log κ, and how many of its columns share their places.
-LINEWIDTHS, SHARED = 0.15, 4
+LINEWIDTHS, SHARED = 0.125, 5
 #: Step of the lattices of overlaps and of strengths, in their logarithms.
 STRENGTHS = 0.2
 #: Lowest overlap of the lattice.
 LOWEST = 1e-33
-#: Fewest and most places over 18 deviations, and how many are worked out at a time.
-FEWEST, MOST, BLOCK = 96, 768, 64
+#: Fewest places over 18 deviations, without and with a filter, the most, and how many are worked out
+#: at a time.
+FEWEST, MOST, BLOCK = (64, 256), 768, 64
 #: Most places that are kept: a detuning that moves on and on leaves the first ones behind.
-LONGEST = 8 * MOST
+LONGEST = 3 * MOST
 
 
 def deviation_level(sigma: float) -> int:
@@ -59,7 +60,7 @@ class Places:
     spacing: float
 
     @classmethod
-    def of(cls, line: SampledLine, level: int, deviations: int) -> "Places":
+    def of(cls, line: SampledLine, level: int, deviations: int, filtered: bool) -> "Places":
         """level: number of a group of SHARED linewidths; deviations: of `deviation_level`."""
         left, right = line.half_maximum
         narrow, wide = np.exp(np.array([level, level + 1]) * (SHARED * LINEWIDTHS))
@@ -69,7 +70,7 @@ class Places:
         ratio = feature / (SMOOTH * sigma)
         ends = 2 * (np.arcsinh(REACH * sigma / feature) + ratio * REACH * sigma / feature)
         wanted = step / feature * (1 + ratio)
-        spacing = np.clip(wanted, ends / MOST, ends / FEWEST)
+        spacing = np.clip(wanted, ends / MOST, ends / FEWEST[filtered])
         return cls((left + right) / 2, feature, float(ratio), float(spacing))
 
     def number(self, place: float) -> float:
@@ -133,15 +134,13 @@ class Column:
     points around its logarithm begin, and their weights.
     """
 
-    places: Places
     kappa: Floats
     overlaps: Growing  # place, distance, beginnings (SHARED), weights (POINTS · SHARED)
 
 
-@lru_cache(maxsize=512)
-def column(line: SampledLine, level: int, deviations: int) -> Column:
-    """The column of a group of linewidths, for the deviations of half an octave."""
-    places = Places.of(line, level, deviations)
+@lru_cache(maxsize=256)
+def column(line: SampledLine, level: int, places: Places) -> Column:
+    """The column of a group of linewidths at some places."""
     kappa = np.exp((level * SHARED + np.arange(SHARED)) * LINEWIDTHS)
 
     def make(numbers: Floats) -> Floats:
@@ -152,19 +151,19 @@ def column(line: SampledLine, level: int, deviations: int) -> Column:
         rows = (first.reshape(SHARED, -1), weights.reshape(POINTS * SHARED, -1))
         return np.concatenate([[place, apart], *rows])
 
-    return Column(places, kappa, Growing(make))
+    return Column(kappa, Growing(make))
 
 
 @lru_cache(maxsize=256)
-def passing(line: SampledLine, level: int, deviations: int, window: tuple[float, float]) -> Growing:
+def passing(line: SampledLine, level: int, places: Places, window: tuple[float, float]) -> Growing:
     """Of the same places and linewidths the overlap (SHARED, n) inside a filter.
 
     window: its edges from the resonance [rad/s].
     """
-    shared = column(line, level, deviations)
+    shared = column(line, level, places)
 
     def make(numbers: Floats) -> Floats:
-        place, _ = shared.places.at(numbers)
+        place, _ = places.at(numbers)
         return line.rows(_rows(place, shared.kappa, *window)).reshape(SHARED, -1)
 
     return Growing(make)
