@@ -84,18 +84,21 @@ def response(
     return binned(Decay, times, edges, rng.poisson(1e-5 * total, 1000))
 
 
+def angular(width: float, centre: float) -> float:
+    """FWHM in angular frequency of one in wavelength: 2πcΔ/(λ² − Δ²/4)."""
+    return 2 * np.pi * LIGHT * width / (centre**2 - width**2 / 4)
+
+
 def line_waves(
-    rng: np.random.Generator, number: int, line: tuple[float, float, float], slow: float
+    rng: np.random.Generator, number: int, line: tuple[float, float, float], wander: float
 ) -> Array:
-    """Wavelengths of photons of one line: a random frequency about the centre."""
-    centre, fast, wander = line[0], line[1], slow
-    omega0 = 2 * np.pi * LIGHT / centre
+    """Wavelengths of photons of one line: a random frequency about the centre, which wanders.
 
-    def angular(width: float) -> float:
-        return 2 * np.pi * LIGHT * width / (centre**2 - width**2 / 4)
-
-    omega = omega0 + angular(fast) / 2 * rng.standard_cauchy(number)
-    omega = omega + angular(wander) / 2.3548200450309493 * rng.normal(size=number)
+    wander: angular FWHM, the same for all lines of an emitter, which it shifts as a whole.
+    """
+    centre, fast, _ = line
+    omega = 2 * np.pi * LIGHT / centre + angular(fast, centre) / 2 * rng.standard_cauchy(number)
+    omega = omega + wander / 2.3548200450309493 * rng.normal(size=number)
     return np.asarray(2 * np.pi * LIGHT / omega[omega > 0])
 
 
@@ -108,16 +111,18 @@ def spectrum(
     background: float = 0.1,
     dark: float = 0.0,
 ) -> Spectrum:
-    """Photons sorted into 400 narrow pixels. lines: (centre, fast width, share).
+    """Photons sorted into 400 narrow pixels. lines: (centre, fast width, share);
+    slow: at the first.
 
     background: share of the counts that is flat. dark: mean counts per pixel that were taken away
     again, so that the variance is larger than the counts.
     """
     edges = np.linspace(600e-9, 680e-9, 401)
     number = rng.poisson(total * (1 - background))
+    wander = angular(slow, lines[0][0])
     split = rng.multinomial(number, [line[2] for line in lines])
     waves = np.concatenate(
-        [line_waves(rng, int(n), line, slow) for n, line in zip(split, lines, strict=True)]
+        [line_waves(rng, int(n), line, wander) for n, line in zip(split, lines, strict=True)]
     )
     counts = np.histogram(waves, edges)[0].astype(float)
     counts += rng.poisson(total * background / 400 + dark, 400) - dark

@@ -31,7 +31,7 @@ LAYERS = (
     ("schema",),
     ("record_parts",),
     ("record", "scenario"),
-    ("kept",),
+    ("kept", "brief"),
     ("__init__", "sweep_file"),
     ("serve", "sweep_command"),
     ("__main__",),

@@ -112,12 +112,12 @@ def kinds() -> dict[str, Kind]:
             RICH,
         ),
         "spectrum, zero-phonon line and sideband": Kind(
-            lambda rng, total: truth.spectrum(rng, total, TWO_LINES, 1.5e-9),
+            lambda rng, total: truth.spectrum(rng, total, TWO_LINES, 2.5e-9),
             lambda data: fit_spectrum(data, sidebands=1),
             {
                 "centre": (named("centre"), 625e-9),
                 "fast": (named("fast_linewidth"), 2e-9),
-                "slow": (named("slow_linewidth"), 1.5e-9),
+                "slow": (named("slow_linewidth"), 2.5e-9),
                 "share": (lambda fit: fit.lines[0][0], 0.4),
                 "offset": (lambda fit: fit.lines[1][1], 20e-9),
                 "sideband": (lambda fit: fit.lines[1][2], 15e-9),
@@ -140,8 +140,8 @@ def kinds() -> dict[str, Kind]:
             {"g2": (g2, 0.3), "decay": (named("decay_time"), 8e-9)},
         ),
         "g2, continuous, background": Kind(
-            lambda rng, total: truth.continuous(rng, total, 0.2, signal_share=0.9),
-            lambda data: fit_g2(data, pumping="continuous", jitter=1e-9, signal_share=0.9),
+            lambda rng, total: truth.continuous(rng, total, 0.2, signal_share=0.95),
+            lambda data: fit_g2(data, pumping="continuous", jitter=1e-9, signal_share=0.95),
             {"g2": (named("emitter_g2_zero"), 0.2), "decay": (named("decay_time"), 8e-9)},
         ),
     }

@@ -16,6 +16,9 @@ from .noise import Noise
 #: Fewer coincidences than this at zero delay are said to be few.
 FEW = 20.0
 
+#: A dip that lowers the deviance of a flat level by less than this hardly stands out.
+HARDLY = 25.0
+
 WORDS = {
     "g2": "g²(0)",
     "area": "the height of the peaks",
@@ -42,7 +45,9 @@ def g2_cautions(
     """Sentences; none where all is well. jitter: standard deviation [s]."""
     told = common_cautions(fields, fit, WORDS)
     decay = math.exp(fit["decay"])
-    told += _pulsed(data, fit, decay, side) if pulsed else _continuous(data, fit, decay, jitter)
+    told += (
+        _pulsed(data, fit, decay, side) if pulsed else _continuous(data, fit, decay, jitter, noise)
+    )
     if "g2" in fit.at_limit:
         told.append("g²(0) came out at its limit of zero: take the upper end as a limit")
     if emitter.value < 0 <= fit["g2"]:
@@ -85,8 +90,13 @@ def _bunching(fit: Fit) -> list[str]:
     return []
 
 
-def _continuous(data: Coincidences, fit: Fit, decay: float, jitter: float) -> list[str]:
+def _continuous(
+    data: Coincidences, fit: Fit, decay: float, jitter: float, noise: Noise
+) -> list[str]:
     told = []
+    flat = noise.deviance(np.full(data.counts.shape, float(np.mean(data.counts))))
+    if flat - fit.deviance < HARDLY:
+        told.append("the dip hardly stands out of the noise: take g²(0) as a limit")
     near = np.abs(data.times - fit["centre"]) <= decay / 2
     central = float(np.sum(data.counts[near]))
     if central < FEW and data.counting:

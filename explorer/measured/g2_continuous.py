@@ -16,8 +16,8 @@ from .spectrum_model import strongest_box
 #: A dip stands out where it is this many standard deviations below the rest.
 CLEAR = 3.0
 
-#: The dip must lower the deviance of a flat level by this much: about three and a half standard deviations.
-TELLING = 12.0
+#: The dip must lower the deviance of a flat level by this much: three standard deviations.
+TELLING = 9.0
 
 
 def continuous_steps(

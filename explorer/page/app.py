@@ -14,6 +14,7 @@ from .panels.candidates import CandidatesPanel
 from .panels.cautions import CautionsPanel
 from .panels.colours import ColoursPanel
 from .panels.cut import CutPanel
+from .panels.decision import DecisionPanel
 from .panels.devices import DevicesPanel
 from .panels.emitter import EmitterPanel
 from .panels.files import FilesPanel
@@ -56,6 +57,7 @@ class Explorer(Box):
                 "Candidates": CandidatesPanel(state),
                 "Published devices": DevicesPanel(state),
                 "Measured data": MeasuredPanel(state),
+                "Decision": DecisionPanel(state),
             }
         )
         light = (BudgetPanel(state), AnglesPanel(state), ColoursPanel(state), CutPanel(state))

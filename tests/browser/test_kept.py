@@ -50,7 +50,7 @@ def test_a_reload_brings_everything_back(hands: Hands, served: Served) -> None:
     shown = hands.browser.run(
         "const s = document.querySelector('.panel-map .x-shown select'); return s.selectedOptions[0].text"
     )
-    assert shown == GAIN
+    assert str(shown).replace("\xa0", " ") == GAIN
     assert hands.browser.console_errors() == []
 
 

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from pathlib import Path
 from typing import Any
 
@@ -12,6 +11,7 @@ from ipywidgets import VBox
 
 from ...exact import RecordError
 from ...record import LARGEST, design_from, design_text
+from ..download import file_name
 from ..state import State
 
 
@@ -51,9 +51,3 @@ class FilesPanel(VBox):
                 self._state.refuse("", str(error))
                 return
             self._state.ask(design=design)
-
-
-def file_name(title: str) -> str:
-    """A file name made of a design's name."""
-    plain = re.sub(r"[^A-Za-z0-9]+", "-", title).strip("-").lower()[:60]
-    return f"{plain or 'design'}.json"
