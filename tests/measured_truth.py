@@ -111,10 +111,9 @@ def spectrum(
     background: float = 0.1,
     dark: float = 0.0,
 ) -> Spectrum:
-    """Photons sorted into 400 narrow pixels. lines: (centre, fast width, share);
-    slow: at the first.
+    """Photons sorted into 400 narrow pixels.
 
-    background: share of the counts that is flat. dark: mean counts per pixel that were taken away
+    lines: (centre, fast width, share). slow: FWHM at the first of them [m]. background: share of the counts that is flat. dark: mean counts per pixel that were taken away
     again, so that the variance is larger than the counts.
     """
     edges = np.linspace(600e-9, 680e-9, 401)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
+import anywidget
 from ipywidgets import HTML, Box, HBox, VBox
 
 from ..question import Question
@@ -13,6 +14,7 @@ from .panels.budget import BudgetPanel
 from .panels.candidates import CandidatesPanel
 from .panels.cautions import CautionsPanel
 from .panels.colours import ColoursPanel
+from .panels.compare import ComparePanel
 from .panels.cut import CutPanel
 from .panels.decision import DecisionPanel
 from .panels.devices import DevicesPanel
@@ -40,6 +42,12 @@ def _seat(name: str, *panels: Box) -> VBox:
     return box
 
 
+class Look(anywidget.AnyWidget):
+    """Light or dark, by a press; this browser remembers it. The kernel has no part in it."""
+
+    _esm = Path(__file__).parent / "look.js"
+
+
 class Explorer(Box):
     """The whole page; `state` is what code talks to.
 
@@ -62,21 +70,26 @@ class Explorer(Box):
         )
         light = (BudgetPanel(state), AnglesPanel(state), ColoursPanel(state), CutPanel(state))
         self.views = Views(
-            {"light": light, "limits": [LimitsPanel(state)], "search": [SearchPanel(state)]}
+            {
+                "light": light,
+                "compare": [ComparePanel(state)],
+                "limits": [LimitsPanel(state)],
+                "search": [SearchPanel(state)],
+            }
         )
         keeper = KeeperPanel(state, keeps=question is None)
-        shelf = HBox([sheets.buttons, ShortlistPanel(state), keeper, FilesPanel(state)])
+        shelf = HBox([sheets.buttons, ShortlistPanel(state), Look(), keeper, FilesPanel(state)])
         shelf.add_class("x-shelf")
         super().__init__(
             [
                 style,
-                _seat("top", HeadlinePanel(state), StepsPanel(state)),
+                _seat("top", HeadlinePanel(state)),
                 _seat(
                     "left",
                     WantedPanel(state),
                     KeyLinkPanel(state),
                     EmitterPanel(state),
-                    ValuesPanel(state),
+                    ValuesPanel(state, StepsPanel(state)),
                 ),
                 _seat("middle", MapPanel(state)),
                 _seat("right", self.views),

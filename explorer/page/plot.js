@@ -139,11 +139,13 @@ function render({ model, el }) {
   const name = () => canvas.setAttribute("aria-label", model.get("description"));
   const sizes = new ResizeObserver(redraw);
   sizes.observe(el);
+  window.addEventListener("explorer-look", redraw);
   model.on("change:packed", redraw);
   model.on("change:description", name);
   name();
   return () => {
     sizes.disconnect();
+    window.removeEventListener("explorer-look", redraw);
     model.off("change:packed", redraw);
     model.off("change:description", name);
   };

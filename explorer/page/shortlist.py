@@ -15,6 +15,7 @@ class Shortlist:
 
     def __init__(self) -> None:
         self.kept: dict[str, Design] = {}
+        self.deleted: list[tuple[str, Design]] = []  # the last one last
         self._listeners: list[Callable[[], None]] = []
 
     def on_change(self, listener: Callable[[], None]) -> None:
@@ -36,10 +37,38 @@ class Shortlist:
         return letter
 
     def drop(self, letter: str) -> None:
-        """Keep a design no longer."""
+        """Keep a design no longer; `bring_back` undoes it."""
         if letter in self.kept:
+            self.deleted.append((letter, self.kept[letter]))
             self.kept = {one: design for one, design in self.kept.items() if one != letter}
             self._tell()
+
+    def bring_back(self) -> None:
+        """Keep the design again that was dropped last, under its letter, or the first that is free."""
+        if not self.deleted or self.full:
+            return
+        letter, design = self.deleted.pop()
+        if letter in self.kept:
+            letter = next(one for one in LETTERS if one not in self.kept)
+        self.kept = dict(sorted({**self.kept, letter: design}.items()))
+        self._tell()
+
+    def exchange(self, letter: str, design: Design) -> None:
+        """Keep another design under a letter that is taken."""
+        if letter in self.kept and self.kept[letter] != design:
+            self.kept = {**self.kept, letter: design}
+            self._tell()
+
+    def move(self, letter: str, by: int) -> str:
+        """Change places with the next kept design, earlier (−1) or later (+1); gives the new letter."""
+        letters = list(self.kept)
+        place = letters.index(letter) + by if letter in letters else -1
+        if not 0 <= place < len(letters):
+            return letter
+        other = letters[place]
+        self.kept = {**self.kept, letter: self.kept[other], other: self.kept[letter]}
+        self._tell()
+        return other
 
     def replace(self, kept: Mapping[str, Design]) -> None:
         """Keep these designs in place of all others."""

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from ipywidgets import Button, Label, VBox
+from ipywidgets import Box, Button, HBox, Label, VBox
 
 from ...inputs import GROUPS, INPUTS
 from ..bind import row
@@ -53,11 +53,13 @@ class Group(VBox):
 
 
 class ValuesPanel(VBox):
-    """Main sliders and groups."""
+    """Main sliders and groups; `beside` the title stands what another panel brings."""
 
-    def __init__(self, state: State) -> None:
-        title = Label("Design")
-        title.add_class("x-title")
+    def __init__(self, state: State, *beside: Box) -> None:
+        words = Label("Design")
+        words.add_class("x-title")
+        title = HBox([words, *beside])
+        title.add_class("x-head")
         main = VBox([row(state, name) for name in MAIN])
         main.add_class("x-main")
         self.groups = {group: Group(state, group) for group in GROUPS}
