@@ -114,7 +114,7 @@ class Browser:
             files = [
                 file
                 for file in self.downloads.glob(pattern)
-                if file.suffix not in (".crdownload", ".tmp")
+                if file.suffix not in (".crdownload", ".tmp") and file.stat().st_size
             ]
             return max(files, key=lambda file: file.stat().st_mtime, default=None)
 

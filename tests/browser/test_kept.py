@@ -58,7 +58,7 @@ def test_a_closed_tab_loses_nothing(hands: Hands, served: Served) -> None:
     change(hands)
     driver = hands.browser.driver
     old = driver.current_window_handle
-    driver.switch_to.new_window("tab")
+    driver.switch_to.new_window("window")
     fresh = driver.current_window_handle
     driver.switch_to.window(old)
     driver.close()
@@ -73,8 +73,8 @@ def test_a_lost_kernel_loses_nothing(start_server: Callable[..., Served], browse
     hands = Hands(browser)
     hands.rest()
     change(hands)
-    for kernel in served.kernels():
-        kernel.kill()
+    # The page's own is the one that has worked most; others wait for the next visit.
+    max(served.kernels(), key=lambda kernel: sum(kernel.cpu_times()[:2])).kill()
     browser.open(served.url)
     browser.wait_until(lambda: number(hands) == "77")
     hands.rest()

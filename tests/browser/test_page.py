@@ -477,7 +477,8 @@ def test_the_main_job_is_seen_without_scrolling(hands, size) -> None:
         ".panel-headline p",
         ".explorer-map",
         ".panel-budget table",
-        ".x-button",
+        ".panel-files .x-button",
+        ".panel-keeper .x-button",
     ]
     assert hands.browser.run(WHOLLY_SEEN, [*wanted, *main, ".panel-wanted", ".panel-emitter"]) == []
     scrolled = hands.browser.run(
