@@ -4,10 +4,13 @@ import asyncio
 import time
 from collections.abc import Iterator
 from dataclasses import replace
+from typing import Any
 
+import comm
 import ipywidgets.widgets.widget as widgets
 import numpy as np
 import pytest
+from comm.base_comm import BaseComm
 from ipywidgets import Widget
 
 import explorer
@@ -967,3 +970,19 @@ def test_a_temperature_that_changes_nothing_says_so(page) -> None:
     assert page.state.answer.values["fast_linewidth"] < before
     page.state.give(fast_linewidth=1e-9)
     assert row.range.value == "no effect: the linewidth is given"
+
+
+def test_the_page_fits_between_kernel_and_server(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Their sockets hold 1000 messages on each side; what goes beyond is dropped where the server lags."""
+    sent: list[str] = []
+
+    class Counted(BaseComm):
+        def publish_msg(self, msg_type: str, *_: Any, **__: Any) -> None:
+            sent.append(msg_type)
+
+    monkeypatch.setattr(comm, "create_comm", Counted)
+    before = living()
+    Explorer()
+    assert "comm_open" in sent
+    assert len(sent) < 1600
+    close(before)

@@ -179,6 +179,17 @@ def test_first_bytes_are_the_waiting_line(small) -> None:
     assert text.index("Loading the page…") < text.index('id="rendered_cells"')
 
 
+def test_a_cell_is_given_time_to_bring_what_it_shows(tmp_path: Path) -> None:
+    """On a busy machine the page's output came over 4 s after the reply, and was left out: an empty page."""
+    import nbformat
+    from voila.execute import VoilaExecutor
+
+    from explorer.page.server import page_config
+
+    config = page_config(port=1, folder=tmp_path, notebook=tmp_path / "page.ipynb")
+    assert VoilaExecutor(nbformat.v4.new_notebook(), config=config).iopub_timeout >= 30
+
+
 @pytest.mark.slow
 def test_works_from_an_installed_wheel_outside_a_clone(start_server, tmp_path: Path) -> None:
     pip = [sys.executable, "-m", "pip", "--disable-pip-version-check", "--quiet"]

@@ -30,6 +30,7 @@ IDLE_SECONDS = (
     600  # an unconnected kernel lives this long: long enough for a network that comes and goes
 )
 CULL_SECONDS = 60
+OUTPUT_SECONDS = 60  # how long what a cell shows may come after its reply
 REFILL_SECONDS = (
     3  # the next kernel is warmed only when the page that took the last one has been drawn
 )
@@ -183,7 +184,10 @@ def page_config(*, port: int, folder: Path, notebook: Path) -> Config:
                 "cull_connected": False,
             },
             "VoilaExecutor": {
-                "cell_error_instruction": "The terminal that started the page says why."
+                "cell_error_instruction": "The terminal that started the page says why.",
+                # A busy machine may bring what a cell shows seconds after its reply; a cell that gave
+                # up on it would leave an empty page.
+                "iopub_timeout": OUTPUT_SECONDS,
             },
         }
     )

@@ -11,7 +11,6 @@ from urllib.parse import urlsplit
 
 import pytest
 from selenium import webdriver
-from selenium.common.exceptions import StaleElementReferenceException
 from selenium.webdriver.chrome.service import Service
 from selenium.webdriver.common.by import By
 from selenium.webdriver.remote.webelement import WebElement
@@ -69,12 +68,7 @@ class Browser:
 
     def wait_for(self, selector: str, seconds: float = 30) -> WebElement:
         """The first shown element that the selector matches."""
-        shown = WebDriverWait(
-            self.driver,
-            seconds,
-            poll_frequency=0.02,
-            ignored_exceptions=[StaleElementReferenceException],
-        ).until(
+        shown = WebDriverWait(self.driver, seconds, poll_frequency=0.02).until(
             lambda _: next(
                 (element for element in self.find(selector) if element.is_displayed()), None
             ),
