@@ -20,7 +20,7 @@ from .exact import RecordError
 from .inputs import INPUTS
 from .limits import cost_of_spread, elasticities, headroom
 from .maps import Axis, Map, make_map, mesh
-from .measured import AngularPattern, Coincidences, DataError, Decay, Dropped, Spectrum
+from .measured.data import AngularPattern, Coincidences, DataError, Decay, Dropped, Spectrum
 from .measured.decay import DecayFit, fit_decay
 from .measured.enhancement import Enhancement, enhancement
 from .measured.g2 import G2Fit, fit_g2

@@ -114,7 +114,7 @@ def start_server() -> Iterator[Callable[..., Served]]:
     started: list[Served] = []
 
     def start_and_remember(**keywords: object) -> Served:
-        started.append(start(**keywords))  # type: ignore[arg-type]  # handed on as given
+        started.append(start(**keywords))
         return started[-1]
 
     yield start_and_remember

@@ -160,7 +160,7 @@ def test_what_the_browser_could_not_draw_is_refused(
 
 def test_a_picture_is_frozen() -> None:
     with pytest.raises(FrozenInstanceError):
-        a_picture().ends_included = False  # type: ignore[misc]  # the refusal is the test
+        a_picture().ends_included = False
 
 
 def test_show_sends_once_and_an_equal_picture_not_at_all(canvas: MapCanvas) -> None:

@@ -254,12 +254,12 @@ def test_a_design_and_its_point_have_the_same_rows() -> None:
     ("call", "said"),
     [
         (lambda: headroom(FULL, "g2_zero"), "not one of"),
-        (lambda: headroom(FULL, 3), "not one of"),  # type: ignore[arg-type]
+        (lambda: headroom(FULL, 3), "not one of"),
         (lambda: headroom({"quality_factor": np.array([1.0, 2.0])}), "one design"),
         (lambda: headroom({"quality": 1.0}), "is no input"),
         (lambda: elasticities(FULL, "regime"), "is no quantity that is a number"),
         (lambda: elasticities(FULL, "low_quality"), "is no quantity that is a number"),
-        (lambda: elasticities(FULL, ["g2_zero"]), "is no quantity that is a number"),  # type: ignore[arg-type]
+        (lambda: elasticities(FULL, ["g2_zero"]), "is no quantity that is a number"),
         (lambda: elasticities({"lifetime": np.full(2, 1e-9)}, "g2_zero"), "one design"),
         (lambda: elasticities(FULL, "g2_zero", "lifetime"), "is a sequence"),
         (lambda: elasticities(FULL, "g2_zero", ["pumping"]), "no input that is a number"),
@@ -268,7 +268,7 @@ def test_a_design_and_its_point_have_the_same_rows() -> None:
         (lambda: elasticities({}, "g2_zero", ["filter_width"]), "no logarithm"),
         (lambda: cost_of_spread(Design()), "requires nothing"),
         (lambda: cost_of_spread(START, "regime"), "is no quantity that is a number"),
-        (lambda: cost_of_spread({}, "g2_zero"), "is of a Design"),  # type: ignore[arg-type]
+        (lambda: cost_of_spread({}, "g2_zero"), "is of a Design"),
         (lambda: cost_of_spread(START, "g2_zero", count=0), "whole number"),
         (lambda: cost_of_spread(START, "g2_zero", seed=-1), "whole number"),
     ],

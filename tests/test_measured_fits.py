@@ -13,9 +13,10 @@ import numpy as np
 import pytest
 from scipy import integrate, special, stats
 
+from explorer.built import Estimate
 from explorer.domain import InputError
 from explorer.measured import minos
-from explorer.measured.data import Coincidences, DataError, Decay, Estimate, Spectrum
+from explorer.measured.data import Coincidences, DataError, Decay, Spectrum
 from explorer.measured.decay import DecayFit, fit_decay, fit_decay_steps
 from explorer.measured.decay_model import Convolved, response_shares, tail_bins
 from explorer.measured.g2 import fit_g2, fit_g2_steps

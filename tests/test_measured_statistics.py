@@ -13,7 +13,7 @@ from typing import Any
 import numpy as np
 import pytest
 
-from explorer.measured.data import Estimate
+from explorer.built import Estimate
 from explorer.measured.decay import fit_decay
 from explorer.measured.g2 import fit_g2
 from explorer.measured.spectrum import fit_spectrum

@@ -135,7 +135,7 @@ def test_the_line_of_a_resonator_gives_its_quality_factor(panel: MeasuredPanel) 
 def test_power_is_turned_into_photons(panel: MeasuredPanel) -> None:
     give(panel, "spectrum")
     before = panel.now.data
-    panel._chosen(option(panel, "of"), "power")
+    panel.choose(option(panel, "of"), "power")
     ratio = panel.now.data.counts / before.counts
     assert np.allclose(ratio / ratio[0], before.wavelengths / before.wavelengths[0])
     assert panel.now.fit is not None
@@ -144,7 +144,7 @@ def test_power_is_turned_into_photons(panel: MeasuredPanel) -> None:
 
 def test_lines_and_sidebands_become_lines(panel: MeasuredPanel) -> None:
     give(panel, "spectrum")
-    panel._chosen(option(panel, "line"), ("voigt", 1))
+    panel.choose(option(panel, "line"), ("voigt", 1))
     press(panel, "Use the fitted lines")
     assert len(design(panel).point["spectrum"].lines) == 2
 
@@ -173,7 +173,7 @@ def test_a_decay_becomes_the_lifetime_or_a_device(panel: MeasuredPanel) -> None:
 
 def test_two_exponentials_say_mean_and_first_slope_apart(panel: MeasuredPanel) -> None:
     give(panel, "decay", name="decay_device.csv")
-    panel._chosen(option(panel, "components"), 2)
+    panel.choose(option(panel, "components"), 2)
     assert "Add mean time to" in offered(panel)
     assert "Add first slope to" in offered(panel)
     press(panel, "Add first slope to", "slope")
@@ -229,9 +229,9 @@ def test_a_device_that_no_longer_fits_the_design_is_left_off_the_map(panel: Meas
 
 def test_units_can_be_said_otherwise(panel: MeasuredPanel) -> None:
     give(panel, "decay")
-    panel._reread("µs", "counts", "1, 2")
+    panel.reread("µs", "counts", "1, 2")
     assert panel.now.data.times[-1] == pytest.approx(49.992e-6)
-    panel._reread("nm", "counts", "1, 2")  # no time
+    panel.reread("nm", "counts", "1, 2")  # no time
     assert "nm" in panel.wrong.value
     assert panel.now.data.times[-1] == pytest.approx(49.992e-6)  # the last reading stays
 
@@ -249,10 +249,10 @@ def test_an_option_that_is_no_number_is_refused_and_the_fit_stays(panel: Measure
     give(panel, "decay")
     fit = panel.now.fit
     period = option(panel, "period")
-    panel._numbered(period, "soon")
+    panel.form.numbered(panel.now, period, "soon")
     assert "soon" in panel.wrong.value
     assert panel.now.fit is fit
-    panel._numbered(period, "80 ns")
+    panel.form.numbered(panel.now, period, "80 ns")
     assert panel.now.values["period"] == 80e-9
     assert panel.wrong.value == ""
 
@@ -271,7 +271,7 @@ def test_a_background_is_taken_away_and_given_back(panel: MeasuredPanel) -> None
     before = panel.now.data.counts.copy()
     give(panel, "spectrum", "background", "emission_background.csv")
     assert np.median(before - panel.now.data.counts) / np.median(before) > 0.1
-    panel._dropped("background")
+    panel.drop("background")
     assert np.array_equal(panel.now.data.counts, before)
 
 
@@ -327,7 +327,7 @@ def test_script_in_a_header_or_a_file_name_is_text(panel: MeasuredPanel) -> None
 
 
 def test_refusals_of_the_browser_are_said(panel: MeasuredPanel) -> None:
-    upload = panel.files.children[0]
+    upload = panel.form.files.children[0]
     upload._hear(None, {"kind": "too large", "name": "big.csv", "size": 2e8}, [])
     assert "big.csv has 200 MB" in panel.wrong.value
     upload._hear(None, {"kind": "unreadable", "name": "gone.csv"}, [])

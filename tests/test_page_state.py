@@ -924,18 +924,20 @@ def test_switches_turn_layers_on_and_off(page) -> None:
 def test_files_come_and_go_as_messages(page) -> None:
     files = panel(page, "files")
     sent: list[tuple[dict, list[bytes]]] = []
-    files.files.send = lambda content, buffers=None: sent.append((content, buffers))
-    files._hear(files.files, {"kind": "save"}, [])
+    files.save.send = lambda content, buffers=None: sent.append((content, buffers))
+    files.save._hear(None, {"kind": "fetch"}, [])
     (content, (text,)) = sent[0]
     assert content["name"] == "harbour-to-lighthouse.json"
     before = page.state.question.design
     page.state.give(quality_factor=900.0)
-    files._hear(files.files, {"kind": "load", "name": "a.json"}, [memoryview(text)])
+    files.load._hear(None, {"kind": "file", "name": "a.json"}, [memoryview(text)])
     assert page.state.question.design == before
-    files._hear(files.files, {"kind": "load", "name": "a.json"}, [memoryview(text[:200])])
+    files.load._hear(None, {"kind": "file", "name": "a.json"}, [memoryview(text[:200])])
     assert "a.json" in page.state.problems[""]
     assert page.state.question.design == before
     assert "a.json" in panel(page, "headline").wrong.value
+    files.load._hear(None, {"kind": "too large", "name": "b.json", "size": 3e7}, [])
+    assert page.state.problems[""] == "b.json has 30 MB; a design has at most 20 MB"
 
 
 def test_a_text_from_a_file_is_no_markup(page) -> None:

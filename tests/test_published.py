@@ -37,7 +37,7 @@ def point_of(inputs: dict[str, Any]) -> dict[str, Any]:
         elif value.startswith("Lines("):
             point[name] = explorer.Lines(ast.literal_eval(value[len("Lines(") : -1]))
         else:
-            number, unit = NUMBER.fullmatch(value).groups()  # type: ignore[union-attr]  # a case that does not match is a mistake in the file
+            number, unit = NUMBER.fullmatch(value).groups()
             point[name] = to_si(float(number), unit)
     return point
 

@@ -56,6 +56,7 @@ def drained(steps: Generator[None, None, Fit]) -> Fit:
 
 @pytest.mark.parametrize("start", [0, 1], ids=["first start", "second start"])
 @pytest.mark.parametrize("file", FILES, ids=lambda file: file.stem)
+# The certified starting points are far off: exponentials overflow on the way.
 @pytest.mark.filterwarnings("ignore:overflow:RuntimeWarning")
 def test_certified_values(file: Path, start: int) -> None:
     given = problem(file)

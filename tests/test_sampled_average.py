@@ -165,12 +165,12 @@ def test_wide_resonances_against_the_average_over_shifts(kind: str) -> None:
             outcome=outcome, sigma=sigma, step=max(line.step, kappa / 2), centre=-detuning,
             feature=(line.fwhm + kappa) / 2,
         )  # fmt: skip
-        if not 1e-3 < float(lost) < 1 - 1e-3:  # type: ignore[arg-type]
+        if not 1e-3 < float(lost) < 1 - 1e-3:
             continue
         found = wandering_overlap(
             line, detuning=detuning, sigma=sigma, kappa=kappa, strength=strength
         )
-        worst = max(worst, abs((1 + strength * float(found)) * float(lost) - 1))  # type: ignore[arg-type]
+        worst = max(worst, abs((1 + strength * float(found)) * float(lost) - 1))
     print(f"{kind}: {worst:.1e} relative")
     assert 0 < worst < WIDE
 

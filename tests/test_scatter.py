@@ -574,19 +574,19 @@ BOTH = {"quality_factor": Q, "mode_volume": Q, "lifetime": Spread("normal", 1e-9
 
 REFUSED: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
     "an unknown kind": (lambda: Spread("cauchy", 1.0), ("'cauchy'", "normal, lognormal")),
-    "a kind that is no text": (lambda: Spread(3, 1.0), ("3 is no kind",)),  # type: ignore[arg-type]
+    "a kind that is no text": (lambda: Spread(3, 1.0), ("3 is no kind",)),
     "a negative width": (lambda: Spread("normal", -1e-9), ("must not be negative", "-1e-09")),
-    "a width that is text": (lambda: Spread("normal", "1"), ("'1' is not a number",)),  # type: ignore[arg-type]
+    "a width that is text": (lambda: Spread("normal", "1"), ("'1' is not a number",)),
     "a width that is a truth value": (lambda: Spread("normal", True), ("True is not a number",)),
     "an infinite width": (lambda: Spread("normal", math.inf), ("not a finite number",)),
     "a width not-a-number": (lambda: Spread("normal", math.nan), ("not a finite number",)),
-    "a width that is an array": (lambda: Spread("normal", np.ones(2)), ("not a number",)),  # type: ignore[arg-type]
-    "no mapping": (lambda: scattered({}, [("lifetime", Q)]), ("scatter", "no mapping")),  # type: ignore[arg-type]
-    "no scatter at all": (lambda: scattered({}, None), ("scatter = None",)),  # type: ignore[arg-type]
+    "a width that is an array": (lambda: Spread("normal", np.ones(2)), ("not a number",)),
+    "no mapping": (lambda: scattered({}, [("lifetime", Q)]), ("scatter", "no mapping")),
+    "no scatter at all": (lambda: scattered({}, None), ("scatter = None",)),
     "an unknown input": (lambda: scattered({}, {"speed": Q}), ("'speed'", "no input")),
     "a quantity": (lambda: scattered({}, {"rate_detected": Q}), ("'rate_detected'", "no input")),
-    "a key that is no text": (lambda: scattered({}, {5: Q}), ("5", "no input")),  # type: ignore[dict-item]
-    "a bare width": (lambda: scattered({}, {"lifetime": 1e-9}), ("lifetime is no Spread",)),  # type: ignore[dict-item]
+    "a key that is no text": (lambda: scattered({}, {5: Q}), ("5", "no input")),
+    "a bare width": (lambda: scattered({}, {"lifetime": 1e-9}), ("lifetime is no Spread",)),
     "a whole value": (lambda: scattered({}, {"pumping": Q}), ("pumping is no number",)),
     "a spectrum": (lambda: scattered({}, {"spectrum": Q}), ("spectrum is no number",)),
     "radial where there is no plane": (
@@ -618,8 +618,8 @@ REFUSED: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
         ("other_modes = 0 has no logarithm",),
     ),
     "a bad point": (lambda: scattered({"lifetime": -1.0}, {"mode_volume": Q}), ("lifetime",)),
-    "a point that is none": (lambda: scattered([], {"mode_volume": Q}), ("maps input names",)),  # type: ignore[arg-type]
-    "a design for a point": (lambda: scattered(Design(), {"mode_volume": Q}), ("Design",)),  # type: ignore[arg-type]
+    "a point that is none": (lambda: scattered([], {"mode_volume": Q}), ("maps input names",)),
+    "a design for a point": (lambda: scattered(Design(), {"mode_volume": Q}), ("Design",)),
     "shapes that do not fit": (
         lambda: scattered({"lifetime": [1e-9] * 2, "mode_volume": [1.0] * 3}, {"lifetime": Q}),
         ("(3,)", "mode_volume", "(2,)", "lifetime"),
@@ -628,12 +628,12 @@ REFUSED: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
 
 for _count in (0, -1, 2.5, MOST + 1, 10**400, math.inf, math.nan, "64", None, True, [64]):
     REFUSED[f"count {_count!r:.12}"] = (
-        lambda count=_count: scattered({}, BOTH, count),  # type: ignore[misc]
+        lambda count=_count: scattered({}, BOTH, count),
         ("count is a whole number from 1 to 4194304",),
     )
 for _seed in (-1, 2.5, 3.0, np.float32(2.5), math.nan, "0", None, True):
     REFUSED[f"seed {_seed!r:.20}"] = (
-        lambda seed=_seed: scattered({}, BOTH, 64, seed),  # type: ignore[misc]
+        lambda seed=_seed: scattered({}, BOTH, 64, seed),
         ("seed is a whole number from 0 on",),
     )
 
@@ -676,7 +676,7 @@ for _kind, (_given, _parts) in CORRELATIONS.items():
         "dipole_alignment": Spread("direction"),
     }
     REFUSED[f"a correlation {_kind}"] = (
-        lambda given=_given, wide=_wide: scattered({}, wide, 64, 0, given),  # type: ignore[misc]
+        lambda given=_given, wide=_wide: scattered({}, wide, 64, 0, given),
         _parts,
     )
 

@@ -496,7 +496,7 @@ def test_the_best_grows_and_a_front_fills() -> None:
     values = [
         step.value for step in best_steps(START.point, "rate_in_fibre", (), bounds) if step.met
     ]
-    assert values == sorted(values)  # type: ignore[type-var]  # met: each has a value
+    assert values == sorted(values)
     goals = ("rate_in_fibre", Goal("half_angle", most=False))
     fronts = list(front_steps(START.point, goals, START.requirements, bounds, count=6))
     assert len(fronts[-1].points) == 6

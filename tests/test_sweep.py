@@ -886,11 +886,11 @@ GOOD: dict[str, Any] = {"quality_factor": [10.0, 20.0]}
         bad("pumping = 'never' is not one of", lambda: factorial({}, pumping=["never"])),
         bad("spectrum = 'red' is no Lines or", lambda: factorial({}, spectrum=["red"])),
         bad("a plan needs an axis", lambda: factorial({})),
-        bad("the base is a point or a Design", lambda: factorial(3, **GOOD)),  # type: ignore[arg-type]
+        bad("the base is a point or a Design", lambda: factorial(3, **GOOD)),
         bad("one number; give several", lambda: factorial({"lifetime": [1e-9, 2e-9]}, **GOOD)),
         bad("lifetime = 1e+24 ns", lambda: factorial({"lifetime": 1e15}, **GOOD)),
         bad("count is a whole number", lambda: sampled({}, 0, 0, {"lifetime": (1e-9, 2e-9)})),
-        bad("count is a whole number", lambda: sampled({}, 1.5, 0, {"lifetime": (1e-9, 2e-9)})),  # type: ignore[arg-type]
+        bad("count is a whole number", lambda: sampled({}, 1.5, 0, {"lifetime": (1e-9, 2e-9)})),
         bad("seed is a whole number", lambda: sampled({}, 4, -1, {"lifetime": (1e-9, 2e-9)})),
         bad("runs backwards: 2 ns to 1 ns", lambda: sampled({}, 4, 0, {"lifetime": (2e-9, 1e-9)})),
         bad("a low and a high number", lambda: sampled({}, 4, 0, {"lifetime": 1e-9})),
@@ -899,19 +899,19 @@ GOOD: dict[str, Any] = {"quality_factor": [10.0, 20.0]}
         bad("outside its range", lambda: sampled({}, 4, 0, {"quantum_yield": (0.5, 1.5)})),
         bad("ranges names 'age'", lambda: sampled({}, 4, 0, {"age": (1, 2)})),
         bad("pumping is no number", lambda: sampled({}, 4, 0, {"pumping": (1, 2)})),
-        bad("ranges = 4 is no mapping", lambda: sampled({}, 4, 0, 4)),  # type: ignore[arg-type]
+        bad("ranges = 4 is no mapping", lambda: sampled({}, 4, 0, 4)),
         bad("nothing is drawn", lambda: sampled({}, 4)),
-        bad("scatter of lifetime is no Spread", lambda: sampled({}, 4, 0, scatter={"lifetime": 1e-9})),  # type: ignore[dict-item]
+        bad("scatter of lifetime is no Spread", lambda: sampled({}, 4, 0, scatter={"lifetime": 1e-9})),
         bad("a range and a scatter", lambda: sampled({}, 4, 0, {"lifetime": (1e-9, 2e-9)}, {"lifetime": Spread("normal", 1e-9)})),
         bad("mode_volume is a number: in a sampled", lambda: sampled({}, 4, 0, {"lifetime": (1e-9, 2e-9)}, mode_volume=[1.0])),
         bad("a correlation names mode_volume", lambda: sampled({}, 4, 0, scatter={"lifetime": Spread("normal", 1e-9)}, correlation={"lifetime|mode_volume": 0.5})),
         bad("chunk is a whole number", lambda: sweep(factorial({}, **GOOD), "g2_zero", chunk=-1)),
-        bad("chunk is a whole number", lambda: sweep(factorial({}, **GOOD), "g2_zero", chunk=2.0)),  # type: ignore[arg-type]
+        bad("chunk is a whole number", lambda: sweep(factorial({}, **GOOD), "g2_zero", chunk=2.0)),
         bad("window is a whole number", lambda: sweep(factorial({}, **GOOD), "g2_zero", window=0)),
         bad("has no map", lambda: sweep(factorial({}, **GOOD), "g2_zero", 4)),
         bad("in place of results", lambda: sweep(factorial({}, **GOOD), "g2_zero", SimpleNamespace(map=lambda _, tasks: [None for _ in tasks]))),
         bad("leave base out", lambda: sweep(factorial({}, **GOOD), "g2_zero", base={})),
-        bad("a table is a plan", lambda: sweep(7, "g2_zero")),  # type: ignore[arg-type]
+        bad("a table is a plan", lambda: sweep(7, "g2_zero")),
         bad("the table has no rows", lambda: sweep({"lifetime": []}, "g2_zero")),
         bad("the table has no rows", lambda: sweep({}, "g2_zero")),
         bad("do not fit", lambda: sweep({"lifetime": [1e-9], "mode_volume": [1.0, 2.0]}, "g2_zero")),
@@ -940,14 +940,14 @@ def test_bad_paths_are_refused(tmp_path: Path) -> None:
     refused(tmp_path / "a.txt", "neither a .csv nor a .parquet")
     refused(tmp_path / "none" / "a.csv", "there is no folder")
     refused(Path(f"{tmp_path}/a\0.csv"), "is no path")
-    refused(3, "is no path")  # type: ignore[arg-type]
+    refused(3, "is no path")
     (tmp_path / "d.csv").mkdir()
     refused(tmp_path / "d.csv", "is a folder")
     (tmp_path / "f.parquet").write_text("")
     refused(tmp_path / "f.parquet", "is a file")
     refused(Path("/proc/a.csv"), "cannot be written")
     with pytest.raises(PlanError, match="sweep_to takes a plan"):
-        sweep_to(tmp_path / "a.csv", pd.DataFrame({"lifetime": [1e-9]}), WANTED)  # type: ignore[arg-type]
+        sweep_to(tmp_path / "a.csv", pd.DataFrame({"lifetime": [1e-9]}), WANTED)
     assert sorted(file.name for file in tmp_path.iterdir()) == ["d.csv", "f.parquet"]
 
 

@@ -775,25 +775,25 @@ BAD_LEVELS = (-0.1, 1.1, math.nan, "0.5", None, True, [], [0.5, 2], ["a"], [[0.5
 REFUSED: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
     "no requirement": (lambda: yield_of({}, ONE, []), ("a yield needs a requirement",)),
     "a single requirement": (
-        lambda: yield_of({}, ONE, SURE[0]),  # type: ignore[arg-type]
+        lambda: yield_of({}, ONE, SURE[0]),
         ("requirements is a sequence",),
     ),
-    "a text for requirements": (lambda: yield_of({}, ONE, "g2"), ("requirements is a sequence",)),  # type: ignore[arg-type]
-    "nothing for requirements": (lambda: yield_of({}, ONE, None), ("requirements is a sequence",)),  # type: ignore[arg-type]
+    "a text for requirements": (lambda: yield_of({}, ONE, "g2"), ("requirements is a sequence",)),
+    "nothing for requirements": (lambda: yield_of({}, ONE, None), ("requirements is a sequence",)),
     "a text among the requirements": (
-        lambda: yield_of({}, ONE, [*SURE, "g2"]),  # type: ignore[list-item]
+        lambda: yield_of({}, ONE, [*SURE, "g2"]),
         ("'g2' is no Requirement",),
     ),
-    "a point that is nothing": (lambda: yield_of(None, ONE, SURE), ("maps input names",)),  # type: ignore[arg-type]
-    "a point that is a list": (lambda: yield_of([], ONE, SURE), ("maps input names",)),  # type: ignore[arg-type]
-    "a point that is a text": (lambda: yield_of("Q", ONE, SURE), ("maps input names",)),  # type: ignore[arg-type]
+    "a point that is nothing": (lambda: yield_of(None, ONE, SURE), ("maps input names",)),
+    "a point that is a list": (lambda: yield_of([], ONE, SURE), ("maps input names",)),
+    "a point that is a text": (lambda: yield_of("Q", ONE, SURE), ("maps input names",)),
     "a bad value": (lambda: yield_of({"lifetime": -1.0}, ONE, SURE), ("lifetime = -1000000000 ns",)),
     "an unknown input": (lambda: yield_of({"speed": 1.0}, ONE, SURE), ("'speed' is no input",)),
     "arrays that do not fit": (
         lambda: yield_of({"lifetime": [1e-9] * 2, "mode_volume": [1.0] * 3}, ONE, SURE),
         ("(3,)", "mode_volume", "(2,)", "lifetime"),
     ),
-    "scatter that is none": (lambda: yield_of({}, [ONE], SURE), ("no mapping",)),  # type: ignore[arg-type]
+    "scatter that is none": (lambda: yield_of({}, [ONE], SURE), ("no mapping",)),
     "scatter about infinity": (
         lambda: yield_of({}, {"filter_width": Spread("normal", 1e-9)}, [Requirement("rate_detected", at_least=1.0)]),
         ("filter_width is ∞",),
@@ -806,13 +806,13 @@ REFUSED: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
     "quantiles of a word": (lambda: quantiles({}, ONE, "regime"), ("'regime' is no quantity that is a number",)),
     "quantiles of a caution": (lambda: quantiles({}, ONE, "low_quality"), ("'low_quality' is no quantity",)),
     "quantiles of an input": (lambda: quantiles({}, ONE, "lifetime"), ("'lifetime' is no quantity",)),
-    "quantiles of nothing": (lambda: quantiles({}, ONE, None), ("None is no quantity",)),  # type: ignore[arg-type]
+    "quantiles of nothing": (lambda: quantiles({}, ONE, None), ("None is no quantity",)),
     "a quantile of a yield of what is unknown": (
         lambda: yield_of({}, ONE, SURE, 16).quantile("speed"),
         ("'speed' is no quantity",),
     ),
-    "quantiles of a bad point": (lambda: quantiles(5, ONE, "peak_purcell"), ("maps input names",)),  # type: ignore[arg-type]
-    "a map of a bad point": (lambda: make_yield_map(5, *AXES, ONE, SURE), ("maps input names",)),  # type: ignore[arg-type]
+    "quantiles of a bad point": (lambda: quantiles(5, ONE, "peak_purcell"), ("maps input names",)),
+    "a map of a bad point": (lambda: make_yield_map(5, *AXES, ONE, SURE), ("maps input names",)),
     "a map of one input": (lambda: make_yield_map({}, AXES[0], AXES[0], ONE, SURE), ("two different inputs",)),
     "a map without requirements": (lambda: make_yield_map({}, *AXES, ONE, []), ("needs a requirement",)),
     "a map of no count": (lambda: make_yield_map({}, *AXES, ONE, SURE, 0), ("count is a whole number",)),
@@ -820,26 +820,26 @@ REFUSED: dict[str, tuple[Callable[[], Any], tuple[str, ...]]] = {
 
 for _count in (0, -5, 2.5, MOST + 1, 10**400, math.inf, math.nan, "16", None, True):
     REFUSED[f"count {_count!r:.12}"] = (
-        lambda count=_count: yield_of({}, ONE, SURE, count),  # type: ignore[misc]
+        lambda count=_count: yield_of({}, ONE, SURE, count),
         ("count is a whole number from 1 to 4194304",),
     )
 for _seed in (-1, 1.0, 2.5, math.nan, "0", None, False):
     REFUSED[f"seed {_seed!r}"] = (
-        lambda seed=_seed: yield_of({}, ONE, SURE, 16, seed),  # type: ignore[misc]
+        lambda seed=_seed: yield_of({}, ONE, SURE, 16, seed),
         ("seed is a whole number from 0 on",),
     )
 for _threads in (0, -1, 1.5, 10**6, "2", None, True):
     REFUSED[f"threads {_threads!r}"] = (
-        lambda threads=_threads: yield_of({}, ONE, SURE, 16, threads=threads),  # type: ignore[misc]
+        lambda threads=_threads: yield_of({}, ONE, SURE, 16, threads=threads),
         ("threads is a whole number from 1 to",),
     )
 for _levels in BAD_LEVELS:
     REFUSED[f"levels {_levels!r}"] = (
-        lambda levels=_levels: quantiles({}, ONE, "peak_purcell", levels, 16),  # type: ignore[misc]
+        lambda levels=_levels: quantiles({}, ONE, "peak_purcell", levels, 16),
         ("a level of a quantile is a number from 0 to 1; got",),
     )
     REFUSED[f"levels {_levels!r} of a yield"] = (
-        lambda levels=_levels: yield_of({}, ONE, SURE, 16).quantile("peak_purcell", levels),  # type: ignore[misc]
+        lambda levels=_levels: yield_of({}, ONE, SURE, 16).quantile("peak_purcell", levels),
         ("a level of a quantile is a number from 0 to 1; got",),
     )
 

@@ -9,20 +9,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from ..built import Estimate
 from ..physics.measured_pattern import outermost_angle, power_inside
 from ..whole import Pattern, Samples
-
-__all__ = [
-    "AngularPattern",
-    "Coincidences",
-    "DataError",
-    "Decay",
-    "Dropped",
-    "Estimate",
-    "Histogram",
-    "Spectrum",
-]
 
 Array = NDArray[np.float64]
 

@@ -6,8 +6,9 @@ import math
 from collections.abc import Generator, Iterator
 from dataclasses import dataclass
 
+from ..built import Estimate
 from ..domain import InputError, finite_number
-from .data import DataError, Decay, Estimate
+from .data import DataError, Decay
 from .decay_cautions import decay_cautions
 from .decay_model import checked_period
 from .decay_pair import Pair, fit_pair

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from .data import Estimate
+from ..built import Estimate
 from .decay_start import Start
 from .decay_work import Work, flat_parameters
 from .engine import Fit, Parameter, fit_steps

@@ -76,7 +76,7 @@ def prepared(
     if response is not None:
         return _with_response(data, response, shared, bin_of, notes)
 
-    def tail(lifetime: float, shift: float) -> Array:  # noqa: ARG001
+    def tail(lifetime: float, shift: float) -> Array:  # noqa: ARG001  # called like the other
         shares = tail_bins(count=count, width=data.width, lifetime=lifetime)[bin_of - bin_of[0]]
         # What earlier pulses left decays alike, so that they only raise the tail.
         earlier = 1.0 if period is None else -np.expm1(-period / lifetime)

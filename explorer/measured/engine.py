@@ -9,14 +9,16 @@ take its place. Everything in slices, so that a page stays alive.
 from __future__ import annotations
 
 import math
+from collections import deque
 from collections.abc import Callable, Generator, Iterator, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any, TypeVar
 
 import numpy as np
 
+from ..built import Estimate
 from ..domain import InputError, finite_number
-from .data import DataError, Estimate
+from .data import DataError
 from .minos import confirmed, interval, sigmas_of
 from .noise import Array, Noise
 from .scoring import ENOUGH, Problem, covariance, score_steps
@@ -83,9 +85,7 @@ def checked_level(level: Any) -> float:
 
 def finish(steps: Iterator[Result | None]) -> Result:
     """What a fit in slices yields last."""
-    last: Result | None = None
-    for last in steps:  # noqa: B007
-        pass
+    last = deque(steps, maxlen=1).pop()
     assert last is not None
     return last
 

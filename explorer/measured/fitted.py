@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from .data import Estimate
+from ..built import Estimate
 from .engine import Fit
 from .noise import Array, Noise, goodness
 

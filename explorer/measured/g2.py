@@ -8,8 +8,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from ..built import Estimate
 from ..domain import InputError, finite_number, quoted
-from .data import Coincidences, DataError, Estimate
+from .data import Coincidences, DataError
 from .decay_model import bin_numbers
 from .engine import Fit, checked_level, finish
 from .fitted import Fitted, common, mapped

@@ -8,7 +8,8 @@ from typing import Any
 
 import numpy as np
 
-from .data import Coincidences, Estimate
+from ..built import Estimate
+from .data import Coincidences
 from .engine import Fit
 from .fitted import RARE, common_cautions
 from .noise import Noise

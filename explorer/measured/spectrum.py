@@ -8,9 +8,10 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from ..built import Estimate
 from ..domain import InputError, finite_number, quoted
 from ..whole import Lines
-from .data import DataError, Estimate, Spectrum
+from .data import DataError, Spectrum
 from .engine import Fit, Parameter, checked_level, finish, fit_steps, sketch_steps
 from .fitted import Fitted, common, mapped
 from .noise import Noise

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from .data import Estimate
+from ..built import Estimate
 from .engine import Fit
 from .fitted import common_cautions
 from .spectrum_layout import Layout, spacing

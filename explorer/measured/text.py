@@ -130,7 +130,7 @@ def _bytes(source: Source, name: str) -> tuple[bytes, str]:
             raise DataError("this is no file but a folder or a device", name)
         if found.st_size > LARGEST:
             raise DataError(_too_large(found.st_size), name)
-        with open(path, "rb") as file:  # noqa: PTH123
+        with open(path, "rb") as file:  # noqa: PTH123 - as above
             return file.read(LARGEST + 1), name
     except OSError as error:
         raise DataError(_why(error), name) from error

@@ -6,8 +6,9 @@ from collections.abc import Iterator
 from html import escape
 from typing import Any
 
+from ..built import Estimate
 from ..design import Design
-from ..measured.data import AngularPattern, Coincidences, Decay, Estimate, Spectrum
+from ..measured.data import AngularPattern, Coincidences, Decay, Spectrum
 from ..measured.enhancement import Enhancement, enhancement
 from ..units import text
 from .built import spanned

@@ -63,7 +63,8 @@ class Measuring:
     """One kind of data on the page.
 
     fault: why the last file was not read, or the last fit not made; '' where all is well. units,
-    columns: how a person says that the file is to be read, '' where the file says it itself.
+    columns: how a person says that the file is to be read, '' where the file says it itself. values: of
+    the options, and typed: their numbers as they were typed.
     """
 
     kind: Kind
@@ -71,6 +72,7 @@ class Measuring:
     units: tuple[str, str] = ("", "")
     columns: str = ""
     values: dict[str, Any] = field(default_factory=dict)
+    typed: dict[str, str] = field(default_factory=dict)
     data: Any = None
     extras: dict[str, Any] = field(default_factory=dict)
     fit: Any = None

@@ -9,6 +9,7 @@ function render({ model, el }) {
   pick.type = "file";
   pick.hidden = true;
   pick.className = "x-pick";
+  pick.accept = model.get("accept");
   el.append(button, pick);
   const name = () => {
     button.textContent = model.get("text");

@@ -57,7 +57,7 @@ class Store:
                     self._clear()
                 elif not known.complete:
                     self._go_on()
-        except BaseException:
+        except BaseException:  # Ctrl-C too: the lock is given back
             self._release()
             raise
 

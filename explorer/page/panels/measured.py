@@ -12,15 +12,14 @@ from ...built import LONGEST_NAME
 from ...design import Design
 from ...measured.use import without_device
 from ...question import Answer
-from ...reading import ReadingError, read_number
 from ..built import table
 from ..kinds import KINDS
+from ..measured_form import MeasuredForm
 from ..measured_plots import drawing
 from ..measured_words import understood
-from ..measuring import Kind, Measuring, Option
+from ..measuring import Measuring, Option
 from ..plot import Plot
 from ..state import State
-from ..upload import Upload
 from ..uses import Use, done, says, uses
 from ..work import Work
 
@@ -44,15 +43,15 @@ class MeasuredPanel(VBox):
         self._quiet = False
         self.held = {name: Measuring(kind) for name, kind in KINDS.items()}
         self._shown = "spectrum"
-        self._open, self._built = False, ""
+        self._open = False
         self.switch = {
             name: ToggleButton(description=kind.label, tooltip=kind.hint)
             for name, kind in KINDS.items()
         }
-        self._uploads = {name: self._main_upload(kind) for name, kind in KINDS.items()}
+        self.form = MeasuredForm(self)
         kinds = HBox(list(self.switch.values()))
         kinds.add_class("x-switch")
-        self.files, self.otherwise, self.options, self.uses = VBox(), VBox(), VBox(), VBox()
+        self.uses = VBox()
         self.read, self.result, self.devices, self.said = HTML(), HTML(), HTML(), HTML()
         self.wrong = Label("")
         self.wrong.add_class("x-wrong")
@@ -61,9 +60,6 @@ class MeasuredPanel(VBox):
         )
         self.plot, self.rest = Plot(), Plot()
         for widget, name in (
-            (self.files, "x-given"),
-            (self.otherwise, "x-otherwise"),
-            (self.options, "x-choices"),
             (self.read, "x-understood"),
             (self.result, "x-result"),
             (self.plot, "x-main-plot"),
@@ -72,7 +68,8 @@ class MeasuredPanel(VBox):
             (self.remove, "x-more"),
         ):
             widget.add_class(name)
-        left = VBox([self.files, self.wrong, self.read, self.otherwise, self.options])
+        form = self.form
+        left = VBox([form.files, self.wrong, self.read, form.otherwise, form.options])
         middle = VBox([self.plot, self.rest, HTML(f'<p class="x-plain">{escape(CAUTION)}</p>')])
         right = VBox([self.result, self.uses, self.said, self.devices, self.remove])
         for box, name in ((left, "x-from"), (middle, "x-plots"), (right, "x-to")):
@@ -111,8 +108,8 @@ class MeasuredPanel(VBox):
         for other, button in self.switch.items():
             button.value = other == name
         self._quiet = False
-        if self._built != name:
-            self._build()
+        if self.form.kind != name:
+            self.form.build(self.now)
         self._draw()
         if self.now.data is not None and self.now.fit is None and not self.now.fault:
             self._fit()
@@ -121,136 +118,39 @@ class MeasuredPanel(VBox):
         """Read a file; where it cannot be read, all stays as it was."""
         self._work.stop()
         if self.now.take(role, name, content):
-            self._build()
+            self.form.build(self.now)
         self._fit()
 
     def _pressed(self, name: str) -> None:
         if not self._quiet:
             self.turn_to(name)
 
-    # ------------------------------------------------------------ what can be chosen
+    # ------------------------------------------------------------ what the form asks for
 
-    def _build(self) -> None:
-        """Buttons, fields and menus of the kind that is shown."""
-        self._built = self._shown
-        for old in (*self.files.children[1:], *self.otherwise.children, *self.options.children):
-            old.close()
-        self.files.children = self._file_rows()
-        self.otherwise.children = self._otherwise_rows() if self.now.data is not None else ()
-        loaded = self.now.data is not None and self.now.kind.steps is not None
-        self.options.children = (
-            tuple(self._option_row(option) for option in self.now.kind.options) if loaded else ()
-        )
-
-    def _file_rows(self) -> tuple[Any, ...]:
-        kind, held = self.now.kind, self.now
-        main = self._uploads[kind.name]
-        main.text = "Load another file" if held.data is not None else f"Load {kind.label.lower()}"
-        if held.data is None or not kind.extras:
-            return (main,)
-        extras = HBox([self._extra_row(extra) for extra in kind.extras])
-        extras.add_class("x-extras")
-        return main, extras
-
-    def _main_upload(self, kind: Kind) -> Upload:
-        """The button that loads data of a kind; it stays, so that a keyboard keeps its place."""
-        made = Upload(
-            f"Load {kind.label.lower()}",
-            kind.hint,
-            lambda name, content: self.take("", name, content),
-            self._refused,
-        )
-        made.add_class(f"upload-{kind.name}")
-        return made
-
-    def _extra_row(self, extra: Any) -> HBox:
-        given = self.now.files.get(extra.role)
-        load = Upload(
-            f"+ {extra.label}" if given is None else f"{extra.label}: {given[0]}",
-            extra.hint,
-            lambda name, content: self.take(extra.role, name, content),
-            self._refused,
-        )
-        load.add_class(f"upload-{self.now.kind.name}-{extra.role}")
-        if given is None:
-            return HBox([load])
-        drop = Button(description="×", tooltip=f"Without this {extra.label}")
-        drop.add_class("x-back")
-        drop.on_click(lambda _: self._dropped(extra.role))
-        return HBox([load, drop])
-
-    def _dropped(self, role: str) -> None:
+    def drop(self, role: str) -> None:
+        """Read the data again without the file that plays a role."""
         self._work.stop()
         self.now.drop(role)
-        self._build()
+        self.form.build(self.now)
         self._fit()
 
-    def _otherwise_rows(self) -> tuple[Any, ...]:
-        """How the file is read, to be said otherwise."""
-        held = self.now
-        fields = [
-            Text(value, continuous_update=False, tooltip=hint)
-            for value, hint in (
-                (held.data.units[0], "Unit of the first column"),
-                (held.data.units[1], "Unit of the second column"),
-                (held.columns or "1, 2", "Columns that are read, counted from 1"),
-            )
-        ]
-        rows = []
-        for label, field in zip(("Unit across", "Unit up", "Columns"), fields, strict=True):
-            words = Label(label)
-            words.add_class("x-name")
-            row = HBox([words, field])
-            row.add_class("x-head")
-            rows.append(row)
-            field.observe(lambda _: self._reread(*(entry.value for entry in fields)), "value")
-        return tuple(rows)
-
-    def _reread(self, across: str, up: str, columns: str) -> None:
+    def reread(self, across: str, up: str, columns: str) -> None:
+        """Read the same file with other units or columns; where that fails the last reading stays."""
         self._work.stop()
         wanted = "" if columns.replace(" ", "") == "1,2" else columns
         if self.now.read_as((across.strip(), up.strip()), wanted):
-            self._build()
+            self.form.build(self.now)
         self._fit()
 
-    def _option_row(self, option: Option) -> HBox:
-        value = self.now.values[option.name]
-        words = Label(option.label, tooltip=option.hint)
-        words.add_class("x-name")
-        field: Any
-        if option.choices:
-            field = Dropdown(options=option.choices, value=value, tooltip=option.hint)
-            field.observe(lambda change: self._chosen(option, change["new"]), "value")
-        elif option.unit:
-            shown = "" if value is None else self._typed.get((self._shown, option.name), "")
-            field = Text(shown, continuous_update=False, tooltip=option.hint, placeholder="—")
-            field.add_class("x-number")
-            field.observe(lambda change: self._numbered(option, change["new"]), "value")
-        else:
-            field = ToggleButton(value, description=option.label, tooltip=option.hint)
-            field.observe(lambda change: self._chosen(option, change["new"]), "value")
-            return HBox([field])
-        row = HBox([words, field, Label(option.unit if option.unit != "1" else "")])
-        row.add_class("x-head")
-        return row
-
-    @property
-    def _typed(self) -> dict[tuple[str, str], str]:
-        return self.__dict__.setdefault("_texts", {})
-
-    def _numbered(self, option: Option, words: str) -> None:
-        self._typed[self._shown, option.name] = words
-        try:
-            value = read_number(words, option.unit) if words.strip() else None
-        except ReadingError as error:
-            self._state.refuse(SEAT, f"{option.label}: {error}")
-            return
-        self._chosen(option, value)
-
-    def _chosen(self, option: Option, value: Any) -> None:
+    def choose(self, option: Option, value: Any) -> None:
+        """Set an option, and fit anew."""
         self._work.stop()
         self.now.set(option.name, value)
         self._fit()
+
+    def refuse(self, words: str) -> None:
+        """Say why something was not done."""
+        self._state.refuse(SEAT, words)
 
     # ------------------------------------------------------------ fit and show
 
@@ -259,7 +159,7 @@ class MeasuredPanel(VBox):
         held = self.now
         self._state.settle(SEAT)
         if held.fault:
-            self._refused(held.fault)
+            self.refuse(held.fault)
         self._draw()
         if held.data is not None and held.kind.steps is not None and held.fit is None:
             self.result.value = '<p class="x-plain">fitting …</p>'
@@ -267,7 +167,7 @@ class MeasuredPanel(VBox):
 
     def _fitted(self, held: Measuring) -> None:
         if held.fault:
-            self._refused(held.fault)
+            self.refuse(held.fault)
         if held is self.now:
             self._draw()
 
@@ -337,9 +237,6 @@ class MeasuredPanel(VBox):
         if list(self.remove.options) != names:
             self.remove.options = names
         self.remove.layout.display = "" if design.built else "none"
-
-    def _refused(self, words: str) -> None:
-        self._state.refuse(SEAT, words)
 
     def _complain(self) -> None:
         words = self._state.problems.get(SEAT, "")
